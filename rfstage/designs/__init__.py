@@ -1,0 +1,1 @@
+"""From a job to a stage: the book's design, exact with its losses."""

@@ -1,0 +1,133 @@
+"""The book's design, closed exactly: for a load resistance the network, for a power the resistance.
+
+The device must see a resistance R; the network that shows it has losses; so the device must give more
+than the load gets, and R is lower than the lossless one. The loop below is that sentence.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from rfstage.designs.settings import Settings
+from rfstage.errors import ConvergenceError, ImpossibleError
+from rfstage.ladder import Branch
+from rfstage.matching.networks import (
+    DEFAULT_LOADED_Q,
+    DEFAULT_Q_MARGIN,
+    solve_network,
+    tank_efficiency,
+)
+from rfstage.matching.pi import least_loaded_q, pi_network
+from rfstage.operating import OperatingPoint, operating_point
+from rfstage.stage import BLOCKING, Supply, feed
+
+SMALL_RESISTANCE = 500.0  # ohm: up to here the choke is sized against it, above against the input capacitor
+SETTLED = 1e-13  # relative change of the load resistance
+_ROUNDS = 60
+
+
+@dataclass(frozen=True, slots=True)
+class Circuit:
+    """Supply with its choke, blocking capacitor, and the network, for one load resistance [ohm]."""
+
+    supply: Supply
+    output_capacitance: float
+    blocking: Branch
+    tank: tuple[Branch, ...]
+    carrier: float
+
+    @property
+    def feed(self) -> tuple[Branch, ...]:
+        """What stands before the network: output capacitance, choke, blocking capacitor."""
+        return (*feed(self.output_capacitance, self.supply.branch(self.carrier)), self.blocking)
+
+
+def circuit_for(settings: Settings, resistance: float) -> Circuit:
+    """Return the circuit that shows a resistance [ohm] to the device, exact with its losses.
+
+    Raises
+    ------
+    ImpossibleError
+        If the network can't.
+    """
+    job = settings.job
+    omega = 2 * math.pi * job.carrier
+    choke = job.choke if job.choke is not None else _choke_reactance(settings, resistance) / omega
+    blocking = job.blocking if job.blocking is not None else 10 / (omega * resistance)
+    supply = Supply(voltage=job.supply, choke=choke, choke_resistance=settings.choke_resistance,
+                    choke_q=settings.choke_q)
+    capacitor_q = settings.request.capacitor_q
+    blocker = Branch(BLOCKING, "series", "capacitor", blocking, q=None if math.isinf(capacitor_q) else capacitor_q)
+    before = (*feed(settings.output_capacitance, supply.branch(job.carrier)), blocker)
+    tank = solve_network(settings.request, feed=before, wanted=complex(resistance), load=settings.load_impedance,
+                         carrier=job.carrier)
+    return Circuit(supply, settings.output_capacitance, blocker, tank, job.carrier)
+
+
+def _choke_reactance(settings: Settings, resistance: float) -> float:
+    """Return ten times the load resistance [ohm], or where that is large ten times the input capacitor's reactance.
+
+    The input capacitor also tunes the choke out, so it is 1/0.9 of what the network needs without one.
+    """
+    if resistance < SMALL_RESISTANCE or settings.request.network != "pi":
+        return 10 * resistance
+    q = settings.request.loaded_q
+    if q is None:
+        q = default_loaded_q(settings, resistance)
+    try:
+        first = pi_network(complex(resistance), settings.load_impedance, carrier=settings.job.carrier,
+                           loaded_q=q, input_q=settings.request.input_q)[0]
+    except ImpossibleError:
+        return 10 * resistance  # the network itself says what is wrong
+    return 9 / (2 * math.pi * settings.job.carrier * float(first.value))
+
+
+def default_loaded_q(settings: Settings, resistance: float) -> float:
+    """Return the loaded Q [-] of a pi where none is asked: 10, or the least that works + 2."""
+    taken = resistance * 2 * math.pi * settings.job.carrier * settings.output_capacitance
+    least = least_loaded_q(complex(resistance), settings.load_impedance, least_input_q=taken)
+    return max(DEFAULT_LOADED_Q, least + DEFAULT_Q_MARGIN)
+
+
+def point_for(settings: Settings, coefficients: NDArray[np.float64], efficiency: float) -> OperatingPoint:
+    """Return the operating point for a tank efficiency [-]."""
+    return operating_point(
+        supply=settings.job.supply, minimum_voltage=settings.minimum_voltage, output_power=settings.job.power,
+        dc_coefficient=float(coefficients[0]), fundamental_coefficient=float(coefficients[1]),
+        tank_efficiency=efficiency, choke_resistance=settings.choke_resistance)
+
+
+def by_the_book(settings: Settings, coefficients: NDArray[np.float64]) -> tuple[Circuit, OperatingPoint]:
+    """Return circuit and operating point that put the asked power into the load, losses and all.
+
+    Raises
+    ------
+    ImpossibleError
+        If no network or operating point does it.
+    ConvergenceError
+        If the loop does not settle.
+    """
+    def next_for(resistance: float) -> tuple[Circuit, OperatingPoint]:
+        circuit = circuit_for(settings, resistance)
+        efficiency = tank_efficiency((*circuit.feed, *circuit.tank), settings.load_impedance, settings.job.carrier)
+        return circuit, point_for(settings, coefficients, efficiency)
+
+    resistance = point_for(settings, coefficients, 1.0).load_resistance
+    before: tuple[float, float] | None = None
+    for _ in range(_ROUNDS):
+        circuit, point = next_for(resistance)
+        miss = point.load_resistance - resistance
+        if abs(miss) <= SETTLED * resistance:
+            return circuit, point
+        step = miss
+        if before is not None and before[1] != miss:
+            step = -miss * (resistance - before[0]) / (miss - before[1])  # secant
+        before = (resistance, miss)
+        resistance = max(resistance + step, resistance / 2)
+    raise ConvergenceError(
+        "the load resistance did not settle between power and tank losses: the tank loses nearly all the power; "
+        "raise tank.coil_q or lower the loaded Q")

@@ -1,0 +1,105 @@
+"""The job: what a person asks of a stage, checked as one."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from rfstage.errors import InputError
+from rfstage.fields import check
+from rfstage.jobfields import JOB_FIELDS, REQUIRED
+from rfstage.limits import limit_named
+from rfstage.quantity import QuantityError, exact_text
+
+if TYPE_CHECKING:
+    from rfstage.load import MeasuredLoad
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Job:
+    """What is asked, in SI units, the angle in degrees; None where nothing was given.
+
+    The keys, units and ranges are those of `rfstage.jobfields.JOB_FIELDS`. ``load`` is an impedance
+    [ohm] or a measured load; an infinite Q is lossless. ``power_gain`` is in dB.
+
+    Raises
+    ------
+    InputError
+        With one line for each value that is missing, out of range or at odds with another.
+
+    Examples
+    --------
+    >>> job = Job(carrier=7.1e6, power=10.0, conduction_angle=120.0, supply=13.8)
+    >>> Job(carrier=7.1e6, power=-10.0, conduction_angle=400.0, supply=13.8)
+    Traceback (most recent call last):
+    rfstage.errors.InputError: stage.power: got -10 W; allowed above 0 W, to 10 MW (is the minus sign meant?)
+    stage.conduction_angle: got 400 deg; allowed above 0 deg, to 360 deg
+    """
+
+    carrier: float
+    power: float
+    conduction_angle: float
+    supply: float
+    minimum_voltage: float | None = None
+    harmonics: int | None = None
+    family: str | None = None
+    output_capacitance: float | None = None
+    exponent: float | None = None
+    threshold: float | None = None
+    transfer_factor: float | None = None
+    max_voltage: float | None = None
+    max_current: float | None = None
+    max_dissipation: float | None = None
+    gate_resistance: float | None = None
+    input_capacitance: float | None = None
+    power_gain: float | None = None
+    bias: float | None = None
+    grid_current: float | None = None
+    load: complex | MeasuredLoad | None = None
+    load_file: str | None = None
+    network: str | None = None
+    loaded_q: float | None = None
+    input_q: float | None = None
+    coil_q: float | None = None
+    capacitor_q: float | None = None
+    choke: float | None = None
+    choke_q: float | None = None
+    choke_resistance: float | None = None
+    blocking: float | None = None
+    limit: str | None = None
+    limit_load: float | None = None
+
+    def __post_init__(self) -> None:
+        problems = []
+        for field in JOB_FIELDS:
+            value = getattr(self, field.name)
+            if value is None or not isinstance(value, int | float | complex):
+                if value is None and field.name in REQUIRED:
+                    problems.append(f"{field.path}: missing ({field.help}; option {field.option})")
+                elif field.choices and value is not None and value not in field.choices:
+                    problems.append(f"{field.path}: got {value!r}; allowed {' | '.join(field.choices)}")
+                continue
+            try:
+                check(field, value)
+            except QuantityError as error:
+                problems.append(f"{field.path}: {error}")
+        problems += conflicts({field.name: getattr(self, field.name) for field in JOB_FIELDS})
+        if problems:
+            raise InputError(*problems)
+
+
+def conflicts(values: dict[str, object]) -> list[str]:
+    """Return one line for each pair of given values that can't stand together."""
+    found = []
+    supply, lowest = values.get("supply"), values.get("minimum_voltage")
+    if isinstance(supply, float | int) and isinstance(lowest, float | int) and lowest >= supply > 0:
+        found.append(f"stage.minimum_voltage: got {exact_text(lowest, 'V')}; allowed below the supply of "
+                     f"{exact_text(supply, 'V')}")
+    if values.get("loaded_q") is not None and values.get("input_q") is not None:
+        found.append("tank.input_q: got both a loaded Q and an input-side Q; give one of them")
+    if isinstance(values.get("limit"), str):
+        try:
+            limit_named(str(values["limit"]))
+        except InputError as error:
+            found += error.problems
+    return found

@@ -1,0 +1,75 @@
+"""The keys of a job: option, unit, range and help of each. Standard library only.
+
+The order is that of the summary and of ``--help``. A path is the key of the job file, a name the
+attribute of `rfstage.job.Job`.
+"""
+
+from __future__ import annotations
+
+from rfstage.fields import Field
+
+FAMILIES = ("bipolar", "fet", "tube")
+NETWORKS = ("l", "l-high-pass", "pi")
+REQUIRED = ("carrier", "power", "conduction_angle", "supply")
+
+CARRIER = Field("stage.carrier", "carrier", "real", "Hz", 1e3, 3e10, option="--carrier", help="carrier frequency")
+LOADED_Q = Field("tank.loaded_q", "loaded_q", "real", "", 0, 1000, True, "--loaded-q",
+                 "loaded Q of a pi tank [10, or the least that works + 2]")
+INPUT_Q = Field("tank.input_q", "input_q", "real", "", 0, 1000, True, "--input-q",
+                "input-side Q instead: load resistance over the reactance across the device")
+COIL_Q = Field("tank.coil_q", "coil_q", "q", "", 1, 1e7, False, "--coil-q", "Q of the tank's coils, or lossless [150]")
+CAPACITOR_Q = Field("tank.capacitor_q", "capacitor_q", "q", "", 1, 1e7, False, "--capacitor-q",
+                    "Q of the capacitors, or lossless [1000]")
+NETWORK = Field("tank.network", "network", "choice", option="--network", help="the tank's network [pi]",
+                choices=NETWORKS)
+
+JOB_FIELDS: tuple[Field, ...] = (
+    CARRIER,
+    Field("stage.power", "power", "real", "W", 0, 1e7, True, "--power", "carrier power at the load"),
+    Field("stage.conduction_angle", "conduction_angle", "real", "deg", 0, 360, True, "--angle",
+          "full conduction angle: 360 class A, 180 class B, below class C"),
+    Field("stage.supply", "supply", "real", "V", 0, 1e6, True, "--supply", "supply voltage"),
+    Field("stage.minimum_voltage", "minimum_voltage", "real", "V", 0, 1e6, False, "--minimum-voltage",
+          "lowest output-electrode voltage [8 % of the supply and at least 1 V; tube 12 %]"),
+    Field("stage.harmonics", "harmonics", "count", "", 2, 100, False, "--harmonics", "highest harmonic order shown [10]"),
+    Field("device.family", "family", "choice", option="--family", help="kind of device [bipolar]", choices=FAMILIES),
+    Field("device.output_capacitance", "output_capacitance", "real", "F", 0, 1e-3, False, "--output-capacitance",
+          "capacitance across the device's output, effective over the swing [0]"),
+    Field("device.exponent", "exponent", "real", "", 1, 3, False, "--exponent",
+          "power law of the device: 1 linear, 1.5 space charge, 2 square law [1]"),
+    Field("device.threshold", "threshold", "real", "V", -1e5, 1e5, False, "--threshold",
+          "control voltage where current starts [bipolar 0.7 V]"),
+    Field("device.transfer_factor", "transfer_factor", "real", "", 0, 1e6, True, "--transfer-factor",
+          "K in A/V^exponent: current = K (control voltage - threshold)^exponent"),
+    Field("device.max_voltage", "max_voltage", "real", "V", 0, 1e6, True, "--max-voltage", "rating: peak voltage"),
+    Field("device.max_current", "max_current", "real", "A", 0, 1e6, True, "--max-current", "rating: peak current"),
+    Field("device.max_dissipation", "max_dissipation", "real", "W", 0, 1e7, True, "--max-dissipation",
+          "rating: dissipation"),
+    Field("device.gate_resistance", "gate_resistance", "real", "ohm", 0, 1e6, True, "--gate-resistance",
+          "FET: series gate resistance, for the drive power"),
+    Field("device.input_capacitance", "input_capacitance", "real", "F", 0, 1e-3, True, "--input-capacitance",
+          "FET: input capacitance, for the drive power"),
+    Field("device.power_gain", "power_gain", "real", "dB", 0, 60, True, "--power-gain",
+          "bipolar: power gain, for the drive power"),
+    Field("drive.bias", "bias", "real", "V", -1e5, 1e5, False, "--bias", "bias of the control electrode"),
+    Field("drive.grid_current", "grid_current", "real", "A", 0, 1e3, True, "--grid-current",
+          "tube: direct grid current, for the drive power"),
+    Field("load.impedance", "load", "impedance", "ohm", 0, 1e7, True, "--load",
+          "load: an impedance, or a Touchstone one-port ending in .s1p [50 ohm]"),
+    Field("load.file", "load_file", "text"),
+    NETWORK,
+    LOADED_Q,
+    INPUT_Q,
+    COIL_Q,
+    CAPACITOR_Q,
+    Field("supply.choke", "choke", "real", "H", 0, 1e3, True, "--choke", "supply choke [see the assumptions shown]"),
+    Field("supply.choke_q", "choke_q", "q", "", 1, 1e7, False, "--choke-q", "the choke's Q at the carrier, or lossless [100]"),
+    Field("supply.choke_resistance", "choke_resistance", "real", "ohm", 0, 1e6, False, "--choke-resistance",
+          "dc resistance of the choke [0]"),
+    Field("tank.blocking", "blocking", "real", "F", 0, 1.0, True, "--blocking",
+          "blocking capacitor [reactance a tenth of the load resistance]"),
+    Field("limit.rule", "limit", "text", option="--limit",
+          help="limit on harmonics: us-amateur, us-amateur-before-2003, 43+10log, itu-amateur, or an amount (60dB, 25uW)"),
+    Field("limit.load", "limit_load", "real", "ohm", 0, 1e7, True, "--limit-load",
+          "resistive line load for the verdict [50 ohm]"),
+)

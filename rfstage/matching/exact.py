@@ -1,0 +1,120 @@
+"""Close a network exactly over its own losses.
+
+A closed form knows lossless parts. Here the parts get their Qs, and damped Newton moves their values until
+the network shows the wanted impedance, and a pi also has the loaded Q that was asked. What stands before
+the network (output capacitance, choke, blocking capacitor) is taken off exactly beforehand, so every
+network goes through this one step.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from rfstage.errors import ConvergenceError
+from rfstage.ladder import Branch, Ladder
+from rfstage.matching.quality import loaded_q
+
+_TOLERANCE = 1e-12
+_ITERATIONS = 60
+_STEP = 1e-7  # of the one-sided differences; Newton then gains about seven digits an iteration
+
+
+def behind(feed: Sequence[Branch], wanted: complex, carrier: float) -> complex:
+    """Return the impedance [ohm] that must follow ``feed`` for the device to see ``wanted`` [ohm]."""
+    a, b, c, d = (complex(x) for x in Ladder(feed).chain(carrier))
+    return (d * wanted - b) / (a - c * wanted)
+
+
+def with_losses(tank: Sequence[Branch], *, coil_q: float, capacitor_q: float, carrier: float) -> tuple[Branch, ...]:
+    """Return the parts with their Qs [-]; an infinite Q is lossless."""
+    given = {"coil": coil_q, "capacitor": capacitor_q}
+    return tuple(
+        branch if math.isinf(given[branch.kind]) else replace(branch, q=given[branch.kind], q_frequency=carrier)
+        for branch in tank)
+
+
+def close(
+    feed: Sequence[Branch], tank: Sequence[Branch], *, wanted: complex, load: complex, carrier: float,
+    asked_loaded_q: float | None = None, fixed: int = 0,
+) -> tuple[Branch, ...]:
+    """Return the tank with values that meet the wanted impedance to 1e-12 relative.
+
+    Parameters
+    ----------
+    feed, tank : sequences of Branch
+        What stands before the network, and the network with its losses, values as a start.
+    wanted, load : complex
+        Impedance for the device, and of the load [ohm].
+    carrier : float
+        Hz.
+    asked_loaded_q : float or None
+        Where three values are free: the loaded Q [-] they must also give.
+    fixed : int
+        How many of the first parts keep their values.
+
+    Raises
+    ------
+    ConvergenceError
+        If no values near the start do it.
+    """
+    target = behind(feed, wanted, carrier)
+    moving = tank[fixed:]
+    scale = np.array([_scale(branch, target, carrier) for branch in moving])
+
+    def rebuilt(x: NDArray[np.float64]) -> tuple[Branch, ...]:
+        return (*tank[:fixed],
+                *(replace(b, value=float(v)) for b, v in zip(moving, x * scale, strict=True)))
+
+    def residual(x: NDArray[np.float64]) -> NDArray[np.float64]:
+        parts = rebuilt(x)
+        miss = complex(Ladder(parts).impedance(carrier, load)) / target - 1
+        if asked_loaded_q is None:
+            return np.array([miss.real, miss.imag])
+        return np.array([miss.real, miss.imag, loaded_q(feed, parts, load, carrier) / asked_loaded_q - 1])
+
+    start = np.array([float(branch.value) for branch in moving]) / scale
+    return rebuilt(_newton(residual, start))
+
+
+def _scale(branch: Branch, target: complex, carrier: float) -> float:
+    """Return the part's own size, or that of a small part where it is next to nothing."""
+    omega = 2 * math.pi * carrier
+    least = 0.1 * abs(target) / omega if branch.kind == "coil" else 0.1 / (omega * abs(target))
+    return max(abs(float(branch.value)), least)
+
+
+def _newton(residual, start: NDArray[np.float64]) -> NDArray[np.float64]:  # type: ignore[no-untyped-def]
+    x, r = start, residual(start)
+    size = float(np.abs(r).max())
+    for _ in range(_ITERATIONS):
+        if size <= _TOLERANCE:
+            return x
+        jacobian = np.empty((r.size, x.size))
+        for k in range(x.size):
+            moved = x.copy()
+            moved[k] += _STEP
+            jacobian[:, k] = (residual(moved) - r) / _STEP
+        try:
+            step = np.linalg.solve(jacobian, -r)
+        except np.linalg.LinAlgError:
+            break
+        longest = float(np.abs(step).max())
+        shrink = min(1.0, 0.5 / longest) if longest > 0 else 1.0
+        for _ in range(12):
+            trial = x + shrink * step
+            new = residual(trial)
+            new_size = float(np.abs(new).max())
+            if new_size < size:
+                break
+            shrink /= 2
+        else:
+            break
+        x, r, size = trial, new, new_size
+    if size <= 1e3 * _TOLERANCE:  # rounding in the impedance itself, of high-Q networks
+        return x
+    raise ConvergenceError(f"the network did not close: {size:.3g} left of the wanted impedance")

@@ -1,0 +1,110 @@
+r"""The L network: one coil and one capacitor, the shunt arm at the higher resistance.
+
+::
+
+    shunt arm first                       series arm first
+    wanted ──┬──[jX]── load               wanted ──[jX]──┬── load
+           [jB]                                        [jB]
+
+    low-pass: X a coil, B a capacitor.    high-pass: X a capacitor, B a coil.
+
+For resistances, ``Q = √(R_high/R_low − 1)``, ``|X| = Q R_low``, ``1/|B| = R_high/Q``; there is no freedom
+left, so a Q can't be asked of it. Here both ends may be complex.
+"""
+
+from __future__ import annotations
+
+import math
+
+from rfstage.errors import ImpossibleError
+from rfstage.ladder import Branch
+from rfstage.matching.parts import capacitor, coil, parallel_resistance
+from rfstage.quantity import exact_complex
+
+
+def l_network(wanted: complex, load: complex, *, carrier: float, high_pass: bool = False) -> tuple[Branch, ...]:
+    """Return the lossless L network that shows ``wanted`` when ``load`` is connected.
+
+    Parameters
+    ----------
+    wanted, load : complex
+        Impedances [ohm] at the carrier, both with a resistance above 0.
+    carrier : float
+        Hz.
+    high_pass : bool
+        Series capacitor and shunt coil instead of series coil and shunt capacitor.
+
+    Returns
+    -------
+    tuple of Branch
+        From device to load.
+
+    Raises
+    ------
+    ImpossibleError
+        If no such network exists for these impedances, saying what would work.
+
+    References
+    ----------
+    D. K. Misra, *Radio-Frequency and Microwave Communication Circuits*, 2nd ed. (2004), ch. 6.
+
+    Examples
+    --------
+    600 Ω to 50 Ω at 400 MHz, from the worked example 6.6 of that book:
+
+    >>> [f"{b.name} {b.value:.4g}" for b in l_network(600, 50, carrier=400e6)]
+    ['C1 2.199e-12', 'L1 6.598e-08']
+    """
+    shunt_first = wanted.real > load.real
+    forms = (_shunt_first, _series_first) if shunt_first else (_series_first, _shunt_first)
+    for form in forms:
+        for reactance, susceptance in form(wanted, load):
+            series_fits = reactance < 0 if high_pass else reactance > 0
+            shunt_fits = susceptance < 0 if high_pass else susceptance > 0
+            if series_fits and shunt_fits:
+                return _parts(reactance, susceptance, carrier, first_shunt=form is _shunt_first)
+    name, other = ("l-high-pass", "l") if high_pass else ("l", "l-high-pass")
+    if abs(wanted - load) <= 1e-12 * abs(load):
+        raise ImpossibleError(f"network {name}: the load already is the wanted {exact_complex(wanted)} ohm, "
+                              "so an L has nothing to do; ask for network pi, which also filters")
+    raise ImpossibleError(
+        f"network {name}: no such L turns the load of {exact_complex(load)} ohm into "
+        f"{_rounded(wanted)} ohm at the device; try {other} or pi")
+
+
+def _rounded(z: complex) -> str:
+    return exact_complex(complex(float(f"{z.real:.4g}"), float(f"{z.imag:.4g}")))
+
+
+def _shunt_first(wanted: complex, load: complex) -> list[tuple[float, float]]:
+    """Both solutions (series reactance, shunt susceptance) with the shunt arm at the device."""
+    square = load.real * parallel_resistance(wanted) - load.real**2
+    if square <= 0:
+        return []
+    target = 1 / wanted
+    found = []
+    for root in (math.sqrt(square), -math.sqrt(square)):
+        reactance = root - load.imag
+        found.append((reactance, target.imag - (1 / complex(load.real, root)).imag))
+    return found
+
+
+def _series_first(wanted: complex, load: complex) -> list[tuple[float, float]]:
+    """Both solutions (series reactance, shunt susceptance) with the shunt arm at the load."""
+    y = 1 / load
+    square = y.real / wanted.real - y.real**2
+    if square <= 0:
+        return []
+    found = []
+    for root in (math.sqrt(square), -math.sqrt(square)):
+        susceptance = root - y.imag
+        found.append((wanted.imag - (1 / complex(y.real, root)).imag, susceptance))
+    return found
+
+
+def _parts(reactance: float, susceptance: float, carrier: float, *, first_shunt: bool) -> tuple[Branch, ...]:
+    series = (coil("L1", "series", reactance, carrier) if reactance > 0
+              else capacitor("C1", "series", -reactance, carrier))
+    shunt = (capacitor("C1", "shunt", 1 / susceptance, carrier) if susceptance > 0
+             else coil("L1", "shunt", -1 / susceptance, carrier))
+    return (shunt, series) if first_shunt else (series, shunt)

@@ -1,0 +1,215 @@
+"""Every network by name: closed form, then closed exactly with its losses; and what the result is like."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+from rfstage.errors import ConvergenceError, ImpossibleError
+from rfstage.ladder import Branch, Ladder
+from rfstage.load import Load
+from rfstage.matching.exact import behind, close, with_losses
+from rfstage.matching.l import l_network
+from rfstage.matching.pi import least_loaded_q, pi_network
+from rfstage.matching.quality import bandwidth, input_side_q, loaded_q
+from rfstage.quantity import exact_complex, exact_text, show
+
+DEFAULT_LOADED_Q = 10.0
+DEFAULT_Q_MARGIN = 2.0
+
+
+@dataclass(frozen=True, slots=True)
+class Request:
+    """What is asked of a network: its name, the parts' Qs [-], and one of two Qs or none."""
+
+    network: str
+    coil_q: float
+    capacitor_q: float
+    loaded_q: float | None = None
+    input_q: float | None = None
+
+
+def solve_network(request: Request, *, feed: Sequence[Branch], wanted: complex, load: complex,
+                  carrier: float) -> tuple[Branch, ...]:
+    """Return the network's parts, exact with their losses.
+
+    Parameters
+    ----------
+    request : Request
+        Name and Qs.
+    feed : sequence of Branch
+        What stands before the network: output capacitance, choke, blocking capacitor, or nothing.
+    wanted, load : complex
+        What the device's current generator must see, and the load [ohm].
+    carrier : float
+        Hz.
+
+    Raises
+    ------
+    ImpossibleError
+        If no such network does it; the text says what would.
+    """
+    try:
+        target = behind(feed, wanted, carrier) if feed else wanted
+    except ZeroDivisionError:
+        target = complex(-1)
+    if not target.real > 0:
+        raise ImpossibleError(
+            f"the choke's loss alone is more than the {exact_complex(_figures(wanted))} ohm asked at the device; "
+            "raise supply.choke or supply.choke_q")
+    solve = _solve_pi if request.network == "pi" else _solve_l
+    try:
+        return solve(request, feed, wanted, target, load, carrier)
+    except ConvergenceError as error:
+        raise ImpossibleError(
+            f"network {request.network}: with a coil Q of {request.coil_q:.6g} and a capacitor Q of "
+            f"{request.capacitor_q:.6g} no parts show {exact_complex(_figures(wanted))} ohm to the device ({error}); "
+            "raise tank.coil_q and tank.capacitor_q, or lower the loaded Q") from None
+
+
+def _solve_l(request: Request, feed: Sequence[Branch], wanted: complex, target: complex, load: complex,
+             carrier: float) -> tuple[Branch, ...]:
+    high_pass = request.network == "l-high-pass"
+    if request.loaded_q is not None or request.input_q is not None:
+        asked = request.loaded_q if request.loaded_q is not None else request.input_q
+        q = loaded_q((), l_network(wanted, load, carrier=carrier, high_pass=high_pass), load, carrier)
+        key = "loaded_q" if request.loaded_q is not None else "input_q"
+        raise ImpossibleError(
+            f"tank.{key}: got {asked:.6g} for network {request.network}, whose Q follows from the resistances: "
+            f"{q:.3g} here; leave the Q out, or ask for network pi")
+    try:
+        tank = l_network(target, load, carrier=carrier, high_pass=high_pass)
+    except ImpossibleError:
+        capacitance = _device_capacitance(feed)
+        if capacitance and not high_pass:
+            room = _room_for_output_capacitance(wanted, load, carrier)
+            if room is not None and room < capacitance:
+                raise ImpossibleError(_too_much_capacitance(capacitance, wanted, load, carrier)
+                                      + f"; an L leaves room for {show(room, 'F')}") from None
+        raise
+    lossy = with_losses(tank, coil_q=request.coil_q, capacitor_q=request.capacitor_q, carrier=carrier)
+    parts = close(feed, lossy, wanted=wanted, load=load, carrier=carrier)
+    if any(float(part.value) <= 0 for part in parts):
+        raise ConvergenceError("a part would have to be negative")
+    return parts
+
+
+def _solve_pi(request: Request, feed: Sequence[Branch], wanted: complex, target: complex, load: complex,
+              carrier: float) -> tuple[Branch, ...]:
+    omega = 2 * math.pi * carrier
+    capacitance = _device_capacitance(feed)
+    resistance = 1 / (1 / wanted).real
+    taken = resistance * omega * capacitance
+    asked = request.loaded_q
+    if asked is None and request.input_q is None:
+        asked = max(DEFAULT_LOADED_Q, least_loaded_q(wanted, load, least_input_q=taken) + DEFAULT_Q_MARGIN)
+    try:
+        tank = pi_network(target, load, carrier=carrier, loaded_q=asked, input_q=request.input_q)
+        lossy = with_losses(tank, coil_q=request.coil_q, capacitor_q=request.capacitor_q, carrier=carrier)
+        if request.input_q is not None:
+            c1 = request.input_q / (resistance * omega) - capacitance
+            lossy = (replace(lossy[0], value=c1), *lossy[1:])
+            parts = close(feed, lossy, wanted=wanted, load=load, carrier=carrier, fixed=1)
+        else:
+            parts = close(feed, lossy, wanted=wanted, load=load, carrier=carrier, asked_loaded_q=asked)
+    except ConvergenceError:
+        if capacitance and taken > (request.input_q or asked or 0):
+            raise ImpossibleError(_too_much_capacitance(capacitance, wanted, load, carrier)) from None
+        raise
+    if float(parts[0].value) <= 0:
+        if capacitance:
+            raise ImpossibleError(_too_much_capacitance(capacitance, wanted, load, carrier))
+        raise ImpossibleError("network pi: the input capacitor comes out at nothing; raise the loaded Q")
+    if float(parts[2].value) <= 0:
+        least = least_loaded_q(wanted, load, least_input_q=taken)
+        raise ImpossibleError(
+            f"network pi: the load's own capacitance is more than the output capacitor this Q leaves; a loaded Q "
+            f"above about {least:.3g} leaves room")
+    return parts
+
+
+def _device_capacitance(feed: Sequence[Branch]) -> float:
+    return sum(float(branch.value) for branch in feed if branch.origin == "device")
+
+
+def _room_for_output_capacitance(wanted: complex, load: complex, carrier: float) -> float | None:
+    """Return the shunt capacitance [F] at the device of the L without any, or None if it has none there."""
+    try:
+        first = l_network(wanted, load, carrier=carrier)[0]
+    except ImpossibleError:
+        return None
+    return float(first.value) if first.place == "shunt" else None
+
+
+def _too_much_capacitance(capacitance: float, wanted: complex, load: complex, carrier: float) -> str:
+    taken = 2 * math.pi * carrier * capacitance / (1 / wanted).real
+    fits = least_loaded_q(wanted, load, least_input_q=1.05 * taken)
+    return (f"device.output_capacitance: {show(capacitance, 'F')} has {show(1 / (2 * math.pi * carrier * capacitance), 'ohm')}"
+            f" reactance at {exact_text(carrier, 'Hz')}, an input-side Q of {taken:.3g} by itself against "
+            f"{exact_complex(_figures(wanted))} ohm, which is more than this Q leaves; a pi of loaded Q {fits:.3g} or more "
+            "would take it in")
+
+
+def _figures(z: complex) -> complex:
+    return complex(float(f"{z.real:.4g}"), float(f"{z.imag:.4g}"))
+
+
+@dataclass(frozen=True, slots=True)
+class PartStress:
+    """A part with what it carries at the carrier: peak voltage [V], rms current [A], loss [W], or None."""
+
+    branch: Branch
+    peak_voltage: float | None
+    rms_current: float | None
+    loss: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class Tank:
+    """A network as designed, and what it is like.
+
+    ``parts`` run from device to load and hold all that shapes the RF; ``impedance`` [ohm] is what the
+    device's current generator sees; ``bandwidth`` in Hz; ``terminations`` are (order, |Z(n)|/R).
+    """
+
+    network: str
+    parts: tuple[PartStress, ...]
+    impedance: complex
+    loaded_q: float
+    input_q: float | None
+    bandwidth: float | None
+    efficiency: float
+    terminations: tuple[tuple[int, float], ...]
+    trough_dip: float | None
+
+
+def tank_efficiency(branches: Sequence[Branch], load: complex, carrier: float) -> float:
+    """Return the power in the load over the power into the ladder [-]."""
+    z, h = Ladder(branches).transfer(carrier, load)
+    return float(abs(h) ** 2 * (1 / load).real / z.real)
+
+
+def describe(network: str, feed: Sequence[Branch], tank: Sequence[Branch], *, load: Load, carrier: float,
+             current: float | None, terminations: tuple[tuple[int, float], ...],
+             trough_dip: float | None) -> Tank:
+    """Return the `Tank` for a peak fundamental ``current`` [A] of the device, or without stresses."""
+    branches = (*feed, *tank)
+    at_carrier = complex(load.impedance(carrier))
+    walk = Ladder(branches).walk(carrier, at_carrier)
+    parts = []
+    for branch, state in zip(branches, walk.branches, strict=True):
+        if current is None:
+            parts.append(PartStress(branch, None, None, None))
+            continue
+        amperes = abs(state.current) * current
+        parts.append(PartStress(branch, amperes * abs(branch.impedance(carrier)), amperes / math.sqrt(2),
+                                float(state.loss) * current**2))
+    z = complex(walk.impedance)
+    return Tank(
+        network=network, parts=tuple(parts), impedance=z,
+        loaded_q=loaded_q(feed, tank, at_carrier, carrier),
+        input_q=input_side_q(feed, tank, 1 / (1 / z).real, carrier),
+        bandwidth=bandwidth(branches, load, carrier),
+        efficiency=tank_efficiency(branches, at_carrier, carrier),
+        terminations=terminations, trough_dip=trough_dip)
