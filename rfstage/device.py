@@ -6,20 +6,38 @@
     i0  = transfer_factor · s^exponent                          what the device would give with voltage to spare
     v_k = knee_voltage + knee_resistance · i0                   where it runs out of voltage
     i   = i0 tanh(v/v_k)                                        both ways for a FET, one way otherwise
+
+The law in numbers is in `rfstage.devicelaw`. Values outside their range raise `OutOfRangeError` here, so
+that no law is ever evaluated with them.
 """
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
+
+from rfstage.errors import OutOfRangeError
+
+FAMILIES = ("bipolar", "fet", "tube")
+
+
+def _need(name: str, value: float, need: str, *, holds: bool, hint: str = "") -> None:
+    if not (holds and math.isfinite(value)):
+        raise OutOfRangeError(name, value, need, hint)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class JunctionCapacitance:
-    """A capacitance that falls with voltage: ``at_zero`` [F], ``potential`` [V], ``grading`` [-]."""
+    """A capacitance that falls with voltage: ``at_zero`` [F], ``potential`` [V], ``grading`` [-] in [0, 1)."""
 
     at_zero: float
     potential: float
     grading: float
+
+    def __post_init__(self) -> None:
+        _need("junction_capacitance.at_zero", self.at_zero, "0 F or more", holds=self.at_zero >= 0)
+        _need("junction_capacitance.potential", self.potential, "above 0 V", holds=self.potential > 0)
+        _need("junction_capacitance.grading", self.grading, "from 0 to below 1", holds=0 <= self.grading < 1)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -30,6 +48,11 @@ class ReverseConduction:
     threshold: float
     softness: float
 
+    def __post_init__(self) -> None:
+        _need("reverse_conduction.conductance", self.conductance, "0 S or more", holds=self.conductance >= 0)
+        _need("reverse_conduction.threshold", self.threshold, "0 V or more", holds=self.threshold >= 0)
+        _need("reverse_conduction.softness", self.softness, "0 V or more", holds=self.softness >= 0)
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Device:
@@ -39,6 +62,12 @@ class Device:
     ``threshold``, ``threshold_softness`` and ``knee_voltage`` in V; ``knee_resistance`` in ohm;
     ``amplification_factor`` (mu of a triode) a ratio or None; ``output_capacitance`` in F; the ratings
     ``max_voltage``, ``max_current`` and ``max_dissipation`` in V, A and W, or None.
+
+    Raises
+    ------
+    OutOfRangeError
+        If a value is outside its range: the transfer factor and the knee voltage are above 0, the exponent
+        is from 1 to 3, a softness, resistance or capacitance is 0 or more.
     """
 
     family: str
@@ -55,6 +84,21 @@ class Device:
     max_voltage: float | None = None
     max_current: float | None = None
     max_dissipation: float | None = None
+
+    def __post_init__(self) -> None:
+        if self.family not in FAMILIES:
+            raise OutOfRangeError("family", self.family, "bipolar, fet or tube")
+        _need("transfer_factor", self.transfer_factor, "above 0", holds=self.transfer_factor > 0)
+        _need("exponent", self.exponent, "from 1 to 3", holds=1 <= self.exponent <= 3)
+        _need("threshold", self.threshold, "finite", holds=True)
+        _need("threshold_softness", self.threshold_softness, "0 V or more", holds=self.threshold_softness >= 0)
+        _need("knee_voltage", self.knee_voltage, "above 0 V", holds=self.knee_voltage > 0,
+              hint="0.5 % of the supply will do; no device saturates at zero volts")
+        _need("knee_resistance", self.knee_resistance, "0 ohm or more", holds=self.knee_resistance >= 0)
+        _need("output_capacitance", self.output_capacitance, "0 F or more", holds=self.output_capacitance >= 0)
+        if self.amplification_factor is not None:
+            _need("amplification_factor", self.amplification_factor, "above 0",
+                  holds=self.amplification_factor > 0, hint="leave it out for none")
 
 
 def knee_from_lowest_voltage(lowest: float, peak_current: float, supply: float) -> tuple[float, float]:

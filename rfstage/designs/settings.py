@@ -69,7 +69,7 @@ def with_defaults(job: Job) -> Settings:
     if lowest >= job.supply:
         raise InputError(f"stage.minimum_voltage: the assumed {exact_text(lowest, 'V')} is not below the supply of "
                          f"{exact_text(job.supply, 'V')}; give the device's own lowest voltage")
-    load = _load_over_frequency(use("load.impedance", job.load, 50 + 0j), job.carrier)
+    load = load_over_frequency(use("load.impedance", job.load, 50 + 0j), job.carrier)
     network = use("tank.network", job.network, "pi")
     request = Request(
         network=network, coil_q=use("tank.coil_q", job.coil_q, 150.0),
@@ -89,7 +89,14 @@ def with_defaults(job: Job) -> Settings:
         assumed=assumed)
 
 
-def _load_over_frequency(load: complex | MeasuredLoad, carrier: float) -> Load:
+def load_over_frequency(load: complex | MeasuredLoad, carrier: float) -> Load:
+    """Return a load [ohm, or measured] as one over frequency, given at the carrier [Hz].
+
+    Raises
+    ------
+    InputError
+        If a measured load does not reach the carrier.
+    """
     if not isinstance(load, MeasuredLoad):
         return SeriesLoad(complex(load), carrier)
     if not load.reaches(carrier):

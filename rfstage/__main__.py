@@ -1,0 +1,7 @@
+"""``python -m rfstage`` is the terminal program."""
+
+import sys
+
+from rfstage.cli import main
+
+sys.exit(main())

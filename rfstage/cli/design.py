@@ -1,0 +1,65 @@
+"""``rfstage design``: the main job."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from pathlib import Path
+
+from rfstage.cli.words import Parser, add_field_options, given, output
+from rfstage.files.job import read_job
+from rfstage.files.write import check_targets, write_files
+from rfstage.jobfields import JOB_FIELDS
+
+ABOUT = """\
+Design a stage: from carrier, conduction angle and power to pulse, operating point, tank, harmonics.
+A job file, options, or both; options win.
+
+  rfstage design --carrier 7.1MHz --power 10W --angle 120deg --supply 13.8V --limit us-amateur
+"""
+_GROUPS = {"stage": "stage", "device": "device and ratings", "drive": "drive", "load": "load", "tank": "tank",
+           "supply": "supply", "limit": "limit"}
+
+
+def parser() -> Parser:
+    """Return the command's parser."""
+    made = Parser("design", ABOUT)
+    made.add_argument("job", nargs="?", metavar="JOB.toml", help="job file")
+    for group, title in _GROUPS.items():
+        add_field_options(made, title, [f for f in JOB_FIELDS if f.path.startswith(f"{group}.")])
+    files = made.add_argument_group("files and checks")
+    files.add_argument("--textbook", action="store_true", help="keep the book's design")
+    files.add_argument("--touchstone", metavar="FILE.s2p", help="write the two-port from device node to load")
+    files.add_argument("--save", metavar="STAGE.toml", help="write the stage file")
+    return made
+
+
+def run(words: Sequence[str]) -> int:
+    """Run the command and return its exit status."""
+    found = parser().read(words)
+    job = read_job(found.job.strip() if found.job else None, given(found, JOB_FIELDS))
+    targets = [Path(name) for name in (found.touchstone, found.save) if name]
+    check_targets(targets, overwrite=found.overwrite)
+
+    from rfstage.designs.design import design
+    from rfstage.files.records import design_record
+
+    made = design(job, textbook=found.textbook)
+    contents: list[tuple[Path, str]] = []
+    if found.touchstone:
+        from rfstage.files.touchstone import touchstone_text
+
+        contents.append((Path(found.touchstone), touchstone_text(made)))
+    if found.save:
+        from rfstage.files.stage import stage_text
+
+        contents.append((Path(found.save), stage_text(made.stage, Path(found.save).parent)))
+    write_files(contents, overwrite=found.overwrite)
+
+    def page(look):  # type: ignore[no-untyped-def]
+        from rfstage.report.design import summary
+
+        return summary(made, look)
+
+    output(found, design_record(made, [str(path) for path, _ in contents]), page)
+    failed = made.worst is not None and made.worst.margin is not None and made.worst.margin < 0
+    return 1 if failed else 0

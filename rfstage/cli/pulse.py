@@ -1,0 +1,49 @@
+"""``rfstage pulse``: the coefficients of a current pulse."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+
+from rfstage.cli.words import Parser, output, read_all
+from rfstage.fields import Field
+
+ABOUT = """\
+Fourier coefficients of the current pulse of a device that conducts for part of each cycle.
+
+  rfstage pulse 120deg --orders 5
+"""
+_ANGLE = Field("ANGLE", "angle", "real", "deg", 0, 360, True)
+_EXPONENT = Field("", "exponent", "real", "", 1, 3, option="--exponent")
+_ORDERS = Field("", "orders", "count", "", 1, 10_000, option="--orders")
+
+
+def parser() -> Parser:
+    """Return the command's parser."""
+    made = Parser("pulse", ABOUT)
+    made.add_argument("angle", metavar="ANGLE", help="full conduction angle in degrees")
+    made.add_argument("--exponent", metavar="P", default="1", help="power law of the device, 1 to 3 [1]")
+    made.add_argument("--orders", metavar="N", default="10", help="highest order [10]")
+    return made
+
+
+def run(words: Sequence[str]) -> int:
+    """Run the command and return its exit status."""
+    found = parser().read(words)
+    values = read_all({"angle": (_ANGLE, found.angle), "exponent": (_EXPONENT, found.exponent),
+                       "orders": (_ORDERS, found.orders)})
+
+    from rfstage.files.records import numbers, pulse_record
+    from rfstage.pulse import operating_class, pulse_coefficients
+
+    angle, exponent = values["angle"], values["exponent"]
+    a = pulse_coefficients(math.radians(angle / 2), highest_order=values["orders"], exponent=exponent)
+    letter = operating_class(angle)
+
+    def page(look):  # type: ignore[no-untyped-def]
+        from rfstage.report.small import pulse_page
+
+        return pulse_page(look, angle=angle, exponent=exponent, operating_class=letter, coefficients=numbers(a))
+
+    output(found, pulse_record(angle=angle, exponent=exponent, operating_class=letter, coefficients=a), page)
+    return 0

@@ -1,0 +1,83 @@
+"""One network by itself: what `match` answers."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+
+from rfstage.designs.settings import load_over_frequency
+from rfstage.harmonics import terminations
+from rfstage.ladder import Ladder
+from rfstage.load import MeasuredLoad
+from rfstage.matching.networks import Request, Tank, describe, solve_network, tank_efficiency
+
+
+@dataclass(frozen=True, slots=True)
+class SingleNetwork:
+    """A network, the load at the carrier [ohm], and (order, dB) of its harmonic transfer."""
+
+    tank: Tank
+    load: complex
+    transfer: tuple[tuple[int, float], ...]
+
+
+def single_network(
+    *, wanted: complex, load: complex | MeasuredLoad, carrier: float, network: str = "pi",
+    loaded_q: float | None = None, input_q: float | None = None, coil_q: float = 150.0, capacitor_q: float = 1000.0,
+    power: float | None = None, harmonics: int = 10,
+) -> SingleNetwork:
+    """Return one network that shows ``wanted`` when ``load`` is connected.
+
+    Parameters
+    ----------
+    wanted : complex
+        What the device should see [ohm].
+    load : complex or MeasuredLoad
+        The load [ohm].
+    carrier : float
+        Hz.
+    network : str
+        ``"l"``, ``"l-high-pass"`` or ``"pi"``.
+    loaded_q, input_q, coil_q, capacitor_q : float
+        Of a pi at most one of the first two [-]; of the parts, infinite for lossless.
+    power : float or None
+        Power at the load [W], for the parts' stresses.
+    harmonics : int
+        Highest order of the transfer.
+
+    Returns
+    -------
+    SingleNetwork
+        The transfer is the load current at n times the carrier against the carrier's, for equal device
+        currents [dB].
+
+    Raises
+    ------
+    RfstageError
+        If no such network exists, or the load does not reach the carrier.
+
+    Examples
+    --------
+    >>> made = single_network(wanted=1000, load=50, carrier=3.5e6, input_q=12, coil_q=math.inf, capacitor_q=math.inf)
+    >>> [round(level, 2) for _, level in made.transfer[:2]]
+    [-38.21, -50.2]
+    """
+    over_frequency = load_over_frequency(load, carrier)
+    at_carrier = complex(over_frequency.impedance(carrier))
+    request = Request(network, coil_q, capacitor_q, loaded_q, input_q)
+    branches = solve_network(request, feed=(), wanted=complex(wanted), load=at_carrier, carrier=carrier)
+    ladder = Ladder(branches)
+    orders = range(2, harmonics + 1)
+    current = None
+    if power is not None:
+        device_power = power / tank_efficiency(branches, at_carrier, carrier)
+        current = math.sqrt(2 * device_power / complex(ladder.impedance(carrier, at_carrier)).real)
+    tank = describe(network, (), branches, load=over_frequency, carrier=carrier, current=current, trough_dip=None,
+                    terminations=terminations(ladder, over_frequency, carrier, abs(wanted), orders))
+    frequencies = carrier * np.arange(1, harmonics + 1)
+    z = over_frequency.impedance(frequencies)
+    amperes = np.abs(ladder.transimpedance(frequencies, z) / z)
+    levels = 20 * np.log10(amperes / amperes[0])
+    return SingleNetwork(tank, at_carrier, tuple((n, float(levels[n - 1])) for n in orders))

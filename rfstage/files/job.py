@@ -1,0 +1,104 @@
+"""Read a job: a TOML file, options, or both. Nothing heavy is loaded before the job is sound."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from pathlib import Path
+from typing import Any
+
+from rfstage.errors import InputError
+from rfstage.fields import Field, nearest, read
+from rfstage.files.tables import parse_toml, read_table
+from rfstage.job import Job, conflicts
+from rfstage.jobfields import JOB_FIELDS, REQUIRED
+from rfstage.quantity import QuantityError
+
+LOAD_FILE_ENDING = ".s1p"
+
+
+def load_job(path: str | Path) -> Job:
+    """Read a job file.
+
+    Parameters
+    ----------
+    path : str or Path
+        A TOML file with the keys of `rfstage.jobfields.JOB_FIELDS`.
+
+    Returns
+    -------
+    Job
+
+    Raises
+    ------
+    InputError
+        With one line for each value that is unknown, missing, malformed or out of range.
+    FileError
+        If the job file can't be read.
+    """
+    return read_job(path, {})
+
+
+def read_job(path: str | Path | None, options: Mapping[str, str]) -> Job:
+    """Return the job of a file and options by field name; options win. Errors as `load_job`."""
+    problems: list[str] = []
+    values: dict[str, Any] = {}
+    where = {field.name: field.path for field in JOB_FIELDS}
+    if path is not None:
+        values = _from_file(Path(path), problems)
+        where = {name: f"{path}: {key}" for name, key in where.items()}
+    for field in JOB_FIELDS:
+        if field.name in options:
+            _take_option(field, options[field.name], values, problems)
+    for name in REQUIRED:
+        if name not in values and not any(where[name] in p or _field(name).option in p for p in problems):
+            field = _field(name)
+            problems.append(f"{where[name]}: missing ({field.help}; option {field.option})")
+    problems += conflicts(values)
+    file = values.get("load_file")
+    if file is not None and not Path(file).is_file():
+        problems.append(f"load.file: {file} is not there")
+    if problems:
+        raise InputError(*problems)
+    if file is not None:
+        from rfstage.files.touchstone import read_load
+
+        values["load"] = read_load(file)
+    return Job(**values)
+
+
+def _field(name: str) -> Field:
+    return next(field for field in JOB_FIELDS if field.name == name)
+
+
+def _take_option(field: Field, text: str, values: dict[str, Any], problems: list[str]) -> None:
+    if field.name == "load" and text.lower().endswith(LOAD_FILE_ENDING):
+        values["load_file"] = text
+        values.pop("load", None)
+        return
+    try:
+        values[field.name] = read(field, text)
+    except QuantityError as error:
+        problems.append(f"{field.option}: {error}")
+    if field.name == "load":
+        values.pop("load_file", None)
+    if field.name in ("loaded_q", "input_q"):
+        values.pop("input_q" if field.name == "loaded_q" else "loaded_q", None)
+
+
+def _from_file(path: Path, problems: list[str]) -> dict[str, Any]:
+    values: dict[str, Any] = {}
+    groups: dict[str, list[Field]] = {}
+    for field in JOB_FIELDS:
+        groups.setdefault(field.path.split(".")[0], []).append(field)
+    for group, table in parse_toml(path).items():
+        if group in groups:
+            values |= read_table(table, groups[group], prefix=f"{path}: {group}.", problems=problems)
+        else:
+            problems.append(f"{path}: {group}: no such table{nearest(group, groups)}")
+    if "load_file" in values:
+        if "load" in values:
+            problems.append(f"{path}: load: got both an impedance and a file; give one of them")
+        values["load_file"] = str(path.parent / values["load_file"])
+    return values
+
+

@@ -1,0 +1,330 @@
+"""The stage file: what is built, in TOML that a person edits to what was actually fitted."""
+
+from __future__ import annotations
+
+import math
+import os
+from pathlib import Path
+from typing import Any
+
+from rfstage.device import Device, JunctionCapacitance, ReverseConduction
+from rfstage.errors import InputError
+from rfstage.fields import LOSSLESS, Field
+from rfstage.files.tables import parse_toml, read_table
+from rfstage.jobfields import CARRIER, FAMILIES
+from rfstage.ladder import Branch
+from rfstage.limits import limit_named
+from rfstage.load import Load, MeasuredLoad, SeriesLoad
+from rfstage.quantity import QuantityError, exact_complex, exact_text, parse_real
+from rfstage.stage import CHOKE, OUTPUT_CAPACITANCE, Asked, Drive, PartData, Stage, Supply
+
+FORMAT = "rfstage.stage"
+VERSION = 1
+VALUE_UNIT = {"capacitor": "F", "coil": "H", "resistor": "ohm"}
+
+_TOP = (
+    Field("format", "format", "choice", choices=(FORMAT,)),
+    Field("version", "version", "count", "", VERSION, VERSION),
+    Field("carrier", "carrier", "real", "Hz", CARRIER.low, CARRIER.high),
+)
+_DEVICE = (
+    Field("family", "family", "choice", choices=FAMILIES),
+    Field("transfer_factor", "transfer_factor", "real", "", 0, 1e9, True),
+    Field("exponent", "exponent", "real", "", 1, 3),
+    Field("threshold", "threshold", "real", "V", -1e6, 1e6),
+    Field("threshold_softness", "threshold_softness", "real", "V", 0, 1e6),
+    Field("knee_voltage", "knee_voltage", "real", "V", 0, 1e6, True),
+    Field("knee_resistance", "knee_resistance", "real", "ohm", 0, 1e7),
+    Field("amplification_factor", "amplification_factor", "real", "", 1, 1e4, True),
+    Field("output_capacitance", "output_capacitance", "real", "F", 0, 1e-3),
+    Field("max_voltage", "max_voltage", "real", "V", 0, 1e7, True),
+    Field("max_current", "max_current", "real", "A", 0, 1e7, True),
+    Field("max_dissipation", "max_dissipation", "real", "W", 0, 1e8, True),
+)
+_JUNCTION = (
+    Field("at_zero", "at_zero", "real", "F", 0, 1e-3, True),
+    Field("potential", "potential", "real", "V", 0, 1e4, True),
+    Field("grading", "grading", "real", "", 0, 0.95, True),
+)
+_REVERSE = (
+    Field("conductance", "conductance", "real", "S", 0, 1e6, True),
+    Field("threshold", "threshold", "real", "V", 0, 1e4),
+    Field("softness", "softness", "real", "V", 0, 1e4, True),
+)
+_DRIVE = (
+    Field("bias", "bias", "real", "V", -1e6, 1e6),
+    Field("amplitude", "amplitude", "real", "V", 0, 1e6),
+)
+_SUPPLY = (
+    Field("voltage", "voltage", "real", "V", 0, 1e6, True),
+    Field("choke", "choke", "real", "H", 0, 1e3, True),
+    Field("choke_resistance", "choke_resistance", "real", "ohm", 0, 1e6),
+    Field("choke_q", "choke_q", "q", "", 1, 1e7),
+)
+_BRANCH = (
+    Field("name", "name", "text"),
+    Field("place", "place", "choice", choices=("series", "shunt")),
+    Field("kind", "kind", "choice", choices=tuple(VALUE_UNIT)),
+    Field("q", "q", "q", "", 1, 1e7),
+    Field("series_resistance", "series_resistance", "real", "ohm", 0, 1e7),
+    Field("lead_inductance", "lead_inductance", "real", "H", 0, 1.0),
+    Field("self_capacitance", "self_capacitance", "real", "F", 0, 1e-3),
+    Field("tolerance", "tolerance", "real", "%", 0, 100),
+)
+_LOAD = (
+    Field("impedance", "impedance", "impedance", "ohm", 0, 1e7, True),
+    Field("file", "file", "text"),
+    Field("resistance", "resistance", "real", "ohm", 0, 1e7, True),
+    Field("inductance", "inductance", "real", "H", 0, 1e3),
+    Field("capacitance", "capacitance", "real", "F", 0, 1.0, True),
+)
+_ASKED = (
+    Field("output_power", "output_power", "real", "W", 0, 1e7, True),
+    Field("conduction_angle", "conduction_angle", "real", "deg", 0, 360, True),
+    Field("minimum_voltage", "minimum_voltage", "real", "V", 0, 1e6),
+)
+_LIMIT = (Field("rule", "rule", "text"), Field("load", "load", "real", "ohm", 0, 1e7, True))
+_WINDING = (
+    Field("turns", "turns", "real", "", 0, 1e5, True),
+    Field("diameter", "diameter", "real", "m", 0, 100, True),
+    Field("length", "length", "real", "m", 0, 100, True),
+    Field("wire", "wire", "real", "m", 0, 1, True),
+    Field("core", "core", "text"),
+)
+_TABLES = ("device", "drive", "supply", "branch", "load", "asked", "limit")
+
+
+def stage_text(stage: Stage, folder: Path) -> str:
+    """Return a stage as TOML; a load file is named as seen from ``folder``."""
+    device, supply = stage.device, stage.supply
+    lines = [f'format = "{FORMAT}"', f"version = {VERSION}", f'carrier = "{exact_text(stage.carrier, "Hz")}"',
+             "", "[device]", f'family = "{device.family}"']
+    lines += _lines(_DEVICE[1:], device)
+    if device.junction_capacitance is not None:
+        lines.append(f"junction_capacitance = {_inline(_JUNCTION, device.junction_capacitance)}")
+    if device.reverse_conduction is not None:
+        lines.append(f"reverse_conduction = {_inline(_REVERSE, device.reverse_conduction)}")
+    lines += ["", "[drive]", *_lines(_DRIVE, stage.drive), "", "[supply]", *_lines(_SUPPLY, supply)]
+    for branch in stage.branches:
+        lines += ["", *_branch_lines(branch, stage.part_data.get(branch.name, PartData()))]
+    lines += ["", "[load]", *_load_lines(stage.load, folder)]
+    asked = _lines(_ASKED, stage.asked)
+    if asked:
+        lines += ["", "[asked]", *asked]
+    if stage.limit_rule or stage.limit_load:
+        lines += ["", "[limit]"]
+        lines += [f'rule = "{stage.limit_rule}"'] if stage.limit_rule else []
+        lines += [f'load = "{exact_text(stage.limit_load, "ohm")}"'] if stage.limit_load else []
+    return "\n".join(lines) + "\n"
+
+
+def _written(field: Field, value: Any) -> str:
+    if field.kind == "q":
+        return f'"{LOSSLESS}"' if math.isinf(value) else repr(value)
+    if field.kind == "text":
+        return f'"{value}"'
+    return f'"{exact_text(value, field.unit)}"' if field.unit else repr(value)
+
+
+def _lines(fields: tuple[Field, ...], source: object) -> list[str]:
+    found = ((field, getattr(source, field.name)) for field in fields)
+    return [f"{field.name} = {_written(field, value)}" for field, value in found if value is not None]
+
+
+def _inline(fields: tuple[Field, ...], source: object) -> str:
+    return "{ " + ", ".join(_lines(fields, source)) + " }"
+
+
+def _branch_lines(branch: Branch, data: PartData) -> list[str]:
+    lines = ["[[branch]]", f'name = "{branch.name}"', f'place = "{branch.place}"', f'kind = "{branch.kind}"',
+             f'value = "{exact_text(float(branch.value), VALUE_UNIT[branch.kind])}"']
+    if branch.q is not None:
+        lines.append(f"q = {float(branch.q)!r}")
+    if branch.series_resistance is not None:
+        lines.append(f'series_resistance = "{exact_text(float(branch.series_resistance), "ohm")}"')
+    if branch.lead_inductance != 0:
+        lines.append(f'lead_inductance = "{exact_text(float(branch.lead_inductance), "H")}"')
+    if branch.self_capacitance != 0:
+        lines.append(f'self_capacitance = "{exact_text(float(branch.self_capacitance), "F")}"')
+    if data.trim is not None:
+        unit = VALUE_UNIT[branch.kind]
+        lines.append("trim = [" + ", ".join(f'"{exact_text(v, unit)}"' for v in data.trim) + "]")
+    if data.tolerance is not None:
+        lines.append(f'tolerance = "{exact_text(data.tolerance, "%")}"')
+    if data.winding is not None:
+        kinds = {field.name: field for field in _WINDING}
+        lines.append("winding = { " + ", ".join(f"{k} = {_written(kinds[k], v)}" for k, v in data.winding) + " }")
+    return lines
+
+
+def _load_lines(load: Load, folder: Path) -> list[str]:
+    if isinstance(load, MeasuredLoad):
+        relative = Path(os.path.relpath(load.name, folder)).as_posix()
+        return [f'file = "{relative}"']
+    assert isinstance(load, SeriesLoad)
+    return [f'impedance = "{exact_complex(load.at_carrier)} ohm"']
+
+
+def load_stage(path: str | Path) -> Stage:
+    """Read a stage file.
+
+    Parameters
+    ----------
+    path : str or Path
+        A TOML file; its keys are in the README.
+
+    Returns
+    -------
+    Stage
+
+    Raises
+    ------
+    InputError
+        With one line for each value that is unknown, missing, malformed or out of range.
+    FileError
+        If the file, or the load file it names, can't be read.
+    """
+    path = Path(path)
+    document = parse_toml(path)
+    problems: list[str] = []
+    top = read_table(document, _TOP, prefix=f"{path}: ", problems=problems, also=_TABLES)
+    tables = {name: document.get(name, {}) for name in _TABLES}
+    read: dict[str, dict[str, Any]] = {}
+    for name, fields, also in (("device", _DEVICE, ("junction_capacitance", "reverse_conduction")), ("drive", _DRIVE, ()),
+                               ("supply", _SUPPLY, ()), ("load", _LOAD, ()), ("asked", _ASKED, ()), ("limit", _LIMIT, ())):
+        read[name] = read_table(tables[name], fields, prefix=f"{path}: {name}.", problems=problems, also=also)
+    branches, data = _read_branches(tables["branch"], top.get("carrier"), f"{path}: branch", problems)
+    needed = {"device": ("family", "transfer_factor", "threshold", "knee_voltage"),
+              "drive": ("bias", "amplitude"), "supply": ("voltage", "choke")}
+    _missing({"": top}, {"": ("carrier",)}, str(path), problems)
+    _missing(read, needed, str(path), problems)
+    junction = _read_inline(tables["device"], "junction_capacitance", _JUNCTION, JunctionCapacitance, path, problems)
+    reverse = _read_inline(tables["device"], "reverse_conduction", _REVERSE, ReverseConduction, path, problems)
+    load = _read_load(read["load"], top.get("carrier"), path, problems)
+    rule = read["limit"].get("rule")
+    if rule is not None:
+        try:
+            limit_named(rule)
+        except InputError as error:
+            problems += [f"{path}: {line}" for line in error.problems]
+    if problems:
+        raise InputError(*problems)
+    assert load is not None
+    device = {"exponent": 1.0, "threshold_softness": 0.0, "knee_resistance": 0.0, **read["device"]}
+    return Stage(
+        carrier=top["carrier"],
+        device=Device(**device, junction_capacitance=junction, reverse_conduction=reverse),
+        drive=Drive(**read["drive"]), supply=Supply(**read["supply"]), branches=branches, load=load,
+        asked=Asked(**read["asked"]), limit_rule=rule, limit_load=read["limit"].get("load"), part_data=data)
+
+
+def _missing(read: dict[str, dict[str, Any]], needed: dict[str, tuple[str, ...]], path: str, problems: list[str]) -> None:
+    for table, keys in needed.items():
+        for key in keys:
+            full = f"{path}: {table}.{key}" if table else f"{path}: {key}"
+            if key not in read[table] and not any(problem.startswith(full + ":") for problem in problems):
+                problems.append(f"{full}: missing")
+
+
+def _read_inline(device: object, key: str, fields: tuple[Field, ...], make: Any, path: Path, problems: list[str]) -> Any:
+    if not isinstance(device, dict) or key not in device:
+        return None
+    before = len(problems)
+    prefix = f"{path}: device.{key}."
+    values = read_table(device[key], fields, prefix=prefix, problems=problems)
+    _missing({f"device.{key}": values}, {f"device.{key}": tuple(f.name for f in fields)}, str(path), problems)
+    return make(**values) if len(problems) == before else None
+
+
+def _read_branches(raw: object, carrier: float | None, prefix: str, problems: list[str]) -> tuple[tuple[Branch, ...], dict[str, PartData]]:
+    if not isinstance(raw, list) or not raw:
+        problems.append(f"{prefix}: missing; a stage has one [[branch]] for each part from device to load")
+        return (), {}
+    branches: list[Branch] = []
+    data: dict[str, PartData] = {}
+    for k, table in enumerate(raw, start=1):
+        where = f"{prefix}[{k}]."
+        before = len(problems)
+        values = read_table(table, _BRANCH, prefix=where, problems=problems, also=("value", "trim", "winding"))
+        unit = VALUE_UNIT.get(values.get("kind", ""), "")
+        for key in ("name", "place", "kind"):
+            if key not in values and len(problems) == before:
+                problems.append(f"{where}{key}: missing")
+        if not isinstance(table, dict) or not unit:
+            continue
+        value = _positive(table.get("value"), unit, f"{where}value", problems)
+        q = values.get("q")
+        if q is not None and "series_resistance" in values:
+            problems.append(f"{where}q: got both a Q and a series resistance; give one of them")
+        name = str(values.get("name"))
+        if name in data or name in (CHOKE, OUTPUT_CAPACITANCE):
+            problems.append(f"{where}name: {name!r} is taken; give each branch a name of its own")
+        trim = _read_trim(table.get("trim"), unit, f"{where}trim", problems)
+        winding = None
+        if "winding" in table:
+            wound = read_table(table["winding"], _WINDING, prefix=f"{where}winding.", problems=problems)
+            winding = tuple(wound.items())
+        data[name] = PartData(trim, values.get("tolerance"), winding)
+        if len(problems) == before:
+            branches.append(Branch(
+                name, values["place"], values["kind"], value, q=None if q is None or math.isinf(q) else q,
+                q_frequency=carrier, series_resistance=values.get("series_resistance"),
+                lead_inductance=values.get("lead_inductance", 0.0), self_capacitance=values.get("self_capacitance", 0.0)))
+    return tuple(branches), data
+
+
+def _positive(raw: object, unit: str, where: str, problems: list[str]) -> float:
+    if raw is None:
+        problems.append(f"{where}: missing")
+        return math.nan
+    try:
+        if isinstance(raw, bool) or not isinstance(raw, str | int | float):
+            raise QuantityError(f"got {raw!r}")
+        value = parse_real(raw, unit) if isinstance(raw, str) else float(raw)
+        if not 0 < value < math.inf:
+            raise QuantityError(f"got {exact_text(value, unit)}; allowed above 0 {unit}")
+    except (QuantityError, OverflowError) as error:
+        problems.append(f"{where}: {error}")
+        return math.nan
+    return value
+
+
+def _read_trim(raw: object, unit: str, where: str, problems: list[str]) -> tuple[float, float] | None:
+    if raw is None:
+        return None
+    if not isinstance(raw, list) or len(raw) != 2:
+        problems.append(f"{where}: got {raw!r}; wanted the least and the most that can be set")
+        return None
+    low, high = (_positive(value, unit, where, problems) for value in raw)
+    if low >= high:
+        problems.append(f"{where}: the least must be below the most")
+    return low, high
+
+
+def _read_load(values: dict[str, Any], carrier: float | None, path: Path, problems: list[str]) -> Load | None:
+    ways = [key for key in ("impedance", "file", "resistance") if key in values]
+    if len(ways) != 1:
+        if not any(f"{path}: load" in problem for problem in problems):
+            problems.append(f"{path}: load: got {' and '.join(ways) or 'nothing'}; wanted one of impedance, file, resistance")
+        return None
+    if carrier is None:
+        return None
+    if "file" in values:
+        from rfstage.files.touchstone import read_load
+
+        load = read_load(path.parent / values["file"])
+        if not load.reaches(carrier):
+            problems.append(f"{path}: load.file: {load.name} does not reach the carrier of {exact_text(carrier, 'Hz')}")
+        return load
+    if "impedance" in values:
+        return SeriesLoad(values["impedance"], carrier)
+    if "inductance" in values and "capacitance" in values:
+        problems.append(f"{path}: load: got both an inductance and a capacitance in series; give one of them")
+        return None
+    omega = 2 * math.pi * carrier
+    reactance = omega * values.get("inductance", 0.0)
+    if "capacitance" in values:
+        reactance = -1 / (omega * values["capacitance"])
+    return SeriesLoad(complex(values["resistance"], reactance), carrier)
+
+

@@ -1,0 +1,213 @@
+"""Touchstone files through scikit-rf: read a measured load, write the two-port of a stage.
+
+scikit-rf's ``Network(path)`` tries to unpickle a file before it parses it, so text is read here and only
+handed over; a prescan finds the line of anything that is not Touchstone.
+"""
+
+from __future__ import annotations
+
+import io
+import math
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from rfstage.designs.design import Design
+from rfstage.errors import FileError
+from rfstage.ladder import Ladder
+from rfstage.load import MeasuredLoad
+from rfstage.quantity import exact_complex, exact_text, show
+
+PORT_RESISTANCE = 50.0  # ohm
+_UNITS = ("hz", "khz", "mhz", "ghz")
+_FORMATS = ("ri", "ma", "db")
+
+
+def read_load(path: str | Path) -> MeasuredLoad:
+    """Return a measured load from a Touchstone one-port.
+
+    Parameters
+    ----------
+    path : str or Path
+        A ``.s1p`` file of reflection (or impedance) over rising frequency.
+
+    Raises
+    ------
+    FileError
+        If the file can't be read or is not a Touchstone one-port, with the line.
+    InputError
+        If the load in it is not passive.
+    """
+    path = Path(path)
+    network = read_network(path, ports=1)
+    z = np.asarray(network.z[:, 0, 0], dtype=np.complex128)
+    return MeasuredLoad(np.asarray(network.f, dtype=np.float64), z, str(path))
+
+
+def read_network(path: Path, *, ports: int) -> Any:
+    """Return scikit-rf's network of a Touchstone file with this many ports; errors as `read_load`."""
+    import skrf
+
+    try:
+        raw = path.read_bytes()
+    except OSError as error:
+        raise FileError(f"{path}: can't be read ({error.strerror})") from None
+    text = _checked(raw.decode("utf-8", errors="replace").lstrip("\ufeff"), path, ports)
+    stream = io.StringIO(text)
+    stream.name = f"load.s{ports}p"
+    try:
+        network = skrf.Network()
+        network.read_touchstone(stream)
+    except (ValueError, IndexError, KeyError, TypeError, AttributeError, NotImplementedError, EOFError) as error:
+        raise FileError(f"{path}: is not a Touchstone file that can be read ({error})") from None
+    if network.nports != ports:
+        raise FileError(f"{path}: has {network.nports} ports; wanted {ports}")
+    return network
+
+
+def _checked(text: str, path: Path, ports: int) -> str:
+    """Return the text with its option line in the usual order, or say what line is wrong."""
+    out: list[str] = []
+    option_seen = False
+    numbers = 0
+    for count, line in enumerate(text.splitlines(), start=1):
+        body = line.split("!")[0].strip()
+        if not body:
+            continue
+        if body.startswith("#"):
+            if not option_seen:
+                out.append(_option_line(body, path, count))
+            option_seen = True
+        elif body.startswith("["):
+            out.append(body)
+        else:
+            numbers += _count_numbers(body, path, count)
+            out.append(body)
+    if not option_seen:
+        raise FileError(f"{path}: is not a Touchstone file: it has no option line (such as # MHz S RI R 50)")
+    row = 1 + 2 * ports**2
+    if numbers == 0 or numbers % row:
+        raise FileError(f"{path}: holds {numbers} numbers; a {ports}-port has {row} for each frequency, so a row is cut "
+                        "or the file has another number of ports")
+    return "\n".join(out) + "\n"
+
+
+def _count_numbers(body: str, path: Path, line: int) -> int:
+    words = body.split()
+    for word in words:
+        try:
+            value = float(word)
+        except ValueError:
+            hint = "; write a decimal point, not a comma" if "," in word else ""
+            raise FileError(f"{path}: line {line}: {word[:40]!r} is not a number{hint}") from None
+        if not math.isfinite(value):
+            raise FileError(f"{path}: line {line}: {word!r} is not a finite number")
+    return len(words)
+
+
+def _option_line(body: str, path: Path, line: int) -> str:
+    words = body[1:].lower().split()
+    unit, parameter, form, resistance = "ghz", "s", "ma", "50"
+    k = 0
+    while k < len(words):
+        word = words[k]
+        if word in _UNITS:
+            unit = word
+        elif word in _FORMATS:
+            form = word
+        elif word in ("s", "z", "y"):
+            parameter = word
+        elif word == "r" and k + 1 < len(words):
+            k += 1
+            resistance = words[k]
+            try:
+                good = 0 < float(resistance) < math.inf
+            except ValueError:
+                good = False
+            if not good:
+                raise FileError(f"{path}: line {line}: reference resistance {resistance!r}; wanted above 0 ohm")
+        else:
+            raise FileError(f"{path}: line {line}: {word!r} is not known in an option line (such as # MHz S RI R 50)")
+        k += 1
+    return f"# {unit} {parameter} {form} r {resistance}"
+
+
+def grid(carrier: float, highest_order: int) -> NDArray[np.float64]:
+    """Return the frequencies of an export [Hz]: dense around the carrier, each harmonic exactly on it."""
+    top = max(10, highest_order)
+    ratios = np.concatenate([
+        np.linspace(0.1, 0.9, 41), np.linspace(0.9, 1.1, 201), np.linspace(1.1, top + 0.5, 50 * top)])
+    exact = carrier * np.arange(1, top + 1)
+    others = carrier * np.round(ratios, 9)
+    apart = np.abs(others[:, np.newaxis] / exact - 1).min(axis=1) > 1e-9
+    return np.unique(np.concatenate([others[apart], exact]))
+
+
+def two_port(ladder: Ladder, frequencies: NDArray[np.float64]) -> NDArray[np.complex128]:
+    """Return S-parameters, shape (frequencies, 2, 2), against 50 Ω at both ports; port 1 at the device."""
+    a, b, c, d = ladder.chain(frequencies)
+    r = PORT_RESISTANCE
+    total = a + b / r + c * r + d
+    s = np.empty((frequencies.size, 2, 2), dtype=np.complex128)
+    s[:, 0, 0] = (a + b / r - c * r - d) / total
+    s[:, 0, 1] = s[:, 1, 0] = 2 / total
+    s[:, 1, 1] = (-a + b / r - c * r + d) / total
+    return s
+
+
+def touchstone_text(design: Design) -> str:
+    """Return the Touchstone text of a design's two-port, from device node to load, with its comments.
+
+    Choke and blocking capacitor are in it; the output capacitance is left out, as it belongs to the
+    device's own model.
+    """
+    branches = [part.branch for part in design.tank.parts if part.branch.origin != "device"]
+    frequencies = grid(design.job.carrier, design.settings.highest_order)
+    s = two_port(Ladder(branches), frequencies)
+    if not np.all(np.isfinite(s)):
+        raise FileError("the two-port is not finite at every frequency; nothing to export")
+    return _network_text(frequencies, s, _comments(design))
+
+
+def _network_text(frequencies: NDArray[np.float64], s: NDArray[np.complex128], comments: list[str]) -> str:
+    import skrf
+
+    network = skrf.Network(frequency=skrf.Frequency.from_f(frequencies, unit="Hz"), s=s, z0=PORT_RESISTANCE)
+    body = network.write_touchstone("stage.s2p", return_string=True, skrf_comment=False, form="ri", version="1.0")
+    text = "".join(f"! rfstage: {_clean(line)}\n" for line in comments) + body
+    stream = io.StringIO(text)
+    stream.name = "stage.s2p"
+    again = skrf.Network()
+    again.read_touchstone(stream)
+    if not (np.array_equal(again.f, frequencies) and np.array_equal(again.s, s)):
+        raise FileError("the Touchstone text does not read back as what was written; nothing was written")
+    return text
+
+
+def _clean(line: str) -> str:
+    return "".join(c if 32 <= ord(c) < 127 else "?" for c in line)
+
+
+def _comments(design: Design) -> list[str]:
+    job = design.job
+    lines = [
+        "two-port from the device's output node (port 1) to the load (port 2), 50 ohm at both",
+        "choke and blocking capacitor are in it; the device's output capacitance is left out",
+        f"carrier {exact_text(job.carrier, 'Hz')}, {exact_text(job.power, 'W')} at the load, conduction angle "
+        f"{exact_text(job.conduction_angle, 'deg')}, supply {exact_text(job.supply, 'V')}",
+        f"load resistance for the device {design.point.load_resistance:.6g} ohm, designed to the {design.designed_to} power",
+        f"load {exact_complex(design.settings.load_impedance)} ohm at the carrier; harmonics 2.. lie exactly on the grid",
+    ]
+    for part in design.tank.parts:
+        branch = part.branch
+        unit = {"coil": "H", "capacitor": "F", "resistor": "ohm"}[branch.kind]
+        loss = "lossless" if branch.q is None else f"Q {branch.q:.6g}"
+        left = ", left out" if branch.origin == "device" else ""
+        lines.append(f"{branch.name} {branch.place} {branch.kind} {_ascii(show(float(branch.value), unit, 6))}, {loss}{left}")
+    return lines
+
+
+def _ascii(text: str) -> str:
+    return text.replace("µ", "u").replace("Ω", "ohm")

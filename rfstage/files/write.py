@@ -1,0 +1,71 @@
+"""Write files whole or not at all: everything is checked and written aside before anything is moved.
+
+An existing file is replaced only when that is asked for.
+"""
+
+from __future__ import annotations
+
+import os
+import tempfile
+from collections.abc import Sequence
+from pathlib import Path
+
+from rfstage.errors import FileError
+
+
+def check_targets(paths: Sequence[Path], *, overwrite: bool) -> None:
+    """Refuse targets that can't be written, all in one go.
+
+    Raises
+    ------
+    FileError
+        With one line for each: no such folder, a folder by that name, an existing file, one name twice.
+    """
+    problems = []
+    for path in paths:
+        if not path.parent.is_dir():
+            problems.append(f"{path}: the folder {path.parent} is not there (make it first)")
+        elif path.is_dir():
+            problems.append(f"{path}: is a folder; give a file name")
+        elif path.exists() and not overwrite:
+            problems.append(f"{path}: exists (give another name, or --overwrite to replace it)")
+        elif not os.access(path.parent, os.W_OK):
+            problems.append(f"{path}: the folder {path.parent} can't be written to")
+    if len({path.absolute() for path in paths}) < len(paths):
+        problems.append("two outputs have the same file name; give each its own")
+    if problems:
+        raise FileError("\n".join(problems))
+
+
+def write_files(contents: Sequence[tuple[Path, str]], *, overwrite: bool) -> None:
+    """Write all the texts as UTF-8, or none of them.
+
+    Raises
+    ------
+    FileError
+        If a target can't be written; then nothing was.
+    """
+    check_targets([path for path, _ in contents], overwrite=overwrite)
+    aside: list[tuple[str, Path]] = []
+    try:
+        for path, text in contents:
+            handle, name = tempfile.mkstemp(dir=path.parent, prefix=f".{path.name}.")
+            aside.append((name, path))
+            with os.fdopen(handle, "w", encoding="utf-8", newline="\n") as file:
+                file.write(text)
+            Path(name).chmod(0o666 & ~_umask())
+        while aside:
+            name, path = aside[0]
+            Path(name).replace(path)
+            aside.pop(0)
+    except OSError as error:
+        raise FileError(f"{error.filename or 'output'}: could not be written ({error.strerror})") from None
+    finally:
+        for name, _ in aside:
+            Path(name).unlink(missing_ok=True)
+
+
+def _umask() -> int:
+    mask = os.umask(0)
+    os.umask(mask)
+    return mask

@@ -1,0 +1,183 @@
+"""The summary of a design: circuit, operating point, tank, harmonics against the limit, cautions."""
+
+from __future__ import annotations
+
+from rich.text import Text
+
+from rfstage.designs.design import Design
+from rfstage.harmonics import Harmonic
+from rfstage.matching.networks import Tank
+from rfstage.quantity import exact_text, show, show_complex
+from rfstage.report.circuit import CONTROL, ELECTRODE, circuit
+from rfstage.report.page import Cell, Look, columns, heading, note, pairs
+
+BAR_FLOOR = -100.0  # dBc at the left end of a bar; the right end is the carrier
+_UNITS_OF = {"max_voltage": "V", "max_current": "A", "max_dissipation": "W"}
+
+
+def summary(design: Design, look: Look) -> list[Text]:
+    """Return the whole summary as lines of text."""
+    return [*_title(design, look), *_circuit(design, look), *_point(design, look), *_tank(design, look),
+            *_harmonics(design, look), *_assumed(design, look), *_cautions(design, look)]
+
+
+def _title(design: Design, look: Look) -> list[Text]:
+    job, settings = design.job, design.settings
+    words = look.text(
+        f"{show(job.carrier, 'Hz', 5)} class-{design.operating_class} stage: {exact_text(job.power, 'W')} into "
+        f"{show_complex(settings.load_impedance)} from {exact_text(job.supply, 'V')}, {settings.family}, "
+        f"{job.conduction_angle:g}° conduction")
+    return [Text(words, "bold")]
+
+
+def _circuit(design: Design, look: Look) -> list[Text]:
+    electrode = ELECTRODE[design.settings.family]
+    lines = heading(look, f"Circuit, {electrode} to load")
+    lines += circuit(look, design.tank.parts, start=electrode,
+                     end=f"load {show_complex(design.settings.load_impedance)}")
+    return lines + note(look, f"Stresses are the carrier's. Cblock also stands off the supply's {show(design.job.supply, 'V')}.",
+                        style="dim")
+
+
+def _point(design: Design, look: Look) -> list[Text]:
+    point, drive, settings = design.point, design.drive, design.settings
+    electrode, control = ELECTRODE[settings.family], CONTROL[settings.family]
+    items = [
+        ("load resistance", show(point.load_resistance, "ohm", 4)),
+        (f"{electrode} swing", show(point.swing, "V")),
+        (f"peak {electrode} voltage", show(point.peak_voltage, "V")),
+        (f"lowest {electrode} voltage", show(settings.minimum_voltage, "V") if settings.minimum_voltage else "0 V"),
+        (f"peak {electrode} current", show(point.peak_current, "A")),
+        ("dc current", show(point.dc_current, "A")),
+        ("fundamental current, peak", show(point.fundamental_current, "A")),
+        ("dc power", show(point.dc_power, "W")),
+        ("RF power from the device", show(point.device_rf_power, "W")),
+        ("power at the load", show(point.output_power, "W")),
+        ("device dissipation", show(point.dissipation, "W")),
+        ("device efficiency", f"{100 * point.device_efficiency:.1f} %"),
+        ("overall efficiency", f"{100 * point.overall_efficiency:.1f} %"),
+    ]
+    if drive.bias is not None and drive.amplitude is not None:
+        items += [(f"{control} bias", _volts(drive.bias)), (f"{control} drive, peak", show(drive.amplitude, "V"))]
+    if drive.unbiased_amplitude is not None:
+        items.append((f"{control} drive without bias", f"{show(drive.unbiased_amplitude, 'V')} peak"))
+    items.append(("drive power", show(drive.power, "W") if drive.power is not None else "not known from these data"))
+    lines = heading(look, f"Operating point, {design.designed_to}") + pairs(look, items)
+    for rating in design.ratings:
+        unit = _UNITS_OF[rating.name]
+        name = rating.name.replace("_", " ").replace("max", "rating: greatest")
+        if rating.exceeded:
+            lines += note(look, f"EXCEEDED  {name} {show(rating.limit, unit)}, the stage asks {show(rating.value, unit)}: "
+                          f"{100 * (rating.value / rating.limit - 1):.3g} % too much", style="bold red")
+        else:
+            lines += note(look, f"within    {name} {show(rating.limit, unit)}, the stage asks {show(rating.value, unit)}")
+    return lines
+
+
+def _volts(value: float) -> str:
+    return "0 V" if value == 0 else show(value, "V")
+
+
+def _tank(design: Design, look: Look) -> list[Text]:
+    return heading(look, f"Tank, network {design.tank.network}") + tank_lines(design.tank, look)
+
+
+def tank_lines(tank: Tank, look: Look) -> list[Text]:
+    """Return what a tank is like, with what each Q means."""
+    items = [("loaded Q", f"{tank.loaded_q:.3g}"),
+             ("input-side Q", "none" if tank.input_q is None else f"{tank.input_q:.3g}"),
+             ("bandwidth, −3 dB", "no −3 dB points" if tank.bandwidth is None else show(tank.bandwidth, "Hz")),
+             ("tank efficiency", f"{100 * tank.efficiency:.1f} %"),
+             ("trough dip", f"{tank.trough_dip:.3f}" if tank.trough_dip is not None else "none")]
+    seen = "  ".join(f"{n}: {ratio:.2g}" for n, ratio in tank.terminations[:4])
+    return (pairs(look, items)
+            + note(look, f"Harmonic impedance over the load resistance, by order: {seen}")
+            + note(look, "Loaded Q counts the energy in tank and output capacitance; input-side Q is the load resistance "
+                   "over the reactance across the device. The device is a current generator; no source resistance "
+                   "stands in parallel.", style="dim"))
+
+
+def _harmonics(design: Design, look: Look) -> list[Text]:
+    limit, settings = design.settings.limit, design.settings
+    line = show(settings.line.at_carrier.real, "ohm")
+    judged = any(h.limit is not None for h in design.harmonics)
+    titles = ["n", "frequency", "device", "in load", "dBc", "dBc in line", *(["limit", "margin"] if judged else []), ""]
+    rows = [[Cell(t, "dim", right=True) for t in titles]]
+    room = max(8, min(40, look.width - (72 if judged else 58)))
+    rows += [_harmonic_row(h, look, judged, room) for h in design.harmonics]
+    lines = heading(look, f"Harmonics at the load, line {line}") + columns(look, rows, gap=1)
+    if any(h.strays_decide for h in design.harmonics):
+        lines += note(look, "* strays decide: 5 nH of lead in each shunt capacitor moves it by more than 3 dB", style="dim")
+    return lines + _verdict(design, look, limit is not None)
+
+
+def _harmonic_row(h: Harmonic, look: Look, judged: bool, room: int) -> list[Cell]:
+    front = [Cell(f"{h.order}", right=True), Cell(show(h.frequency, "Hz", 4), right=True)]
+    if h.level is None or h.line_level is None:
+        return [*front, Cell("none in the ideal pulse")]
+    star = "*" if h.strays_decide else " "
+    cells = [*front, Cell(show(abs(h.device_current), "A"), right=True), Cell(show(h.load_power, "W"), right=True),
+             Cell(f"{h.level:.1f}".replace("-", "−"), right=True),
+             Cell(f"{h.line_level:.1f}{star}".replace("-", "−"), right=True)]
+    style = ""
+    if judged:
+        style = "" if h.margin is None else "green" if h.margin >= 0 else "bold red"
+        cells += [Cell("none" if h.limit is None else f"{h.limit:.1f}".replace("-", "−"), right=True),
+                  Cell("none" if h.margin is None else f"{h.margin:+.1f}".replace("-", "−"), style, right=True)]
+    return [*cells, Cell(_bar(h.line_level, h.limit, look, room), style)]
+
+
+def _bar(level: float, limit: float | None, look: Look, room: int) -> str:
+    """Draw a level from the floor at the left to the carrier at the right, the limit marked in it."""
+    full, mark, empty = ("#", "|", ".") if look.ascii else ("█", "┃", "·")
+    def place(value: float) -> int:
+        return max(0, min(room - 1, round((value - BAR_FLOOR) / -BAR_FLOOR * room)))
+
+    cells = [full if k < place(level) else empty for k in range(room)]
+    if limit is not None:
+        cells[place(limit)] = mark
+    return "".join(cells)
+
+
+def _verdict(design: Design, look: Look, limited: bool) -> list[Text]:
+    limit = design.settings.limit
+    if limit is None or not limited:
+        return note(look, "No limit rule was given; --limit names one.", style="dim")
+    worst = design.worst
+    where = f"limit {limit.name} ({limit.source}; {limit.conditions})"
+    if worst is None or worst.margin is None:
+        return note(look, f"{where}: gives no figure here; reduce spurious emission as far as practicable.")
+    line = show(design.settings.line.at_carrier.real, "ohm")
+    if worst.margin < 0:
+        words, style = f"MISSES: needs {-worst.margin:.1f} dB more at order {worst.order}", "bold red"
+    else:
+        words, style = f"MEETS: {worst.margin:.1f} dB to spare, least at order {worst.order}", "bold green"
+    return (note(look, f"{words}, {where}.", style=style)
+            + note(look, f"Judged in a resistive line of {line}; a measurement and the local rule decide.", style="dim"))
+
+
+def _assumed(design: Design, look: Look) -> list[Text]:
+    if not design.assumed:
+        return []
+    words = "; ".join(f"{key} {_assumed_value(key, value)}" for key, value in design.assumed.items())
+    return heading(look, "Assumed, as common practice, where nothing was given") + note(look, words)
+
+
+def _assumed_value(key: str, value: object) -> str:
+    if isinstance(value, complex):
+        return show_complex(value)
+    if isinstance(value, str):
+        return value
+    assert isinstance(value, int | float)
+    unit = {"stage.minimum_voltage": "V", "device.threshold": "V", "supply.choke": "H", "tank.blocking": "F",
+            "supply.choke_resistance": "ohm", "limit.load": "ohm", "device.output_capacitance": "F"}.get(key)
+    if unit:
+        return show(value, unit) if value else f"0 {unit}".replace("ohm", "Ω")
+    return f"{value:.4g}" + (" (stand-in for the stage file)" if key == "device.transfer_factor" else "")
+
+
+def _cautions(design: Design, look: Look) -> list[Text]:
+    rows: list[Text] = heading(look, "Cautions")
+    for caution in design.cautions:
+        rows += note(look, f"! {caution.topic}: {caution.text}", hanging=2)
+    return rows
