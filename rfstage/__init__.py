@@ -21,10 +21,21 @@ if TYPE_CHECKING:
     from rfstage.stage import Stage
 
 _HOME = {
-    "Branch": "ladder", "Design": "designs.design", "Job": "job", "Ladder": "ladder", "MeasuredLoad": "load",
-    "RfstageError": "errors", "SeriesLoad": "load", "SingleNetwork": "designs.single", "Stage": "stage",
-    "angle_from_ratio": "pulse", "design": "designs.design", "load_job": "files.job", "load_stage": "files.stage",
-    "pulse_coefficients": "pulse", "single_network": "designs.single",
+    "Branch": "ladder",
+    "Design": "designs.design",
+    "Job": "job",
+    "Ladder": "ladder",
+    "MeasuredLoad": "load",
+    "RfstageError": "errors",
+    "SeriesLoad": "load",
+    "SingleNetwork": "designs.single",
+    "Stage": "stage",
+    "angle_from_ratio": "pulse",
+    "design": "designs.design",
+    "load_job": "files.job",
+    "load_stage": "files.stage",
+    "pulse_coefficients": "pulse",
+    "single_network": "designs.single",
 }
 __all__ = [
     "Branch",

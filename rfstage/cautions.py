@@ -23,37 +23,74 @@ class Caution:
     text: str
 
 
-def safety(*, family: str, supply: float, dc_current: float, highest_rf: float, power: float,
-           blocked: bool, carrier: float) -> list[Caution]:
+def safety(
+    *, family: str, supply: float, dc_current: float, highest_rf: float, power: float, blocked: bool, carrier: float
+) -> list[Caution]:
     """Return what can hurt someone in a stage of these volts, amperes, watts and hertz."""
     found = []
     if supply > DC_SHOCK:
-        found.append(Caution("high voltage", (
-            f"{show(supply, 'V')} dc can kill, and stays on the capacitors after switch-off; bleeders fail open. "
-            "Switch off, unplug, wait, measure, then short with an insulated stick before touching; work with one "
-            "hand, never alone.")))
+        found.append(
+            Caution(
+                "high voltage",
+                (
+                    f"{show(supply, 'V')} dc can kill, and stays on the capacitors after switch-off; bleeders fail open. "
+                    "Switch off, unplug, wait, measure, then short with an insulated stick before touching; work with one "
+                    "hand, never alone."
+                ),
+            )
+        )
     if dc_current > HIGH_CURRENT:
-        found.append(Caution("high current", (
-            f"{show(dc_current, 'A')} from the supply burns through rings, tools and thin wire: take jewellery off, "
-            "fuse the lead at the supply.")))
+        found.append(
+            Caution(
+                "high current",
+                (
+                    f"{show(dc_current, 'A')} from the supply burns through rings, tools and thin wire: take jewellery off, "
+                    "fuse the lead at the supply."
+                ),
+            )
+        )
     if highest_rf > RF_BURN:
-        found.append(Caution("RF burns", (
-            f"{show(highest_rf, 'V')} peak RF stands on tank parts; it burns deeply, at low supply voltages too. "
-            "Enclose the tank and never adjust it by bare hand with power on.")))
+        found.append(
+            Caution(
+                "RF burns",
+                (
+                    f"{show(highest_rf, 'V')} peak RF stands on tank parts; it burns deeply, at low supply voltages too. "
+                    "Enclose the tank and never adjust it by bare hand with power on."
+                ),
+            )
+        )
     if blocked and supply > DC_SHOCK:
-        found.append(Caution("blocking capacitor", (
-            f"if the blocking capacitor fails, {show(supply, 'V')} reaches the antenna: put an RF choke across the "
-            "output, so that the fuse blows instead.")))
-    found.append(Caution("load", (
-        "never key without a load; tune first at reduced power into a dummy load rated for "
-        f"{show(power, 'W')} or more.")))
+        found.append(
+            Caution(
+                "blocking capacitor",
+                (
+                    f"if the blocking capacitor fails, {show(supply, 'V')} reaches the antenna: put an RF choke across the "
+                    "output, so that the fuse blows instead."
+                ),
+            )
+        )
+    found.append(
+        Caution(
+            "load",
+            (
+                "never key without a load; tune first at reduced power into a dummy load rated for "
+                f"{show(power, 'W')} or more."
+            ),
+        )
+    )
     if family == "tube":
         found.append(Caution("tube", "never apply screen voltage without anode voltage; glass and anodes stay hot."))
     elif carrier >= 30e6 or power >= 50:
         found.append(Caution("beryllium oxide", "some RF power packages hold it: never file, crush or break one."))
-    found.append(Caution("rules", (
-        "exposure, spurious limits and wiring follow local codes, the licence and licensed practice; they decide, "
-        "not this program.")))
+    found.append(
+        Caution(
+            "rules",
+            (
+                "exposure, spurious limits and wiring follow local codes, the licence and licensed practice; they decide, "
+                "not this program."
+            ),
+        )
+    )
     return found
 
 
@@ -62,9 +99,15 @@ def about_dip(dip: float) -> list[Caution]:
     if dip <= DIP_CAUTION:
         return []
     strength = "will not hold" if dip > DIP_STRONG else "is optimistic"
-    return [Caution("harmonic terminations", (
-        f"trough dip {dip:.2f}: the network leaves the device's harmonics too much impedance, so the textbook power "
-        f"{strength} and the peak voltage may be far higher; a pi, or a higher input-side Q, shorts them."))]
+    return [
+        Caution(
+            "harmonic terminations",
+            (
+                f"trough dip {dip:.2f}: the network leaves the device's harmonics too much impedance, so the textbook power "
+                f"{strength} and the peak voltage may be far higher; a pi, or a higher input-side Q, shorts them."
+            ),
+        )
+    ]
 
 
 def about_low_resistance(resistance: float, input_capacitance: float | None, carrier: float) -> list[Caution]:
@@ -73,8 +116,10 @@ def about_low_resistance(resistance: float, input_capacitance: float | None, car
     if resistance < LOW_RESISTANCE:
         why = f"a load resistance of {show(resistance, 'ohm')} is hard to build"
     elif input_capacitance and 1 / (2 * math.pi * carrier * input_capacitance) < 10 * lead:
-        why = (f"the input capacitor of {show(input_capacitance, 'F')} has under ten times the reactance of its own "
-               f"leads ({show(LEAD, 'H')})")
+        why = (
+            f"the input capacitor of {show(input_capacitance, 'F')} has under ten times the reactance of its own "
+            f"leads ({show(LEAD, 'H')})"
+        )
     else:
         return []
     return [Caution("low resistance", f"{why}: use a higher supply, two devices, or a wide-band transformer.")]
@@ -84,6 +129,12 @@ def about_resonance(resonance: tuple[float, float] | None) -> list[Caution]:
     """Return the warning of a choke resonance (Hz, dB) that stands above the carrier's level."""
     if resonance is None or resonance[1] <= 0:
         return []
-    return [Caution("choke resonance", (
-        f"choke and blocking capacitor resonate at {show(resonance[0], 'Hz')}, {resonance[1]:.0f} dB above the "
-        "carrier's level: damp it, or the stage may oscillate there."))]
+    return [
+        Caution(
+            "choke resonance",
+            (
+                f"choke and blocking capacitor resonate at {show(resonance[0], 'Hz')}, {resonance[1]:.0f} dB above the "
+                "carrier's level: damp it, or the stage may oscillate there."
+            ),
+        )
+    ]

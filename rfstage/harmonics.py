@@ -42,23 +42,32 @@ class Harmonic:
     strays_decide: bool
 
 
-def load_powers(ladder: Ladder, load: Load, frequencies: NDArray[np.float64],
-                currents: NDArray[np.float64]) -> NDArray[np.float64]:
+def load_powers(
+    ladder: Ladder, load: Load, frequencies: NDArray[np.float64], currents: NDArray[np.float64]
+) -> NDArray[np.float64]:
     """Return the power [W] that peak device currents [A] put into the load at each frequency [Hz]."""
     z = load.impedance(frequencies)
     volts = np.abs(ladder.transimpedance(frequencies, z)) * np.abs(currents)
-    return volts**2 / 2 * (1 / z).real
+    return np.asarray(volts**2 / 2 * (1 / z).real, dtype=np.float64)
 
 
 def decibels(powers: NDArray[np.float64]) -> NDArray[np.float64]:
     """Return levels against the first power; a power of 0 is minus infinity."""
     with np.errstate(divide="ignore"):
-        return 10 * np.log10(powers / powers[0])
+        return np.asarray(10 * np.log10(powers / powers[0]), dtype=np.float64)
 
 
 def harmonics(
-    ladder: Ladder, *, load: Load, line: Load, carrier: float, coefficients: NDArray[np.float64],
-    peak_current: float, highest_order: int, output_power: float, limit: Limit | None,
+    ladder: Ladder,
+    *,
+    load: Load,
+    line: Load,
+    carrier: float,
+    coefficients: NDArray[np.float64],
+    peak_current: float,
+    highest_order: int,
+    output_power: float,
+    limit: Limit | None,
 ) -> tuple[Harmonic, ...]:
     """Return the harmonics from order 2 to ``highest_order``.
 
@@ -74,26 +83,35 @@ def harmonics(
         The rule, if one is given.
     """
     orders = np.arange(1, highest_order + 1)
-    frequencies = carrier * orders
-    relative = coefficients[1:highest_order + 1]
+    frequencies = np.asarray(carrier * orders, dtype=np.float64)
+    relative = coefficients[1 : highest_order + 1]
     present = np.abs(relative) > ABSENT * abs(relative[0])
     currents = np.where(present, relative, 0.0) * peak_current
     powers = load_powers(ladder, load, frequencies, currents)
     levels, line_levels = decibels(powers), decibels(load_powers(ladder, line, frequencies, currents))
     ones = np.ones_like(currents)
     strayed = Ladder([_with_stray_lead(branch) for branch in ladder.branches])
-    moved = (decibels(load_powers(strayed, load, frequencies, ones))
-             - decibels(load_powers(ladder, load, frequencies, ones)))
+    moved = decibels(load_powers(strayed, load, frequencies, ones)) - decibels(
+        load_powers(ladder, load, frequencies, ones)
+    )
     needed = limit.suppression(carrier, output_power) if limit else None
     found = []
     for k in range(1, highest_order):
         there = bool(present[k])
         margin = None if needed is None or not there else float(-needed - line_levels[k])
-        found.append(Harmonic(
-            order=k + 1, frequency=float(frequencies[k]), device_current=float(currents[k]),
-            load_power=float(powers[k]), level=float(levels[k]) if there else None,
-            line_level=float(line_levels[k]) if there else None, limit=None if needed is None else -needed,
-            margin=margin, strays_decide=bool(abs(moved[k]) > STRAY_DECIDES)))
+        found.append(
+            Harmonic(
+                order=k + 1,
+                frequency=float(frequencies[k]),
+                device_current=float(currents[k]),
+                load_power=float(powers[k]),
+                level=float(levels[k]) if there else None,
+                line_level=float(line_levels[k]) if there else None,
+                limit=None if needed is None else -needed,
+                margin=margin,
+                strays_decide=bool(abs(moved[k]) > STRAY_DECIDES),
+            )
+        )
     return tuple(found)
 
 
@@ -103,15 +121,17 @@ def _with_stray_lead(branch: Branch) -> Branch:
     return branch
 
 
-def terminations(ladder: Ladder, load: Load, carrier: float, resistance: float,
-                 orders: Sequence[int]) -> tuple[tuple[int, float], ...]:
+def terminations(
+    ladder: Ladder, load: Load, carrier: float, resistance: float, orders: Sequence[int]
+) -> tuple[tuple[int, float], ...]:
     """Return (order, |Z(n)|/R): what the device sees at the harmonics [Hz × n] against its resistance [ohm]."""
     z = np.abs(ladder.impedance(carrier * np.asarray(orders, dtype=np.float64), load)) / resistance
     return tuple((n, float(ratio)) for n, ratio in zip(orders, z, strict=True))
 
 
-def trough_dip(ladder: Ladder, load: Load, *, carrier: float, coefficients: NDArray[np.float64], peak_current: float,
-               swing: float) -> float:
+def trough_dip(
+    ladder: Ladder, load: Load, *, carrier: float, coefficients: NDArray[np.float64], peak_current: float, swing: float
+) -> float:
     """Return how far the textbook current's voltage dips below the wanted lowest voltage, over the swing.
 
     The currents of all the given orders flow through the real impedance at the harmonics; 0 where only the

@@ -93,8 +93,10 @@ def conflicts(values: dict[str, object]) -> list[str]:
     found = []
     supply, lowest = values.get("supply"), values.get("minimum_voltage")
     if isinstance(supply, float | int) and isinstance(lowest, float | int) and lowest >= supply > 0:
-        found.append(f"stage.minimum_voltage: got {exact_text(lowest, 'V')}; allowed below the supply of "
-                     f"{exact_text(supply, 'V')}")
+        found.append(
+            f"stage.minimum_voltage: got {exact_text(lowest, 'V')}; allowed below the supply of "
+            f"{exact_text(supply, 'V')}"
+        )
     if values.get("loaded_q") is not None and values.get("input_q") is not None:
         found.append("tank.input_q: got both a loaded Q and an input-side Q; give one of them")
     if isinstance(values.get("limit"), str):

@@ -1,4 +1,4 @@
-"""Limits on harmonics as data: what a rule asks of each, its source and its conditions.
+r"""Limits on harmonics as data: what a rule asks of each, its source and its conditions.
 
 A rule gives the suppression below the carrier's mean power [dB] from the carrier's frequency and that
 power at the line. Standard library only.
@@ -7,9 +7,9 @@ power at the line. Standard library only.
 rule                   asks                                                       source
 ====================== ========================================================== ====================
 us-amateur             < 30 MHz: 43 dB                                            47 CFR 97.307(d)
-\\                      30-225 MHz, above 25 W: 60 dB                              47 CFR 97.307(e)
-\\                      30-225 MHz, to 25 W: 25 uW and 40 dB, not below 10 uW      47 CFR 97.307(e)
-\\                      above 225 MHz: no figure, as far as practicable            47 CFR 97.307(c)
+\                       30-225 MHz, above 25 W: 60 dB                              47 CFR 97.307(e)
+\                       30-225 MHz, to 25 W: 25 uW and 40 dB, not below 10 uW      47 CFR 97.307(e)
+\                       above 225 MHz: no figure, as far as practicable            47 CFR 97.307(c)
 us-amateur-before-2003 < 30 MHz: 50 mW and 40 dB; 30 dB where below 5 W           47 CFR 97.307(d)
 43+10log               43 + 10 log10(P/W) dB, which is 50.1 uW at any power       e.g. 47 CFR 80.211
 itu-amateur            43 + 10 log10(P/W), at most 50 dB < 30 MHz, 70 dB above    RR App. 3, from memory
@@ -81,16 +81,42 @@ def _itu_amateur(carrier: float, power: float) -> float:
     return min(_43_plus(carrier, power), 50.0 if carrier < HF_TOP else 70.0)
 
 
-LIMITS = {limit.name: limit for limit in (
-    Limit("us-amateur", "47 CFR 97.307(c)-(e)",
-          "station installed after 1 January 2003; above 225 MHz no figure, only as far as practicable", _us_amateur),
-    Limit("us-amateur-before-2003", "47 CFR 97.307(c)-(e)",
-          "station installed on or before 1 January 2003", _us_amateur_before_2003),
-    Limit("43+10log", "47 CFR 80.211(a)(3), 95.779 and others",
-          "43 + 10 log10 of the mean power in watts, the same 50.1 uW at any power", _43_plus),
-    Limit("itu-amateur", "ITU Radio Regulations Appendix 3, from memory",
-          "43 + 10 log10 of the peak envelope power, at most 50 dB below 30 MHz and 70 dB above", _itu_amateur),
-)}
+LIMITS = {
+    limit.name: limit
+    for limit in (
+        Limit(
+            "us-amateur",
+            "47 CFR 97.307(c)-(e)",
+            "station installed after 1 January 2003; above 225 MHz no figure, only as far as practicable",
+            _us_amateur,
+        ),
+        Limit(
+            "us-amateur-before-2003",
+            "47 CFR 97.307(c)-(e)",
+            "station installed on or before 1 January 2003",
+            _us_amateur_before_2003,
+        ),
+        Limit(
+            "43+10log",
+            "47 CFR 80.211(a)(3), 95.779 and others",
+            "43 + 10 log10 of the mean power in watts, the same 50.1 uW at any power",
+            _43_plus,
+        ),
+        Limit(
+            "itu-amateur",
+            "ITU Radio Regulations Appendix 3, from memory",
+            "43 + 10 log10 of the peak envelope power, at most 50 dB below 30 MHz and 70 dB above",
+            _itu_amateur,
+        ),
+    )
+}
+
+
+def _amount(text: str, unit: str, amount: float) -> Limit:
+    source = "an amount given with the job"
+    if unit == "dB":
+        return Limit(text, source, f"every harmonic {text} below the carrier", lambda _carrier, _power: amount)
+    return Limit(text, source, f"every harmonic {text} or less", lambda _carrier, power: _below(power, amount))
 
 
 def limit_named(text: str) -> Limit:
@@ -119,8 +145,8 @@ def limit_named(text: str) -> Limit:
             break
         if amount <= low:
             raise InputError(f"limit.rule: got {text!r}; an amount is above 0 {unit}")
-        rule = (lambda _f, _p: amount) if unit == "dB" else (lambda _f, power: _below(power, amount))
-        return Limit(text, "an amount given with the job", f"every harmonic {text} "
-                     + ("below the carrier" if unit == "dB" else "or less"), rule)
-    raise InputError(f"limit.rule: got {text!r}; allowed {' | '.join(LIMITS)}, or an amount with its unit "
-                     f"(60dB, 25uW){nearest(text, LIMITS)}")
+        return _amount(text, unit, amount)
+    raise InputError(
+        f"limit.rule: got {text!r}; allowed {' | '.join(LIMITS)}, or an amount with its unit "
+        f"(60dB, 25uW){nearest(text, LIMITS)}"
+    )

@@ -35,7 +35,7 @@ def _continued(impedance: complex, at: float, frequency: NDArray[np.float64]) ->
     """Continue R + jX from frequency ``at``: a positive reactance as a coil, a negative one as a capacitor."""
     ratio = frequency / at
     reactance = impedance.imag * (ratio if impedance.imag > 0 else 1 / ratio)
-    return impedance.real + 1j * reactance
+    return np.asarray(impedance.real + 1j * reactance, dtype=np.complex128)
 
 
 @dataclass(frozen=True, slots=True)
@@ -101,8 +101,10 @@ class MeasuredLoad:
             raise InputError(f"{self.name}: the frequencies of the load must be above 0 and rise")
         if np.any(z.real <= 0):
             worst = int(np.argmin(z.real))
-            raise InputError(f"{self.name}: the load has {z.real[worst]:.3g} ohm resistance at {f[worst]:.6g} Hz; "
-                             "a passive load has more than 0 (is the analyser's calibration good?)")
+            raise InputError(
+                f"{self.name}: the load has {z.real[worst]:.3g} ohm resistance at {f[worst]:.6g} Hz; "
+                "a passive load has more than 0 (is the analyser's calibration good?)"
+            )
 
     def reaches(self, frequency: float) -> bool:
         """Return whether the table covers this frequency [Hz]."""
@@ -113,9 +115,9 @@ class MeasuredLoad:
         wanted = np.asarray(frequency, dtype=np.float64)
         table = (self.impedances - REFERENCE_RESISTANCE) / (self.impedances + REFERENCE_RESISTANCE)
         reflection = np.interp(wanted, self.frequencies, table.real) + 1j * np.interp(
-            wanted, self.frequencies, table.imag)
+            wanted, self.frequencies, table.imag
+        )
         inside = REFERENCE_RESISTANCE * (1 + reflection) / (1 - reflection)
         below = _continued(complex(self.impedances[0]), float(self.frequencies[0]), wanted)
         above = _continued(complex(self.impedances[-1]), float(self.frequencies[-1]), wanted)
-        return np.where(wanted < self.frequencies[0], below,
-                        np.where(wanted > self.frequencies[-1], above, inside))
+        return np.where(wanted < self.frequencies[0], below, np.where(wanted > self.frequencies[-1], above, inside))

@@ -100,7 +100,8 @@ def operating_point(
         most = available**2 * fundamental_coefficient / (8 * dc_coefficient * device_power)
         raise ImpossibleError(
             f"the choke's dc resistance of {exact_text(choke_resistance, 'ohm')} drops too much for "
-            f"{exact_text(output_power, 'W')} from {exact_text(supply, 'V')}: at most {most:.3g} ohm would do")
+            f"{exact_text(output_power, 'W')} from {exact_text(supply, 'V')}: at most {most:.3g} ohm would do"
+        )
     swing = (available + math.sqrt(square)) / 2
     fundamental = 2 * device_power / swing
     peak = fundamental / fundamental_coefficient
@@ -141,8 +142,13 @@ class DriveVoltages:
 
 
 def drive_voltages(
-    *, half_angle: float, peak_current: float, exponent: float,
-    threshold: float | None, transfer_factor: float | None, bias: float | None,
+    *,
+    half_angle: float,
+    peak_current: float,
+    exponent: float,
+    threshold: float | None,
+    transfer_factor: float | None,
+    bias: float | None,
 ) -> tuple[float | None, float | None, float | None]:
     """Return bias, amplitude and unbiased amplitude [V] that give the angle.
 
@@ -177,7 +183,8 @@ def drive_voltages(
         if bias is not None and abs(bias - wanted) > 0.005 * amplitude:
             raise ImpossibleError(
                 f"drive.bias: with this transfer factor {degrees:.4g} deg and the power ask for a bias of "
-                f"{wanted:.4g} V; got {exact_text(bias, 'V')} (leave out the bias or the transfer factor)")
+                f"{wanted:.4g} V; got {exact_text(bias, 'V')} (leave out the bias or the transfer factor)"
+            )
         return wanted, amplitude, unbiased
     if bias is None:
         return None, None, unbiased
@@ -185,16 +192,24 @@ def drive_voltages(
         side = "below" if cosine > 0 else "above"
         raise ImpossibleError(
             f"drive.bias: {degrees:.4g} deg needs a bias {side} the threshold of {exact_text(threshold, 'V')}"
-            f"; got {exact_text(bias, 'V')}" if cosine else
-            f"drive.bias: at 180 deg the bias equals the threshold, so it does not fix the drive; got "
-            f"{exact_text(bias, 'V')} (give the transfer factor instead)")
+            f"; got {exact_text(bias, 'V')}"
+            if cosine
+            else f"drive.bias: at 180 deg the bias equals the threshold, so it does not fix the drive; got "
+            f"{exact_text(bias, 'V')} (give the transfer factor instead)"
+        )
     return bias, (threshold - bias) / cosine, unbiased
 
 
 def drive_power(
-    family: str, *, carrier: float, device_rf_power: float, amplitude: float | None,
-    gate_resistance: float | None, input_capacitance: float | None,
-    power_gain: float | None, grid_current: float | None,
+    family: str,
+    *,
+    carrier: float,
+    device_rf_power: float,
+    amplitude: float | None,
+    gate_resistance: float | None,
+    input_capacitance: float | None,
+    power_gain: float | None,
+    grid_current: float | None,
 ) -> float | None:
     """Return the drive power [W] where the given data allow an honest figure, else None.
 
@@ -236,6 +251,9 @@ def ratings(
     point: OperatingPoint, *, max_voltage: float | None, max_current: float | None, max_dissipation: float | None
 ) -> Sequence[Rating]:
     """Return the given ratings [V, A, W] against peak voltage, peak current and dissipation."""
-    pairs = (("max_voltage", max_voltage, point.peak_voltage), ("max_current", max_current, point.peak_current),
-             ("max_dissipation", max_dissipation, point.dissipation))
+    pairs = (
+        ("max_voltage", max_voltage, point.peak_voltage),
+        ("max_current", max_current, point.peak_current),
+        ("max_dissipation", max_dissipation, point.dissipation),
+    )
     return tuple(Rating(name, limit, value) for name, limit, value in pairs if limit is not None)

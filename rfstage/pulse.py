@@ -39,9 +39,7 @@ def operating_class(conduction_angle_deg: float) -> str:
     return "B" if conduction_angle_deg == 180 else "C"
 
 
-def pulse_coefficients(
-    half_angle: ArrayLike, *, highest_order: int, exponent: float = 1.0
-) -> NDArray[np.float64]:
+def pulse_coefficients(half_angle: ArrayLike, *, highest_order: int, exponent: float = 1.0) -> NDArray[np.float64]:
     r"""Return the Fourier coefficients of the current pulse, divided by its peak.
 
     Parameters
@@ -102,12 +100,14 @@ def _linear(theta: NDArray[np.float64], highest_order: int) -> NDArray[np.float6
     sinc = np.sin(tiny / 2) / (tiny / 2)
     square = tiny * tiny
     dc_series = 2 * tiny / (3 * math.pi * sinc**2) * _odd_series(square)
-    out[..., 0] = np.where(small, dc_series,
-                           (np.sin(large) - large * np.cos(large)) / (2 * math.pi * np.sin(large / 2) ** 2))
+    out[..., 0] = np.where(
+        small, dc_series, (np.sin(large) - large * np.cos(large)) / (2 * math.pi * np.sin(large / 2) ** 2)
+    )
     if highest_order >= 1:
         first_series = 4 * tiny / (3 * math.pi * sinc**2) * _cubic_series(4 * square)
-        out[..., 1] = np.where(small, first_series,
-                               (2 * large - np.sin(2 * large)) / (4 * math.pi * np.sin(large / 2) ** 2))
+        out[..., 1] = np.where(
+            small, first_series, (2 * large - np.sin(2 * large)) / (4 * math.pi * np.sin(large / 2) ** 2)
+        )
     if highest_order >= 2:
         common = 16 / math.pi * sine_half * np.cos(theta / 2) ** 3
         before, now = np.zeros_like(theta), np.ones_like(theta)
@@ -157,9 +157,7 @@ def _power_law(theta: NDArray[np.float64], highest_order: int, exponent: float) 
     return out.reshape(*theta.shape, highest_order + 1)
 
 
-def angle_from_ratio(
-    fundamental_to_dc: ArrayLike, *, exponent: float = 1.0
-) -> NDArray[np.float64]:
+def angle_from_ratio(fundamental_to_dc: ArrayLike, *, exponent: float = 1.0) -> NDArray[np.float64]:
     """Return the half angle from the ratio of the fundamental's peak to the direct current.
 
     Parameters
@@ -196,4 +194,4 @@ def angle_from_ratio(
         a = pulse_coefficients(middle, highest_order=1, exponent=exponent)
         wider = a[..., 1] / a[..., 0] > ratio
         low, high = np.where(wider, middle, low), np.where(wider, high, middle)
-    return (low + high) / 2
+    return np.asarray((low + high) / 2)

@@ -12,8 +12,21 @@ import re
 
 from rfstage.errors import RfstageError
 
-_PREFIXES = {"f": -15, "p": -12, "n": -9, "u": -6, "µ": -6, "μ": -6, "m": -3, "": 0,
-             "k": 3, "K": 3, "M": 6, "G": 9, "T": 12}
+_PREFIXES = {
+    "f": -15,
+    "p": -12,
+    "n": -9,
+    "u": -6,
+    "µ": -6,
+    "μ": -6,
+    "m": -3,
+    "": 0,
+    "k": 3,
+    "K": 3,
+    "M": 6,
+    "G": 9,
+    "T": 12,
+}
 _LETTER = {-15: "f", -12: "p", -9: "n", -6: "u", -3: "m", 0: "", 3: "k", 6: "M", 9: "G", 12: "T"}
 
 # unit -> (what it measures, other accepted spellings, takes prefixes, an example)
@@ -118,8 +131,10 @@ def parse_real(text: str, unit: str) -> float:
     if not stripped:
         raise QuantityError(f"read an empty text; {_wanted(unit)}")
     if "," in stripped:
-        raise QuantityError(f"read {text!r}, which has a comma: write the decimal point as in "
-                            f"{stripped.replace(',', '.')!r}, and no thousands marks")
+        raise QuantityError(
+            f"read {text!r}, which has a comma: write the decimal point as in "
+            f"{stripped.replace(',', '.')!r}, and no thousands marks"
+        )
     plain = _PLAIN.fullmatch(stripped)
     if plain:
         exponent = int(plain["exponent"] or 0) + _read_tail(plain["tail"], unit, text)
@@ -156,7 +171,7 @@ def parse_complex(text: str, unit: str = "ohm") -> complex:
             stripped = stripped[: -len(name)].rstrip()
             break
     split = _LAST_SIGN.search(stripped)
-    real, imaginary = (stripped[: split.start()], stripped[split.start():]) if split else ("", stripped)
+    real, imaginary = (stripped[: split.start()], stripped[split.start() :]) if split else ("", stripped)
     sign = "-" if imaginary.startswith("-") else ""
     size = imaginary.lstrip("+-").strip()
     if size.lower().startswith("j") != size.lower().endswith("j"):
@@ -182,7 +197,7 @@ def _place_point(figures: str, lead: int) -> str:
     if lead < 0:
         return "0." + "0" * (-lead - 1) + figures
     whole = figures[: lead + 1].ljust(lead + 1, "0")
-    part = figures[lead + 1:]
+    part = figures[lead + 1 :]
     return f"{whole}.{part}" if part else whole
 
 
@@ -248,7 +263,7 @@ def show_complex(value: complex, digits: int = 3) -> str:
     >>> show_complex(20.5 - 3.2j), show_complex(50 + 0j)
     ('20.5 − j3.20 Ω', '50.0 Ω')
     """
-    if value.imag == 0:
+    if abs(value.imag) < 0.5 * 10 ** (1 - digits) * abs(value.real):
         return show(value.real, "ohm", digits)
     places = max(0, digits - 1 - math.floor(math.log10(max(abs(value.real), abs(value.imag)))))
     places = min(places, 12)

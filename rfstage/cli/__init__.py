@@ -23,7 +23,9 @@ OK, CHECK_FAILED, BAD_INPUT = 0, 1, 2
 
 def main(argv: Sequence[str] | None = None) -> int:
     """Run one command and return its exit status; the console entry exits with it."""
-    os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # its thread pool costs a third of the start; nothing here uses it
+    os.environ.setdefault(
+        "OPENBLAS_NUM_THREADS", "1"
+    )  # its thread pool costs a third of the start; nothing here uses it
     words = list(sys.argv[1:] if argv is None else argv)
     try:
         return _dispatch(words)
@@ -32,7 +34,9 @@ def main(argv: Sequence[str] | None = None) -> int:
             print(f"rfstage: {line}", file=sys.stderr)
         return BAD_INPUT
     except BrokenPipeError:
-        os.dup2(os.open(os.devnull, os.O_WRONLY), 1)  # the reader has gone: nothing more to say, and no complaint at exit
+        os.dup2(
+            os.open(os.devnull, os.O_WRONLY), 1
+        )  # the reader has gone: nothing more to say, and no complaint at exit
         return OK
     except KeyboardInterrupt:
         print("rfstage: stopped", file=sys.stderr)
@@ -59,15 +63,26 @@ def overview() -> str:
     """Return the list of commands."""
     lines = ["rfstage: tuned power stages of radio transmitters", "", "usage: rfstage COMMAND ...", ""]
     lines += [f"  {name:<8} {what}" for name, (_, what) in COMMANDS.items()]
-    lines += ["", "  rfstage COMMAND --help   what a command takes",
-              "  rfstage --version        versions of rfstage and what it stands on", "",
-              "  for example: rfstage design --carrier 7.1MHz --power 10W --angle 120deg --supply 13.8V --limit us-amateur",
-              "", "exit status: 0 done; 1 done, and a check that was asked for failed; 2 bad input"]
+    lines += [
+        "",
+        "  rfstage COMMAND --help   what a command takes",
+        "  rfstage --version        versions of rfstage and what it stands on",
+        "",
+        "  for example: rfstage design --carrier 7.1MHz --power 10W --angle 120deg --supply 13.8V --limit us-amateur",
+        "",
+        "exit status: 0 done; 1 done, and a check that was asked for failed; 2 bad input",
+    ]
     return "\n".join(lines)
 
 
 def versions() -> str:
     """Return the versions of the program and of the packages it stands on."""
-    from importlib.metadata import version
+    from importlib.metadata import PackageNotFoundError, version
 
-    return "\n".join(f"{name} {version(name)}" for name in ("rfstage", "numpy", "scipy", "scikit-rf", "rich"))
+    lines = []
+    for name in ("rfstage", "numpy", "scipy", "scikit-rf", "rich"):
+        try:
+            lines.append(f"{name} {version(name)}")
+        except PackageNotFoundError:
+            lines.append(f"{name} (not installed)")
+    return "\n".join(lines)

@@ -16,8 +16,15 @@ A job file, options, or both; options win.
 
   rfstage design --carrier 7.1MHz --power 10W --angle 120deg --supply 13.8V --limit us-amateur
 """
-_GROUPS = {"stage": "stage", "device": "device and ratings", "drive": "drive", "load": "load", "tank": "tank",
-           "supply": "supply", "limit": "limit"}
+_GROUPS = {
+    "stage": "stage",
+    "device": "device and ratings",
+    "drive": "drive",
+    "load": "load",
+    "tank": "tank",
+    "supply": "supply",
+    "limit": "limit",
+}
 
 
 def parser() -> Parser:

@@ -35,7 +35,9 @@ def parser() -> Parser:
 def run(words: Sequence[str]) -> int:
     """Run the command and return its exit status."""
     found = parser().read(words)
-    texts = {field.name: (field, text) for field in _OPTIONS for text in [given(found, _OPTIONS).get(field.name)] if text}
+    texts = {
+        field.name: (field, text) for field in _OPTIONS for text in [given(found, _OPTIONS).get(field.name)] if text
+    }
     texts["wanted"] = (_WANTED, found.wanted)
     measured = found.load.strip().lower().endswith(LOAD_FILE_ENDING)
     if not measured:

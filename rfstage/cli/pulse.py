@@ -30,8 +30,9 @@ def parser() -> Parser:
 def run(words: Sequence[str]) -> int:
     """Run the command and return its exit status."""
     found = parser().read(words)
-    values = read_all({"angle": (_ANGLE, found.angle), "exponent": (_EXPONENT, found.exponent),
-                       "orders": (_ORDERS, found.orders)})
+    values = read_all(
+        {"angle": (_ANGLE, found.angle), "exponent": (_EXPONENT, found.exponent), "orders": (_ORDERS, found.orders)}
+    )
 
     from rfstage.files.records import numbers, pulse_record
     from rfstage.pulse import operating_class, pulse_coefficients

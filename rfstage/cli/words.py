@@ -22,8 +22,12 @@ class Parser(argparse.ArgumentParser):
     """An argument parser that raises `InputError`, takes no abbreviations and suggests the nearest option."""
 
     def __init__(self, command: str, about: str) -> None:
-        super().__init__(prog=f"rfstage {command}", description=about, allow_abbrev=False,
-                         formatter_class=argparse.RawDescriptionHelpFormatter)
+        super().__init__(
+            prog=f"rfstage {command}",
+            description=about,
+            allow_abbrev=False,
+            formatter_class=argparse.RawDescriptionHelpFormatter,
+        )
         everywhere = self.add_argument_group("output")
         everywhere.add_argument("--json", action="store_true", help="one JSON object on stdout and nothing else")
         everywhere.add_argument("--plain", action="store_true", help="no colour, no box art, ASCII")
@@ -62,14 +66,21 @@ def add_field_options(parser: Parser, title: str, fields: Sequence[Field]) -> No
     for field in fields:
         if field.option:
             metavar = "|".join(field.choices) if field.choices else field.unit.upper() or "N"
-            group.add_argument(field.option, dest=field.name, metavar=metavar if field.kind != "text" else "RULE",
-                               help=field.help.replace("%", "%%"))
+            group.add_argument(
+                field.option,
+                dest=field.name,
+                metavar=metavar if field.kind != "text" else "RULE",
+                help=field.help.replace("%", "%%"),
+            )
 
 
 def given(found: argparse.Namespace, fields: Sequence[Field]) -> dict[str, str]:
     """Return the texts of the options that were given, by field name."""
-    return {field.name: value.strip() for field in fields
-            if field.option and (value := getattr(found, field.name, None)) is not None}
+    return {
+        field.name: value.strip()
+        for field in fields
+        if field.option and (value := getattr(found, field.name, None)) is not None
+    }
 
 
 def read_all(texts: dict[str, tuple[Field, str]]) -> dict[str, Any]:

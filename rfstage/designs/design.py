@@ -34,7 +34,8 @@ class Design:
     """A finished design; ``job`` and ``settings`` are what it came from, ``stage`` is what can be built.
 
     ``coefficients`` are those of the current pulse, from order 0; ``continued`` names the harmonic
-    orders at which a measured load had to be continued beyond its table.
+    orders at which a measured load had to be continued beyond its table; ``assumed`` holds what was not
+    given and taken by default, by key.
     """
 
     job: Job
@@ -50,11 +51,7 @@ class Design:
     continued: tuple[int, ...]
     cautions: tuple[Caution, ...]
     stage: Stage
-
-    @property
-    def assumed(self) -> dict[str, object]:
-        """What was not given and taken by default, by key."""
-        return self.settings.assumed
+    assumed: dict[str, object]
 
     @property
     def worst(self) -> Harmonic | None:
@@ -88,64 +85,115 @@ def design(job: Job, textbook: bool = False) -> Design:
     orders = max(WAVEFORM_ORDERS, settings.highest_order)
     coefficients = pulse_coefficients(settings.half_angle, highest_order=orders, exponent=settings.exponent)
     circuit, point = by_the_book(settings, coefficients)
-    _note_assumptions(settings, circuit, point)
     branches = (*circuit.feed, *circuit.tank)
     ladder = Ladder(branches)
     shown_orders = range(2, settings.highest_order + 1)
-    dip = trough_dip(ladder, settings.load, carrier=job.carrier, coefficients=coefficients,
-                     peak_current=point.peak_current, swing=point.swing)
+    dip = trough_dip(
+        ladder,
+        settings.load,
+        carrier=job.carrier,
+        coefficients=coefficients,
+        peak_current=point.peak_current,
+        swing=point.swing,
+    )
     tank = describe(
-        settings.request.network, circuit.feed, circuit.tank, load=settings.load, carrier=job.carrier,
-        current=point.fundamental_current, trough_dip=dip,
-        terminations=terminations(ladder, settings.load, job.carrier, point.load_resistance, shown_orders))
+        settings.request.network,
+        circuit.feed,
+        circuit.tank,
+        load=settings.load,
+        carrier=job.carrier,
+        current=point.fundamental_current,
+        trough_dip=dip,
+        terminations=terminations(ladder, settings.load, job.carrier, point.load_resistance, shown_orders),
+    )
     drive = _drive(settings, point)
     levels = harmonics(
-        ladder, load=settings.load, line=settings.line, carrier=job.carrier, coefficients=coefficients,
-        peak_current=point.peak_current, highest_order=settings.highest_order, output_power=job.power,
-        limit=settings.limit)
-    continued = tuple(n for n in shown_orders if isinstance(settings.load, MeasuredLoad)
-                      and not settings.load.reaches(n * job.carrier))
+        ladder,
+        load=settings.load,
+        line=settings.line,
+        carrier=job.carrier,
+        coefficients=coefficients,
+        peak_current=point.peak_current,
+        highest_order=settings.highest_order,
+        output_power=job.power,
+        limit=settings.limit,
+    )
+    continued = tuple(
+        n
+        for n in shown_orders
+        if isinstance(settings.load, MeasuredLoad) and not settings.load.reaches(n * job.carrier)
+    )
+    stage, stand_ins = _stage(settings, circuit, point, drive)
     return Design(
-        job=job, settings=settings, designed_to="textbook", coefficients=coefficients,
-        operating_class=operating_class(job.conduction_angle), point=point, drive=drive,
-        ratings=tuple(ratings(point, max_voltage=job.max_voltage, max_current=job.max_current,
-                              max_dissipation=job.max_dissipation)),
-        tank=tank, harmonics=levels, continued=continued,
+        job=job,
+        settings=settings,
+        designed_to="textbook",
+        coefficients=coefficients,
+        operating_class=operating_class(job.conduction_angle),
+        point=point,
+        drive=drive,
+        ratings=tuple(
+            ratings(
+                point, max_voltage=job.max_voltage, max_current=job.max_current, max_dissipation=job.max_dissipation
+            )
+        ),
+        tank=tank,
+        harmonics=levels,
+        continued=continued,
         cautions=_cautions(settings, point, tank, levels, ladder, continued),
-        stage=_stage(settings, circuit, point, drive))
+        stage=stage,
+        assumed={**settings.assumed, **_sized(settings, circuit, point), **stand_ins},
+    )
 
 
-def _note_assumptions(settings: Settings, circuit: Circuit, point: OperatingPoint) -> None:
-    """Add the defaults that follow from the load resistance to those already noted."""
-    job, assumed = settings.job, settings.assumed
+def _sized(settings: Settings, circuit: Circuit, point: OperatingPoint) -> dict[str, object]:
+    """Return the defaults that follow from the load resistance, by key."""
+    job = settings.job
+    found: dict[str, object] = {}
     if job.choke is None:
-        assumed["supply.choke"] = circuit.supply.choke
+        found["supply.choke"] = circuit.supply.choke
     if job.blocking is None:
-        assumed["tank.blocking"] = float(circuit.blocking.value)
+        found["tank.blocking"] = float(circuit.blocking.value)
     if settings.request.network == "pi" and job.loaded_q is None and job.input_q is None:
-        assumed["tank.loaded_q"] = default_loaded_q(settings, point.load_resistance)
+        found["tank.loaded_q"] = default_loaded_q(settings, point.load_resistance)
+    return found
 
 
 def _drive(settings: Settings, point: OperatingPoint) -> DriveVoltages:
     job = settings.job
     bias, amplitude, unbiased = drive_voltages(
-        half_angle=settings.half_angle, peak_current=point.peak_current, exponent=settings.exponent,
-        threshold=settings.threshold, transfer_factor=job.transfer_factor, bias=job.bias)
+        half_angle=settings.half_angle,
+        peak_current=point.peak_current,
+        exponent=settings.exponent,
+        threshold=settings.threshold,
+        transfer_factor=job.transfer_factor,
+        bias=job.bias,
+    )
     power = drive_power(
-        settings.family, carrier=job.carrier, device_rf_power=point.device_rf_power, amplitude=amplitude,
-        gate_resistance=job.gate_resistance, input_capacitance=job.input_capacitance,
-        power_gain=None if job.power_gain is None else 10 ** (job.power_gain / 10), grid_current=job.grid_current)
+        settings.family,
+        carrier=job.carrier,
+        device_rf_power=point.device_rf_power,
+        amplitude=amplitude,
+        gate_resistance=job.gate_resistance,
+        input_capacitance=job.input_capacitance,
+        power_gain=None if job.power_gain is None else 10 ** (job.power_gain / 10),
+        grid_current=job.grid_current,
+    )
     return DriveVoltages(bias, amplitude, unbiased, power)
 
 
-def _stage(settings: Settings, circuit: Circuit, point: OperatingPoint, drive: DriveVoltages) -> Stage:
+def _stage(
+    settings: Settings, circuit: Circuit, point: OperatingPoint, drive: DriveVoltages
+) -> tuple[Stage, dict[str, object]]:
+    """Return the stage, and the values that stand in for data nobody gave, by key."""
     job = settings.job
+    stand_ins: dict[str, object] = {}
     cosine = math.cos(settings.half_angle)
     threshold, above = STAND_INS[settings.family]
     if settings.threshold is not None:
         threshold = settings.threshold
     else:
-        settings.assumed["device.threshold"] = threshold
+        stand_ins["device.threshold"] = threshold
     amplitude, bias = drive.amplitude, drive.bias
     if amplitude is None or bias is None:
         amplitude = above / (1 - cosine)
@@ -154,47 +202,95 @@ def _stage(settings: Settings, circuit: Circuit, point: OperatingPoint, drive: D
     transfer = job.transfer_factor
     if transfer is None:
         transfer = point.peak_current / peak_above**settings.exponent
-        settings.assumed["device.transfer_factor"] = transfer
+        stand_ins["device.transfer_factor"] = transfer
     knee_voltage, knee_resistance = knee_from_lowest_voltage(settings.minimum_voltage, point.peak_current, job.supply)
     device = Device(
-        family=settings.family, transfer_factor=transfer, exponent=settings.exponent, threshold=threshold,
-        threshold_softness=SOFTNESS * peak_above, knee_voltage=knee_voltage, knee_resistance=knee_resistance,
-        output_capacitance=settings.output_capacitance, reverse_conduction=_reverse(settings.family, point),
-        max_voltage=job.max_voltage, max_current=job.max_current, max_dissipation=job.max_dissipation)
-    return Stage(
-        carrier=job.carrier, device=device, drive=Drive(bias, amplitude), supply=circuit.supply,
-        branches=(circuit.blocking, *circuit.tank), load=settings.load,
+        family=settings.family,
+        transfer_factor=transfer,
+        exponent=settings.exponent,
+        threshold=threshold,
+        threshold_softness=_rounded(SOFTNESS * peak_above),
+        knee_voltage=_rounded(knee_voltage),
+        knee_resistance=_rounded(knee_resistance),
+        output_capacitance=settings.output_capacitance,
+        reverse_conduction=_reverse(settings.family, point),
+        max_voltage=job.max_voltage,
+        max_current=job.max_current,
+        max_dissipation=job.max_dissipation,
+    )
+    stage = Stage(
+        carrier=job.carrier,
+        device=device,
+        drive=Drive(bias, amplitude),
+        supply=circuit.supply,
+        branches=(circuit.blocking, *circuit.tank),
+        load=settings.load,
         asked=Asked(job.power, job.conduction_angle, settings.minimum_voltage),
-        limit_rule=job.limit, limit_load=job.limit_load)
+        limit_rule=job.limit,
+        limit_load=job.limit_load,
+    )
+    return stage, stand_ins
+
+
+def _rounded(value: float) -> float:
+    """Return four figures of a value that is an estimate anyway, so that the stage file can be read."""
+    return float(f"{value:.4g}")
 
 
 def _reverse(family: str, point: OperatingPoint) -> ReverseConduction | None:
     """Return the junction that conducts when the output swings below zero: a volt more at the peak current."""
     if family == "tube":
         return None
-    return ReverseConduction(conductance=point.peak_current, threshold=0.7, softness=0.03)
+    return ReverseConduction(conductance=_rounded(point.peak_current), threshold=0.7, softness=0.03)
 
 
-def _cautions(settings: Settings, point: OperatingPoint, tank: Tank, levels: tuple[Harmonic, ...], ladder: Ladder,
-              continued: tuple[int, ...]) -> tuple[Caution, ...]:
+def _cautions(
+    settings: Settings,
+    point: OperatingPoint,
+    tank: Tank,
+    levels: tuple[Harmonic, ...],
+    ladder: Ladder,
+    continued: tuple[int, ...],
+) -> tuple[Caution, ...]:
     job = settings.job
     found = about_dip(tank.trough_dip or 0.0)
     found += about_low_resistance(point.load_resistance, _input_capacitance(tank), job.carrier)
     found += about_resonance(strongest_resonance_below(ladder.branches, settings.load, job.carrier))
     if continued:
         orders = ", ".join(str(n) for n in continued)
-        found.append(Caution("load file", (
-            f"the measured load does not reach orders {orders}; it was continued from its nearest end as a series "
-            "resistance with a coil or capacitor, so those levels are estimates.")))
+        found.append(
+            Caution(
+                "load file",
+                (
+                    f"the measured load does not reach orders {orders}; it was continued from its nearest end as a series "
+                    "resistance with a coil or capacitor, so those levels are estimates."
+                ),
+            )
+        )
     if any(h.strays_decide for h in levels):
         orders = ", ".join(str(h.order) for h in levels if h.strays_decide)
-        found.append(Caution("strays", (
-            f"at orders {orders} the level moves by more than 3 dB with {show(5e-9, 'H')} of lead in each shunt "
-            "capacitor: measure, don't trust.")))
+        found.append(
+            Caution(
+                "strays",
+                (
+                    f"at orders {orders} the level moves by more than 3 dB with {show(5e-9, 'H')} of lead in each shunt "
+                    "capacitor: measure, don't trust."
+                ),
+            )
+        )
     highest = max(part.peak_voltage or 0.0 for part in tank.parts)
-    return tuple(found + safety(
-        family=settings.family, supply=job.supply, dc_current=point.dc_current, highest_rf=highest,
-        power=job.power, blocked=True, carrier=job.carrier))
+    return tuple(
+        found
+        + safety(
+            family=settings.family,
+            supply=job.supply,
+            dc_current=point.dc_current,
+            highest_rf=highest,
+            power=job.power,
+            blocked=True,
+            carrier=job.carrier,
+        )
+    )
 
 
 def _input_capacitance(tank: Tank) -> float | None:
@@ -204,5 +300,3 @@ def _input_capacitance(tank: Tank) -> float | None:
         if branch.name == "C1" and branch.place == "shunt":
             return float(branch.value)
     return None
-
-

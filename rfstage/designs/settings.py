@@ -64,29 +64,43 @@ def with_defaults(job: Job) -> Settings:
         return default
 
     family = use("device.family", job.family, "bipolar")
-    lowest = use("stage.minimum_voltage", job.minimum_voltage,
-                 0.12 * job.supply if family == "tube" else max(0.08 * job.supply, 1.0))
+    lowest = use(
+        "stage.minimum_voltage",
+        job.minimum_voltage,
+        0.12 * job.supply if family == "tube" else max(0.08 * job.supply, 1.0),
+    )
     if lowest >= job.supply:
-        raise InputError(f"stage.minimum_voltage: the assumed {exact_text(lowest, 'V')} is not below the supply of "
-                         f"{exact_text(job.supply, 'V')}; give the device's own lowest voltage")
-    load = load_over_frequency(use("load.impedance", job.load, 50 + 0j), job.carrier)
+        raise InputError(
+            f"stage.minimum_voltage: the assumed {exact_text(lowest, 'V')} is not below the supply of "
+            f"{exact_text(job.supply, 'V')}; give the device's own lowest voltage"
+        )
+    fifty: complex | MeasuredLoad = 50 + 0j
+    load = load_over_frequency(use("load.impedance", job.load, fifty), job.carrier)
     network = use("tank.network", job.network, "pi")
     request = Request(
-        network=network, coil_q=use("tank.coil_q", job.coil_q, 150.0),
+        network=network,
+        coil_q=use("tank.coil_q", job.coil_q, 150.0),
         capacitor_q=use("tank.capacitor_q", job.capacitor_q, 1000.0),
-        loaded_q=job.loaded_q, input_q=job.input_q)
+        loaded_q=job.loaded_q,
+        input_q=job.input_q,
+    )
     return Settings(
-        job=job, family=family, minimum_voltage=lowest,
+        job=job,
+        family=family,
+        minimum_voltage=lowest,
         exponent=use("device.exponent", job.exponent, 1.0),
         output_capacitance=use("device.output_capacitance", job.output_capacitance, 0.0),
         threshold=use("device.threshold", job.threshold, BIPOLAR_THRESHOLD) if family == "bipolar" else job.threshold,
-        load=load, load_impedance=complex(load.impedance(job.carrier)), request=request,
+        load=load,
+        load_impedance=complex(load.impedance(job.carrier)),
+        request=request,
         choke_q=use("supply.choke_q", job.choke_q, 100.0),
         choke_resistance=use("supply.choke_resistance", job.choke_resistance, 0.0),
         highest_order=use("stage.harmonics", job.harmonics, 10),
         limit=limit_named(job.limit) if job.limit else None,
         line=SeriesLoad(complex(use("limit.load", job.limit_load, 50.0)), job.carrier),
-        assumed=assumed)
+        assumed=assumed,
+    )
 
 
 def load_over_frequency(load: complex | MeasuredLoad, carrier: float) -> Load:
@@ -103,5 +117,6 @@ def load_over_frequency(load: complex | MeasuredLoad, carrier: float) -> Load:
         raise InputError(
             f"load.file: {load.name} reaches from {exact_text(float(load.frequencies[0]), 'Hz')} to "
             f"{exact_text(float(load.frequencies[-1]), 'Hz')}, which does not hold the carrier of "
-            f"{exact_text(carrier, 'Hz')}")
+            f"{exact_text(carrier, 'Hz')}"
+        )
     return load

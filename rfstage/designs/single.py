@@ -24,9 +24,17 @@ class SingleNetwork:
 
 
 def single_network(
-    *, wanted: complex, load: complex | MeasuredLoad, carrier: float, network: str = "pi",
-    loaded_q: float | None = None, input_q: float | None = None, coil_q: float = 150.0, capacitor_q: float = 1000.0,
-    power: float | None = None, harmonics: int = 10,
+    *,
+    wanted: complex,
+    load: complex | MeasuredLoad,
+    carrier: float,
+    network: str = "pi",
+    loaded_q: float | None = None,
+    input_q: float | None = None,
+    coil_q: float = 150.0,
+    capacitor_q: float = 1000.0,
+    power: float | None = None,
+    harmonics: int = 10,
 ) -> SingleNetwork:
     """Return one network that shows ``wanted`` when ``load`` is connected.
 
@@ -74,8 +82,16 @@ def single_network(
     if power is not None:
         device_power = power / tank_efficiency(branches, at_carrier, carrier)
         current = math.sqrt(2 * device_power / complex(ladder.impedance(carrier, at_carrier)).real)
-    tank = describe(network, (), branches, load=over_frequency, carrier=carrier, current=current, trough_dip=None,
-                    terminations=terminations(ladder, over_frequency, carrier, abs(wanted), orders))
+    tank = describe(
+        network,
+        (),
+        branches,
+        load=over_frequency,
+        carrier=carrier,
+        current=current,
+        trough_dip=None,
+        terminations=terminations(ladder, over_frequency, carrier, abs(wanted), orders),
+    )
     frequencies = carrier * np.arange(1, harmonics + 1)
     z = over_frequency.impedance(frequencies)
     amperes = np.abs(ladder.transimpedance(frequencies, z) / z)

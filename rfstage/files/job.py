@@ -100,5 +100,3 @@ def _from_file(path: Path, problems: list[str]) -> dict[str, Any]:
             problems.append(f"{path}: load: got both an impedance and a file; give one of them")
         values["load_file"] = str(path.parent / values["load_file"])
     return values
-
-

@@ -97,8 +97,14 @@ _TABLES = ("device", "drive", "supply", "branch", "load", "asked", "limit")
 def stage_text(stage: Stage, folder: Path) -> str:
     """Return a stage as TOML; a load file is named as seen from ``folder``."""
     device, supply = stage.device, stage.supply
-    lines = [f'format = "{FORMAT}"', f"version = {VERSION}", f'carrier = "{exact_text(stage.carrier, "Hz")}"',
-             "", "[device]", f'family = "{device.family}"']
+    lines = [
+        f'format = "{FORMAT}"',
+        f"version = {VERSION}",
+        f'carrier = "{exact_text(stage.carrier, "Hz")}"',
+        "",
+        "[device]",
+        f'family = "{device.family}"',
+    ]
     lines += _lines(_DEVICE[1:], device)
     if device.junction_capacitance is not None:
         lines.append(f"junction_capacitance = {_inline(_JUNCTION, device.junction_capacitance)}")
@@ -136,8 +142,13 @@ def _inline(fields: tuple[Field, ...], source: object) -> str:
 
 
 def _branch_lines(branch: Branch, data: PartData) -> list[str]:
-    lines = ["[[branch]]", f'name = "{branch.name}"', f'place = "{branch.place}"', f'kind = "{branch.kind}"',
-             f'value = "{exact_text(float(branch.value), VALUE_UNIT[branch.kind])}"']
+    lines = [
+        "[[branch]]",
+        f'name = "{branch.name}"',
+        f'place = "{branch.place}"',
+        f'kind = "{branch.kind}"',
+        f'value = "{exact_text(float(branch.value), VALUE_UNIT[branch.kind])}"',
+    ]
     if branch.q is not None:
         lines.append(f"q = {float(branch.q)!r}")
     if branch.series_resistance is not None:
@@ -190,12 +201,21 @@ def load_stage(path: str | Path) -> Stage:
     top = read_table(document, _TOP, prefix=f"{path}: ", problems=problems, also=_TABLES)
     tables = {name: document.get(name, {}) for name in _TABLES}
     read: dict[str, dict[str, Any]] = {}
-    for name, fields, also in (("device", _DEVICE, ("junction_capacitance", "reverse_conduction")), ("drive", _DRIVE, ()),
-                               ("supply", _SUPPLY, ()), ("load", _LOAD, ()), ("asked", _ASKED, ()), ("limit", _LIMIT, ())):
+    for name, fields, also in (
+        ("device", _DEVICE, ("junction_capacitance", "reverse_conduction")),
+        ("drive", _DRIVE, ()),
+        ("supply", _SUPPLY, ()),
+        ("load", _LOAD, ()),
+        ("asked", _ASKED, ()),
+        ("limit", _LIMIT, ()),
+    ):
         read[name] = read_table(tables[name], fields, prefix=f"{path}: {name}.", problems=problems, also=also)
     branches, data = _read_branches(tables["branch"], top.get("carrier"), f"{path}: branch", problems)
-    needed = {"device": ("family", "transfer_factor", "threshold", "knee_voltage"),
-              "drive": ("bias", "amplitude"), "supply": ("voltage", "choke")}
+    needed = {
+        "device": ("family", "transfer_factor", "threshold", "knee_voltage"),
+        "drive": ("bias", "amplitude"),
+        "supply": ("voltage", "choke"),
+    }
     _missing({"": top}, {"": ("carrier",)}, str(path), problems)
     _missing(read, needed, str(path), problems)
     junction = _read_inline(tables["device"], "junction_capacitance", _JUNCTION, JunctionCapacitance, path, problems)
@@ -214,11 +234,20 @@ def load_stage(path: str | Path) -> Stage:
     return Stage(
         carrier=top["carrier"],
         device=Device(**device, junction_capacitance=junction, reverse_conduction=reverse),
-        drive=Drive(**read["drive"]), supply=Supply(**read["supply"]), branches=branches, load=load,
-        asked=Asked(**read["asked"]), limit_rule=rule, limit_load=read["limit"].get("load"), part_data=data)
+        drive=Drive(**read["drive"]),
+        supply=Supply(**read["supply"]),
+        branches=branches,
+        load=load,
+        asked=Asked(**read["asked"]),
+        limit_rule=rule,
+        limit_load=read["limit"].get("load"),
+        part_data=data,
+    )
 
 
-def _missing(read: dict[str, dict[str, Any]], needed: dict[str, tuple[str, ...]], path: str, problems: list[str]) -> None:
+def _missing(
+    read: dict[str, dict[str, Any]], needed: dict[str, tuple[str, ...]], path: str, problems: list[str]
+) -> None:
     for table, keys in needed.items():
         for key in keys:
             full = f"{path}: {table}.{key}" if table else f"{path}: {key}"
@@ -226,7 +255,9 @@ def _missing(read: dict[str, dict[str, Any]], needed: dict[str, tuple[str, ...]]
                 problems.append(f"{full}: missing")
 
 
-def _read_inline(device: object, key: str, fields: tuple[Field, ...], make: Any, path: Path, problems: list[str]) -> Any:
+def _read_inline(
+    device: object, key: str, fields: tuple[Field, ...], make: Any, path: Path, problems: list[str]
+) -> Any:
     if not isinstance(device, dict) or key not in device:
         return None
     before = len(problems)
@@ -236,7 +267,9 @@ def _read_inline(device: object, key: str, fields: tuple[Field, ...], make: Any,
     return make(**values) if len(problems) == before else None
 
 
-def _read_branches(raw: object, carrier: float | None, prefix: str, problems: list[str]) -> tuple[tuple[Branch, ...], dict[str, PartData]]:
+def _read_branches(
+    raw: object, carrier: float | None, prefix: str, problems: list[str]
+) -> tuple[tuple[Branch, ...], dict[str, PartData]]:
     if not isinstance(raw, list) or not raw:
         problems.append(f"{prefix}: missing; a stage has one [[branch]] for each part from device to load")
         return (), {}
@@ -266,10 +299,19 @@ def _read_branches(raw: object, carrier: float | None, prefix: str, problems: li
             winding = tuple(wound.items())
         data[name] = PartData(trim, values.get("tolerance"), winding)
         if len(problems) == before:
-            branches.append(Branch(
-                name, values["place"], values["kind"], value, q=None if q is None or math.isinf(q) else q,
-                q_frequency=carrier, series_resistance=values.get("series_resistance"),
-                lead_inductance=values.get("lead_inductance", 0.0), self_capacitance=values.get("self_capacitance", 0.0)))
+            branches.append(
+                Branch(
+                    name,
+                    values["place"],
+                    values["kind"],
+                    value,
+                    q=None if q is None or math.isinf(q) else q,
+                    q_frequency=carrier,
+                    series_resistance=values.get("series_resistance"),
+                    lead_inductance=values.get("lead_inductance", 0.0),
+                    self_capacitance=values.get("self_capacitance", 0.0),
+                )
+            )
     return tuple(branches), data
 
 
@@ -305,7 +347,9 @@ def _read_load(values: dict[str, Any], carrier: float | None, path: Path, proble
     ways = [key for key in ("impedance", "file", "resistance") if key in values]
     if len(ways) != 1:
         if not any(f"{path}: load" in problem for problem in problems):
-            problems.append(f"{path}: load: got {' and '.join(ways) or 'nothing'}; wanted one of impedance, file, resistance")
+            problems.append(
+                f"{path}: load: got {' and '.join(ways) or 'nothing'}; wanted one of impedance, file, resistance"
+            )
         return None
     if carrier is None:
         return None
@@ -326,5 +370,3 @@ def _read_load(values: dict[str, Any], carrier: float | None, path: Path, proble
     if "capacitance" in values:
         reactance = -1 / (omega * values["capacitance"])
     return SeriesLoad(complex(values["resistance"], reactance), carrier)
-
-

@@ -45,8 +45,9 @@ def _quotes_hint(text: str, message: str) -> str:
     return f'; a quantity needs quotes: {value[1]} = "{value[2].strip()}"' if value else ""
 
 
-def read_table(table: object, fields: Sequence[Field], *, prefix: str, problems: list[str],
-               also: Iterable[str] = ()) -> dict[str, Any]:
+def read_table(
+    table: object, fields: Sequence[Field], *, prefix: str, problems: list[str], also: Iterable[str] = ()
+) -> dict[str, Any]:
     """Return the values of a table's keys by field name; problems are appended, unknown keys among them.
 
     Parameters

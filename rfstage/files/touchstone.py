@@ -89,8 +89,10 @@ def _checked(text: str, path: Path, ports: int) -> str:
         raise FileError(f"{path}: is not a Touchstone file: it has no option line (such as # MHz S RI R 50)")
     row = 1 + 2 * ports**2
     if numbers == 0 or numbers % row:
-        raise FileError(f"{path}: holds {numbers} numbers; a {ports}-port has {row} for each frequency, so a row is cut "
-                        "or the file has another number of ports")
+        raise FileError(
+            f"{path}: holds {numbers} numbers; a {ports}-port has {row} for each frequency, so a row is cut "
+            "or the file has another number of ports"
+        )
     return "\n".join(out) + "\n"
 
 
@@ -137,8 +139,9 @@ def _option_line(body: str, path: Path, line: int) -> str:
 def grid(carrier: float, highest_order: int) -> NDArray[np.float64]:
     """Return the frequencies of an export [Hz]: dense around the carrier, each harmonic exactly on it."""
     top = max(10, highest_order)
-    ratios = np.concatenate([
-        np.linspace(0.1, 0.9, 41), np.linspace(0.9, 1.1, 201), np.linspace(1.1, top + 0.5, 50 * top)])
+    ratios = np.concatenate(
+        [np.linspace(0.1, 0.9, 41), np.linspace(0.9, 1.1, 201), np.linspace(1.1, top + 0.5, 50 * top)]
+    )
     exact = carrier * np.arange(1, top + 1)
     others = carrier * np.round(ratios, 9)
     apart = np.abs(others[:, np.newaxis] / exact - 1).min(axis=1) > 1e-9
@@ -175,7 +178,7 @@ def _network_text(frequencies: NDArray[np.float64], s: NDArray[np.complex128], c
     import skrf
 
     network = skrf.Network(frequency=skrf.Frequency.from_f(frequencies, unit="Hz"), s=s, z0=PORT_RESISTANCE)
-    body = network.write_touchstone("stage.s2p", return_string=True, skrf_comment=False, form="ri", version="1.0")
+    body: str = network.write_touchstone("stage.s2p", return_string=True, skrf_comment=False, form="ri", version="1.0")
     text = "".join(f"! rfstage: {_clean(line)}\n" for line in comments) + body
     stream = io.StringIO(text)
     stream.name = "stage.s2p"
@@ -205,7 +208,9 @@ def _comments(design: Design) -> list[str]:
         unit = {"coil": "H", "capacitor": "F", "resistor": "ohm"}[branch.kind]
         loss = "lossless" if branch.q is None else f"Q {branch.q:.6g}"
         left = ", left out" if branch.origin == "device" else ""
-        lines.append(f"{branch.name} {branch.place} {branch.kind} {_ascii(show(float(branch.value), unit, 6))}, {loss}{left}")
+        lines.append(
+            f"{branch.name} {branch.place} {branch.kind} {_ascii(show(float(branch.value), unit, 6))}, {loss}{left}"
+        )
     return lines
 
 

@@ -44,12 +44,19 @@ def _row(look: Look, part: PartStress, stressed: bool) -> list[Cell]:
     branch = part.branch
     drawing = _TO_SUPPLY if branch.name == CHOKE else _DRAWN[branch.place, branch.kind]
     quality = "in device" if branch.origin == "device" else "lossless" if branch.q is None else f"{float(branch.q):.4g}"
-    cells = [Cell("  " + drawing[look.ascii], "cyan"), Cell(branch.name, "bold"),
-             Cell(show(float(branch.value), UNIT[branch.kind]), "bold", right=True), Cell(quality, right=True)]
+    cells = [
+        Cell("  " + drawing[look.ascii], "cyan"),
+        Cell(branch.name, "bold"),
+        Cell(show(float(branch.value), UNIT[branch.kind]), "bold", right=True),
+        Cell(quality, right=True),
+    ]
     if stressed:
         assert part.peak_voltage is not None
         assert part.rms_current is not None
         assert part.loss is not None
-        cells += [Cell(show(part.peak_voltage, "V"), right=True), Cell(show(part.rms_current, "A"), right=True),
-                  Cell(show(part.loss, "W") if part.loss > 0 else "none", right=True)]
+        cells += [
+            Cell(show(part.peak_voltage, "V"), right=True),
+            Cell(show(part.rms_current, "A"), right=True),
+            Cell(show(part.loss, "W") if part.loss > 0 else "none", right=True),
+        ]
     return cells

@@ -9,16 +9,24 @@ from rfstage.harmonics import Harmonic
 from rfstage.matching.networks import Tank
 from rfstage.quantity import exact_text, show, show_complex
 from rfstage.report.circuit import CONTROL, ELECTRODE, circuit
-from rfstage.report.page import Cell, Look, columns, heading, note, pairs
+from rfstage.report.page import NO_BREAK, Cell, Look, columns, heading, note, pairs
 
 BAR_FLOOR = -100.0  # dBc at the left end of a bar; the right end is the carrier
+_ORDER_NAMES = ("dc", "fundamental", "second", "third")
 _UNITS_OF = {"max_voltage": "V", "max_current": "A", "max_dissipation": "W"}
 
 
 def summary(design: Design, look: Look) -> list[Text]:
     """Return the whole summary as lines of text."""
-    return [*_title(design, look), *_circuit(design, look), *_point(design, look), *_tank(design, look),
-            *_harmonics(design, look), *_assumed(design, look), *_cautions(design, look)]
+    return [
+        *_title(design, look),
+        *_circuit(design, look),
+        *_point(design, look),
+        *_tank(design, look),
+        *_harmonics(design, look),
+        *_assumed(design, look),
+        *_cautions(design, look),
+    ]
 
 
 def _title(design: Design, look: Look) -> list[Text]:
@@ -26,17 +34,22 @@ def _title(design: Design, look: Look) -> list[Text]:
     words = look.text(
         f"{show(job.carrier, 'Hz', 5)} class-{design.operating_class} stage: {exact_text(job.power, 'W')} into "
         f"{show_complex(settings.load_impedance)} from {exact_text(job.supply, 'V')}, {settings.family}, "
-        f"{job.conduction_angle:g}° conduction")
+        f"{job.conduction_angle:g}° conduction"
+    )
     return [Text(words, "bold")]
 
 
 def _circuit(design: Design, look: Look) -> list[Text]:
     electrode = ELECTRODE[design.settings.family]
     lines = heading(look, f"Circuit, {electrode} to load")
-    lines += circuit(look, design.tank.parts, start=electrode,
-                     end=f"load {show_complex(design.settings.load_impedance)}")
-    return lines + note(look, f"Stresses are the carrier's. Cblock also stands off the supply's {show(design.job.supply, 'V')}.",
-                        style="dim")
+    lines += circuit(
+        look, design.tank.parts, start=electrode, end=f"load {show_complex(design.settings.load_impedance)}"
+    )
+    return lines + note(
+        look,
+        f"Stresses are the carrier's. Cblock also stands off the supply's {show(design.job.supply, 'V')}.",
+        style="dim",
+    )
 
 
 def _point(design: Design, look: Look) -> list[Text]:
@@ -63,14 +76,22 @@ def _point(design: Design, look: Look) -> list[Text]:
         items.append((f"{control} drive without bias", f"{show(drive.unbiased_amplitude, 'V')} peak"))
     items.append(("drive power", show(drive.power, "W") if drive.power is not None else "not known from these data"))
     lines = heading(look, f"Operating point, {design.designed_to}") + pairs(look, items)
+    shares = "  ".join(f"{_ORDER_NAMES[n]}{NO_BREAK}{design.coefficients[n]:.4f}" for n in range(4))
+    lines += note(look, f"Current pulse over its peak: {shares}".replace("-", "−"))
     for rating in design.ratings:
         unit = _UNITS_OF[rating.name]
         name = rating.name.replace("_", " ").replace("max", "rating: greatest")
         if rating.exceeded:
-            lines += note(look, f"EXCEEDED  {name} {show(rating.limit, unit)}, the stage asks {show(rating.value, unit)}: "
-                          f"{100 * (rating.value / rating.limit - 1):.3g} % too much", style="bold red")
+            lines += note(
+                look,
+                f"EXCEEDED  {name} {show(rating.limit, unit)}, the stage asks {show(rating.value, unit)}: "
+                f"{100 * (rating.value / rating.limit - 1):.3g} % too much",
+                style="bold red",
+            )
         else:
-            lines += note(look, f"within    {name} {show(rating.limit, unit)}, the stage asks {show(rating.value, unit)}")
+            lines += note(
+                look, f"within    {name} {show(rating.limit, unit)}, the stage asks {show(rating.value, unit)}"
+            )
     return lines
 
 
@@ -84,17 +105,25 @@ def _tank(design: Design, look: Look) -> list[Text]:
 
 def tank_lines(tank: Tank, look: Look) -> list[Text]:
     """Return what a tank is like, with what each Q means."""
-    items = [("loaded Q", f"{tank.loaded_q:.3g}"),
-             ("input-side Q", "none" if tank.input_q is None else f"{tank.input_q:.3g}"),
-             ("bandwidth, −3 dB", "no −3 dB points" if tank.bandwidth is None else show(tank.bandwidth, "Hz")),
-             ("tank efficiency", f"{100 * tank.efficiency:.1f} %"),
-             ("trough dip", f"{tank.trough_dip:.3f}" if tank.trough_dip is not None else "none")]
-    seen = "  ".join(f"{n}: {ratio:.2g}" for n, ratio in tank.terminations[:4])
-    return (pairs(look, items)
-            + note(look, f"Harmonic impedance over the load resistance, by order: {seen}")
-            + note(look, "Loaded Q counts the energy in tank and output capacitance; input-side Q is the load resistance "
-                   "over the reactance across the device. The device is a current generator; no source resistance "
-                   "stands in parallel.", style="dim"))
+    items = [
+        ("loaded Q", f"{tank.loaded_q:.3g}"),
+        ("input-side Q", "none" if tank.input_q is None else f"{tank.input_q:.3g}"),
+        ("bandwidth, −3 dB", "no −3 dB points" if tank.bandwidth is None else show(tank.bandwidth, "Hz")),
+        ("tank efficiency", f"{100 * tank.efficiency:.1f} %"),
+        ("trough dip", f"{tank.trough_dip:.3f}" if tank.trough_dip is not None else "none"),
+    ]
+    seen = "  ".join(f"{n}:{NO_BREAK}{ratio:.2g}" for n, ratio in tank.terminations[:4])
+    return (
+        pairs(look, items)
+        + note(look, f"Harmonic impedance over the load resistance, by order: {seen}")
+        + note(
+            look,
+            "Loaded Q counts the energy in tank and output capacitance; input-side Q is the load resistance "
+            "over the reactance across the device. The device is a current generator; no source resistance "
+            "stands in parallel.",
+            style="dim",
+        )
+    )
 
 
 def _harmonics(design: Design, look: Look) -> list[Text]:
@@ -107,7 +136,9 @@ def _harmonics(design: Design, look: Look) -> list[Text]:
     rows += [_harmonic_row(h, look, judged, room) for h in design.harmonics]
     lines = heading(look, f"Harmonics at the load, line {line}") + columns(look, rows, gap=1)
     if any(h.strays_decide for h in design.harmonics):
-        lines += note(look, "* strays decide: 5 nH of lead in each shunt capacitor moves it by more than 3 dB", style="dim")
+        lines += note(
+            look, "* strays decide: 5 nH of lead in each shunt capacitor moves it by more than 3 dB", style="dim"
+        )
     return lines + _verdict(design, look, limit is not None)
 
 
@@ -116,20 +147,32 @@ def _harmonic_row(h: Harmonic, look: Look, judged: bool, room: int) -> list[Cell
     if h.level is None or h.line_level is None:
         return [*front, Cell("none in the ideal pulse")]
     star = "*" if h.strays_decide else " "
-    cells = [*front, Cell(show(abs(h.device_current), "A"), right=True), Cell(show(h.load_power, "W"), right=True),
-             Cell(f"{h.level:.1f}".replace("-", "−"), right=True),
-             Cell(f"{h.line_level:.1f}{star}".replace("-", "−"), right=True)]
+    cells = [
+        *front,
+        Cell(show(abs(h.device_current), "A"), right=True),
+        Cell(show(h.load_power, "W"), right=True),
+        Cell(f"{h.level:.1f}".replace("-", "−"), right=True),
+        Cell(f"{h.line_level:.1f}{star}".replace("-", "−"), right=True),
+    ]
     style = ""
     if judged:
         style = "" if h.margin is None else "green" if h.margin >= 0 else "bold red"
-        cells += [Cell("none" if h.limit is None else f"{h.limit:.1f}".replace("-", "−"), right=True),
-                  Cell("none" if h.margin is None else f"{h.margin:+.1f}".replace("-", "−"), style, right=True)]
+        cells += [
+            Cell("none" if h.limit is None else f"{h.limit:.1f}".replace("-", "−"), right=True),
+            Cell("none" if h.margin is None else _signed(h.margin), style, right=True),
+        ]
     return [*cells, Cell(_bar(h.line_level, h.limit, look, room), style)]
+
+
+def _signed(decibels: float) -> str:
+    places = 1 if abs(decibels) >= 0.095 else 3
+    return f"{decibels:+.{places}f}".replace("-", "−")
 
 
 def _bar(level: float, limit: float | None, look: Look, room: int) -> str:
     """Draw a level from the floor at the left to the carrier at the right, the limit marked in it."""
     full, mark, empty = ("#", "|", ".") if look.ascii else ("█", "┃", "·")
+
     def place(value: float) -> int:
         return max(0, min(room - 1, round((value - BAR_FLOOR) / -BAR_FLOOR * room)))
 
@@ -149,11 +192,13 @@ def _verdict(design: Design, look: Look, limited: bool) -> list[Text]:
         return note(look, f"{where}: gives no figure here; reduce spurious emission as far as practicable.")
     line = show(design.settings.line.at_carrier.real, "ohm")
     if worst.margin < 0:
-        words, style = f"MISSES: needs {-worst.margin:.1f} dB more at order {worst.order}", "bold red"
+        more = _signed(-worst.margin).lstrip("+")
+        words, style = f"MISSES: needs {more} dB more at order {worst.order}", "bold red"
     else:
         words, style = f"MEETS: {worst.margin:.1f} dB to spare, least at order {worst.order}", "bold green"
-    return (note(look, f"{words}, {where}.", style=style)
-            + note(look, f"Judged in a resistive line of {line}; a measurement and the local rule decide.", style="dim"))
+    return note(look, f"{words}, {where}.", style=style) + note(
+        look, f"Judged in a resistive line of {line}; a measurement and the local rule decide.", style="dim"
+    )
 
 
 def _assumed(design: Design, look: Look) -> list[Text]:
@@ -169,8 +214,15 @@ def _assumed_value(key: str, value: object) -> str:
     if isinstance(value, str):
         return value
     assert isinstance(value, int | float)
-    unit = {"stage.minimum_voltage": "V", "device.threshold": "V", "supply.choke": "H", "tank.blocking": "F",
-            "supply.choke_resistance": "ohm", "limit.load": "ohm", "device.output_capacitance": "F"}.get(key)
+    unit = {
+        "stage.minimum_voltage": "V",
+        "device.threshold": "V",
+        "supply.choke": "H",
+        "tank.blocking": "F",
+        "supply.choke_resistance": "ohm",
+        "limit.load": "ohm",
+        "device.output_capacitance": "F",
+    }.get(key)
     if unit:
         return show(value, unit) if value else f"0 {unit}".replace("ohm", "Ω")
     return f"{value:.4g}" + (" (stand-in for the stage file)" if key == "device.transfer_factor" else "")

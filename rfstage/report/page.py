@@ -18,8 +18,24 @@ from rich.console import Console
 from rich.text import Text
 
 PIPE_WIDTH = 100
-_ASCII = (("µ", "u"), ("Ω", "ohm"), ("−", "-"), ("×", "x"), ("°", " deg"), ("·", "*"), ("≤", "<="), ("≥", ">="),
-          ("→", "->"), ("…", "..."), ("√", "sqrt"), ("²", "^2"), ("±", "+/-"), ("η", "efficiency"), ("–", "-"))
+NO_BREAK = "\u00a0"  # keeps a figure with its label where a note wraps
+_ASCII = (
+    ("µ", "u"),
+    ("Ω", "ohm"),
+    ("−", "-"),
+    ("×", "x"),
+    ("°", " deg"),
+    ("·", "*"),
+    ("≤", "<="),
+    ("≥", ">="),
+    ("→", "->"),
+    ("…", "..."),
+    ("√", "sqrt"),
+    ("²", "^2"),
+    ("±", "+/-"),
+    ("η", "efficiency"),
+    ("–", "-"),
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -79,9 +95,15 @@ def columns(look: Look, rows: Sequence[Sequence[Cell]], *, indent: int = 2, gap:
 
 def note(look: Look, words: str, *, style: str = "", indent: int = 2, hanging: int = 0) -> list[Text]:
     """Return a paragraph wrapped to the page."""
-    wrapped = textwrap.wrap(look.text(words), width=max(30, min(look.width, 110)), initial_indent=" " * indent,
-                            subsequent_indent=" " * (indent + hanging), break_long_words=False, break_on_hyphens=False)
-    return [Text(line, style) for line in wrapped]
+    wrapped = textwrap.wrap(
+        look.text(words),
+        width=max(30, min(look.width, 110)),
+        initial_indent=" " * indent,
+        subsequent_indent=" " * (indent + hanging),
+        break_long_words=False,
+        break_on_hyphens=False,
+    )
+    return [Text(line.replace(NO_BREAK, " "), style) for line in wrapped]
 
 
 def pairs(look: Look, items: Sequence[tuple[str, str]], *, style: str = "") -> list[Text]:
@@ -104,7 +126,7 @@ def look_for(stream: IO[str], *, plain: bool) -> Look:
     """Return the look that suits a stream: its width if it is a terminal, ASCII if it can't show more."""
     terminal = stream.isatty()
     width = shutil.get_terminal_size((80, 25)).columns if terminal or "COLUMNS" in os.environ else PIPE_WIDTH
-    return Look(width=max(60, width), ascii=plain or not _shows(stream.encoding, "µΩ°−─┤╧ξ█"))
+    return Look(width=max(60, width), ascii=plain or not _shows(getattr(stream, "encoding", None), "µΩ°−─┤╧ξ█"))
 
 
 def _shows(encoding: str | None, sample: str) -> bool:
@@ -118,7 +140,14 @@ def _shows(encoding: str | None, sample: str) -> bool:
 def print_page(lines: Sequence[Text], *, plain: bool, stream: IO[str] | None = None) -> None:
     """Print a page; colour only on a terminal that wants it."""
     target = stream or sys.stdout
-    console = Console(file=target, no_color=True if plain or "NO_COLOR" in os.environ else None, highlight=False,
-                      markup=False, emoji=False, soft_wrap=True, color_system=None if plain else "auto")
+    console = Console(
+        file=target,
+        no_color=True if plain or "NO_COLOR" in os.environ else None,
+        highlight=False,
+        markup=False,
+        emoji=False,
+        soft_wrap=True,
+        color_system=None if plain else "auto",
+    )
     for line in lines:
         console.print(line, soft_wrap=True)

@@ -10,18 +10,25 @@ from rfstage.matching.networks import Tank
 from rfstage.quantity import show_complex
 from rfstage.report.circuit import circuit
 from rfstage.report.design import tank_lines
-from rfstage.report.page import Cell, Look, columns, heading, note
+from rfstage.report.page import NO_BREAK, Cell, Look, columns, heading, note
 
 
-def pulse_page(look: Look, *, angle: float, exponent: float, operating_class: str, coefficients: Sequence[float]) -> list[Text]:
+def pulse_page(
+    look: Look, *, angle: float, exponent: float, operating_class: str, coefficients: Sequence[float]
+) -> list[Text]:
     """Return the coefficients of a pulse of this conduction angle [deg]."""
     a = coefficients
     lines = heading(look, f"Current pulse, {angle:g}° conduction, class {operating_class}, exponent {exponent:g}")
     rows = [[Cell("order", "dim", right=True), Cell("share of the peak", "dim", right=True)]]
-    rows += [[Cell(str(n), right=True), Cell(f"{value:+.6f}".replace("-", "−"), right=True)] for n, value in enumerate(a)]
+    rows += [
+        [Cell(str(n), right=True), Cell(f"{value:+.6f}".replace("-", "−"), right=True)] for n, value in enumerate(a)
+    ]
     lines += columns(look, rows)
-    return lines + note(look, f"fundamental over dc {a[1] / a[0]:.5f}; greatest efficiency {50 * a[1] / a[0]:.2f} % "
-                        "(full swing, harmonics shorted, no losses)")
+    return lines + note(
+        look,
+        f"fundamental over dc {a[1] / a[0]:.5f}; greatest efficiency {50 * a[1] / a[0]:.2f} % "
+        "(full swing, harmonics shorted, no losses)",
+    )
 
 
 def match_page(look: Look, *, tank: Tank, load: complex, transfer: Sequence[tuple[int, float]]) -> list[Text]:
@@ -29,6 +36,6 @@ def match_page(look: Look, *, tank: Tank, load: complex, transfer: Sequence[tupl
     lines = heading(look, f"Network {tank.network}, {show_complex(tank.impedance)} at the device")
     lines += circuit(look, tank.parts, start="device", end=f"load {show_complex(load)}")
     lines += heading(look, "Tank") + tank_lines(tank, look)
-    words = "  ".join(f"{n}: {level:.1f} dB".replace("-", "−") for n, level in transfer)
+    words = "  ".join(f"{n}:{NO_BREAK}{level:.1f}{NO_BREAK}dB".replace("-", "−") for n, level in transfer)
     lines += heading(look, "Harmonic transfer: load current against the carrier's, for equal device currents")
     return lines + note(look, words)
