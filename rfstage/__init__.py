@@ -6,8 +6,8 @@ The names below are loaded when first used, so that ``import rfstage`` costs not
 from __future__ import annotations
 
 from importlib import import_module
-from typing import TYPE_CHECKING
 
+TYPE_CHECKING = False  # type checkers take this name as true; the typing module itself costs a start
 if TYPE_CHECKING:
     from rfstage.designs.design import Design, design
     from rfstage.designs.single import SingleNetwork, single_network

@@ -33,9 +33,9 @@ def safety(
             Caution(
                 "high voltage",
                 (
-                    f"{show(supply, 'V')} dc can kill, and stays on the capacitors after switch-off; bleeders fail open. "
-                    "Switch off, unplug, wait, measure, then short with an insulated stick before touching; work with one "
-                    "hand, never alone."
+                    f"{show(supply, 'V')} dc can kill, and stays on the capacitors after switch-off; bleeders fail "
+                    "open. Switch off, unplug, wait, measure, then short with an insulated stick before touching; work "
+                    "with one hand, never alone."
                 ),
             )
         )
@@ -44,8 +44,8 @@ def safety(
             Caution(
                 "high current",
                 (
-                    f"{show(dc_current, 'A')} from the supply burns through rings, tools and thin wire: take jewellery off, "
-                    "fuse the lead at the supply."
+                    f"{show(dc_current, 'A')} from the supply burns through rings, tools and thin wire: take jewellery "
+                    "off, fuse the lead at the supply."
                 ),
             )
         )
@@ -54,8 +54,8 @@ def safety(
             Caution(
                 "RF burns",
                 (
-                    f"{show(highest_rf, 'V')} peak RF stands on tank parts; it burns deeply, at low supply voltages too. "
-                    "Enclose the tank and never adjust it by bare hand with power on."
+                    f"{show(highest_rf, 'V')} peak RF stands on tank parts; it burns deeply, at low supply voltages "
+                    "too. Enclose the tank and never adjust it by bare hand with power on."
                 ),
             )
         )
@@ -64,8 +64,8 @@ def safety(
             Caution(
                 "blocking capacitor",
                 (
-                    f"if the blocking capacitor fails, {show(supply, 'V')} reaches the antenna: put an RF choke across the "
-                    "output, so that the fuse blows instead."
+                    f"if the blocking capacitor fails, {show(supply, 'V')} reaches the antenna: put an RF choke across "
+                    "the output, so that the fuse blows instead."
                 ),
             )
         )
@@ -86,8 +86,8 @@ def safety(
         Caution(
             "rules",
             (
-                "exposure, spurious limits and wiring follow local codes, the licence and licensed practice; they decide, "
-                "not this program."
+                "exposure, spurious limits and wiring follow local codes, the licence and licensed practice; they "
+                "decide, not this program."
             ),
         )
     )
@@ -103,8 +103,8 @@ def about_dip(dip: float) -> list[Caution]:
         Caution(
             "harmonic terminations",
             (
-                f"trough dip {dip:.2f}: the network leaves the device's harmonics too much impedance, so the textbook power "
-                f"{strength} and the peak voltage may be far higher; a pi, or a higher input-side Q, shorts them."
+                f"trough dip {dip:.2f}: the network leaves the device's harmonics too much impedance, so the textbook "
+                f"power {strength} and the peak voltage may be far higher; a pi, or a higher input-side Q, shorts them."
             ),
         )
     ]

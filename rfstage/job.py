@@ -7,9 +7,8 @@ from typing import TYPE_CHECKING
 
 from rfstage.errors import InputError
 from rfstage.fields import check
-from rfstage.jobfields import JOB_FIELDS, REQUIRED
-from rfstage.limits import limit_named
-from rfstage.quantity import QuantityError, exact_text
+from rfstage.jobfields import JOB_FIELDS, REQUIRED, conflicts
+from rfstage.quantity import QuantityError
 
 if TYPE_CHECKING:
     from rfstage.load import MeasuredLoad
@@ -86,22 +85,3 @@ class Job:
         problems += conflicts({field.name: getattr(self, field.name) for field in JOB_FIELDS})
         if problems:
             raise InputError(*problems)
-
-
-def conflicts(values: dict[str, object]) -> list[str]:
-    """Return one line for each pair of given values that can't stand together."""
-    found = []
-    supply, lowest = values.get("supply"), values.get("minimum_voltage")
-    if isinstance(supply, float | int) and isinstance(lowest, float | int) and lowest >= supply > 0:
-        found.append(
-            f"stage.minimum_voltage: got {exact_text(lowest, 'V')}; allowed below the supply of "
-            f"{exact_text(supply, 'V')}"
-        )
-    if values.get("loaded_q") is not None and values.get("input_q") is not None:
-        found.append("tank.input_q: got both a loaded Q and an input-side Q; give one of them")
-    if isinstance(values.get("limit"), str):
-        try:
-            limit_named(str(values["limit"]))
-        except InputError as error:
-            found += error.problems
-    return found

@@ -6,7 +6,10 @@ attribute of `rfstage.job.Job`.
 
 from __future__ import annotations
 
+from rfstage.errors import InputError
 from rfstage.fields import Field
+from rfstage.limits import limit_named
+from rfstage.quantity import exact_text
 
 FAMILIES = ("bipolar", "fet", "tube")
 NETWORKS = ("l", "l-high-pass", "pi")
@@ -232,7 +235,7 @@ JOB_FIELDS: tuple[Field, ...] = (
         1.0,
         True,
         "--blocking",
-        "blocking capacitor [reactance a tenth of the load resistance]",
+        "blocking capacitor [a tenth of the reactance it works into]",
     ),
     Field(
         "limit.rule",
@@ -253,3 +256,22 @@ JOB_FIELDS: tuple[Field, ...] = (
         "resistive line load for the verdict [50 ohm]",
     ),
 )
+
+
+def conflicts(values: dict[str, object]) -> list[str]:
+    """Return one line for each pair of given values that can't stand together."""
+    found = []
+    supply, lowest = values.get("supply"), values.get("minimum_voltage")
+    if isinstance(supply, float | int) and isinstance(lowest, float | int) and lowest >= supply > 0:
+        found.append(
+            f"stage.minimum_voltage: got {exact_text(lowest, 'V')}; allowed below the supply of "
+            f"{exact_text(supply, 'V')}"
+        )
+    if values.get("loaded_q") is not None and values.get("input_q") is not None:
+        found.append("tank.input_q: got both a loaded Q and an input-side Q; give one of them")
+    if isinstance(values.get("limit"), str):
+        try:
+            limit_named(str(values["limit"]))
+        except InputError as error:
+            found += error.problems
+    return found

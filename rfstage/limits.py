@@ -21,7 +21,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from rfstage.errors import InputError
 from rfstage.fields import nearest
@@ -31,8 +31,7 @@ HF_TOP = 30e6  # Hz: below it paragraph (d) applies, from it on paragraph (e)
 VHF_TOP = 225e6  # Hz: up to it paragraph (e) gives figures
 
 
-@dataclass(frozen=True, slots=True)
-class Limit:
+class Limit(NamedTuple):
     """A rule: its name, where it is published, its conditions, and the function behind `suppression`."""
 
     name: str

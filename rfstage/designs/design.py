@@ -262,8 +262,8 @@ def _cautions(
             Caution(
                 "load file",
                 (
-                    f"the measured load does not reach orders {orders}; it was continued from its nearest end as a series "
-                    "resistance with a coil or capacitor, so those levels are estimates."
+                    f"the measured load does not reach orders {orders}; it was continued from its nearest end as a "
+                    "series resistance with a coil or capacitor, so those levels are estimates."
                 ),
             )
         )
@@ -273,8 +273,8 @@ def _cautions(
             Caution(
                 "strays",
                 (
-                    f"at orders {orders} the level moves by more than 3 dB with {show(5e-9, 'H')} of lead in each shunt "
-                    "capacitor: measure, don't trust."
+                    f"at orders {orders} the level moves by more than 3 dB with {show(5e-9, 'H')} of lead in each "
+                    "shunt capacitor: measure, don't trust."
                 ),
             )
         )

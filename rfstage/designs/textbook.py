@@ -56,8 +56,13 @@ def circuit_for(settings: Settings, resistance: float) -> Circuit:
     """
     job = settings.job
     omega = 2 * math.pi * job.carrier
-    choke = job.choke if job.choke is not None else _choke_reactance(settings, resistance) / omega
-    blocking = job.blocking if job.blocking is not None else 10 / (omega * resistance)
+    across = _input_reactance(settings, resistance)
+    choke = job.choke
+    if choke is None:
+        choke = (10 * resistance if resistance < SMALL_RESISTANCE or across is None else 9 * across) / omega
+    blocking = job.blocking
+    if blocking is None:
+        blocking = 10 / (omega * min(resistance, across or resistance))
     supply = Supply(voltage=job.supply, choke=choke, choke_resistance=settings.choke_resistance,
                     choke_q=settings.choke_q)
     capacitor_q = settings.request.capacitor_q
@@ -68,22 +73,22 @@ def circuit_for(settings: Settings, resistance: float) -> Circuit:
     return Circuit(supply, settings.output_capacitance, blocker, tank, job.carrier)
 
 
-def _choke_reactance(settings: Settings, resistance: float) -> float:
-    """Return ten times the load resistance [ohm], or where that is large ten times the input capacitor's reactance.
+def _input_reactance(settings: Settings, resistance: float) -> float | None:
+    """Return the reactance [ohm] of the capacitance a pi needs across the device, or None for other networks.
 
-    The input capacitor also tunes the choke out, so it is 1/0.9 of what the network needs without one.
+    Where the load resistance is high this is what choke and blocking capacitor are sized against: both
+    see the current of the input capacitor. The input capacitor also tunes the choke out, so that it is
+    1/0.9 of what the network needs without one, and the choke ten times its reactance is nine times this.
     """
-    if resistance < SMALL_RESISTANCE or settings.request.network != "pi":
-        return 10 * resistance
-    q = settings.request.loaded_q
-    if q is None:
-        q = default_loaded_q(settings, resistance)
+    if settings.request.network != "pi":
+        return None
+    q = settings.request.loaded_q or default_loaded_q(settings, resistance)
     try:
         first = pi_network(complex(resistance), settings.load_impedance, carrier=settings.job.carrier,
                            loaded_q=q, input_q=settings.request.input_q)[0]
     except ImpossibleError:
-        return 10 * resistance  # the network itself says what is wrong
-    return 9 / (2 * math.pi * settings.job.carrier * float(first.value))
+        return None  # the network itself says what is wrong
+    return 1 / (2 * math.pi * settings.job.carrier * float(first.value))
 
 
 def default_loaded_q(settings: Settings, resistance: float) -> float:

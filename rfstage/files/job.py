@@ -4,14 +4,16 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from rfstage.errors import InputError
 from rfstage.fields import Field, nearest, read
 from rfstage.files.tables import parse_toml, read_table
-from rfstage.job import Job, conflicts
-from rfstage.jobfields import JOB_FIELDS, REQUIRED
+from rfstage.jobfields import JOB_FIELDS, REQUIRED, conflicts
 from rfstage.quantity import QuantityError
+
+if TYPE_CHECKING:
+    from rfstage.job import Job
 
 LOAD_FILE_ENDING = ".s1p"
 
@@ -63,6 +65,8 @@ def read_job(path: str | Path | None, options: Mapping[str, str]) -> Job:
         from rfstage.files.touchstone import read_load
 
         values["load"] = read_load(file)
+    from rfstage.job import Job
+
     return Job(**values)
 
 

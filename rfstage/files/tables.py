@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import re
-import tomllib
 from collections.abc import Iterable, Sequence
 from pathlib import Path
 from typing import Any
@@ -29,6 +28,8 @@ def parse_toml(path: Path) -> dict[str, Any]:
         raise FileError(f"{path}: can't be read ({error.strerror})") from None
     except UnicodeDecodeError:
         raise FileError(f"{path}: is not a text file in UTF-8") from None
+    import tomllib
+
     try:
         return tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:

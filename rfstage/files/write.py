@@ -6,7 +6,6 @@ An existing file is replaced only when that is asked for.
 from __future__ import annotations
 
 import os
-import tempfile
 from collections.abc import Sequence
 from pathlib import Path
 
@@ -46,6 +45,8 @@ def write_files(contents: Sequence[tuple[Path, str]], *, overwrite: bool) -> Non
         If a target can't be written; then nothing was.
     """
     check_targets([path for path, _ in contents], overwrite=overwrite)
+    import tempfile  # it loads a dozen modules, and most runs write nothing
+
     aside: list[tuple[str, Path]] = []
     try:
         for path, text in contents:

@@ -72,10 +72,13 @@ def close(
 
     def residual(x: NDArray[np.float64]) -> NDArray[np.float64]:
         parts = rebuilt(x)
-        miss = complex(Ladder(parts).impedance(carrier, load)) / target - 1
-        if asked_loaded_q is None:
-            return np.array([miss.real, miss.imag])
-        return np.array([miss.real, miss.imag, loaded_q(feed, parts, load, carrier) / asked_loaded_q - 1])
+        try:
+            miss = complex(Ladder(parts).impedance(carrier, load)) / target - 1
+            if asked_loaded_q is None:
+                return np.array([miss.real, miss.imag])
+            return np.array([miss.real, miss.imag, loaded_q(feed, parts, load, carrier) / asked_loaded_q - 1])
+        except ZeroDivisionError:  # a part of exactly nothing on the way: as far off as can be
+            return np.full(x.size, math.inf)
 
     start = np.array([float(branch.value) for branch in moving]) / scale
     return rebuilt(_newton(residual, start))

@@ -11,6 +11,7 @@ from rfstage.ladder import Branch, Ladder
 from rfstage.load import Load
 from rfstage.matching.exact import behind, close, with_losses
 from rfstage.matching.l import l_network
+from rfstage.matching.parts import parallel_resistance
 from rfstage.matching.pi import least_loaded_q, pi_network
 from rfstage.matching.quality import bandwidth, input_side_q, loaded_q
 from rfstage.quantity import exact_complex, exact_text, show
@@ -105,11 +106,14 @@ def _solve_pi(request: Request, feed: Sequence[Branch], wanted: complex, target:
     if asked is None and request.input_q is None:
         asked = max(DEFAULT_LOADED_Q, least_loaded_q(wanted, load, least_input_q=taken) + DEFAULT_Q_MARGIN)
     try:
-        tank = pi_network(target, load, carrier=carrier, loaded_q=asked, input_q=request.input_q)
+        input_q = request.input_q
+        if input_q is not None:
+            pi_network(wanted, load, carrier=carrier, input_q=input_q)  # says so where the Q is too low
+            susceptance = input_q / resistance - omega * capacitance
+            input_q = parallel_resistance(target) * (susceptance - (1 / target).imag)
+        tank = pi_network(target, load, carrier=carrier, loaded_q=asked, input_q=input_q)
         lossy = with_losses(tank, coil_q=request.coil_q, capacitor_q=request.capacitor_q, carrier=carrier)
-        if request.input_q is not None:
-            c1 = request.input_q / (resistance * omega) - capacitance
-            lossy = (replace(lossy[0], value=c1), *lossy[1:])
+        if input_q is not None:
             parts = close(feed, lossy, wanted=wanted, load=load, carrier=carrier, fixed=1)
         else:
             parts = close(feed, lossy, wanted=wanted, load=load, carrier=carrier, asked_loaded_q=asked)
@@ -123,6 +127,10 @@ def _solve_pi(request: Request, feed: Sequence[Branch], wanted: complex, target:
         raise ImpossibleError("network pi: the input capacitor comes out at nothing; raise the loaded Q")
     if float(parts[2].value) <= 0:
         least = least_loaded_q(wanted, load, least_input_q=taken)
+        if load.imag >= 0:
+            raise ImpossibleError(
+                f"network pi: the output capacitor comes out at nothing, from the losses or from a blocking capacitor "
+                f"with too much reactance; a loaded Q above {least:.3g} by some margin, or a larger tank.blocking, helps")
         raise ImpossibleError(
             f"network pi: the load's own capacitance is more than the output capacitor this Q leaves; a loaded Q "
             f"above about {least:.3g} leaves room")

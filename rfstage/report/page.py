@@ -149,5 +149,4 @@ def print_page(lines: Sequence[Text], *, plain: bool, stream: IO[str] | None = N
         soft_wrap=True,
         color_system=None if plain else "auto",
     )
-    for line in lines:
-        console.print(line, soft_wrap=True)
+    console.print(Text("\n").join(lines), soft_wrap=True)
