@@ -133,8 +133,8 @@ def about_resonance(resonance: tuple[float, float] | None) -> list[Caution]:
         Caution(
             "choke resonance",
             (
-                f"choke and blocking capacitor resonate at {show(resonance[0], 'Hz')}, {resonance[1]:.0f} dB above the "
-                "carrier's level: damp it, or the stage may oscillate there."
+                f"the choke resonates with the capacitors behind it at {show(resonance[0], 'Hz')}, "
+                f"{resonance[1]:.0f} dB above the carrier's level: damp it, or the stage may oscillate there."
             ),
         )
     ]

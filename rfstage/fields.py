@@ -99,8 +99,10 @@ def check(field: Field, value: Any) -> Any:
     QuantityError
         If not, with a likely fix where a prefix of the unit would make it right.
     """
+    if field.kind == "q" and value == math.inf:
+        return value
     size = value.real if field.kind == "impedance" else value
-    if not (math.isfinite(abs(value)) or (field.kind == "q" and value > 0)):
+    if not math.isfinite(abs(value)):
         raise QuantityError(f"got {value}; wanted a finite number, {allowed(field)}")
     if size < field.low or size > field.high or (field.above and size == field.low):
         shown = exact_complex(value) + " ohm" if field.kind == "impedance" else exact_text(value, field.unit)

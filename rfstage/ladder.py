@@ -23,7 +23,8 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
-from typing import Any
+from operator import attrgetter
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -76,7 +77,7 @@ class Branch:
     self_capacitance: Real = 0.0
     origin: str = "part"
 
-    def impedance(self, frequency: Real) -> Complex:
+    def impedance(self, frequency: Real) -> Any:
         """Return the branch's impedance [ohm]; sample axes come before those of ``frequency`` [Hz]."""
         omega = 2 * math.pi * frequency
         value = _lift(self.value, frequency)
@@ -98,14 +99,14 @@ class Branch:
             z = z + 1j * omega * _lift(self.lead_inductance, frequency)
         return z
 
-    def admittance(self, frequency: Real) -> Complex:
+    def admittance(self, frequency: Real) -> Any:
         """Return one over the impedance [S]; a capacitor without strays costs no division by its value."""
         if self.kind == "capacitor" and self.series_resistance is None and not _present(self.lead_inductance):
             loss = 0.0 if self.q is None else 1 / _lift(self.q, frequency)
             return _lift(self.value, frequency) * (2 * math.pi * frequency * ((loss + 1j) / (loss * loss + 1)))
         return 1 / self.impedance(frequency)
 
-    def _coil_loss(self, frequency: Real) -> Real:
+    def _coil_loss(self, frequency: Real) -> Any:
         """Series resistance per henry that a Q stands for: ω₀/Q · √(f/f₀)."""
         if self.q is None:
             return 0.0
@@ -113,20 +114,22 @@ class Branch:
             raise OutOfRangeError(f"{self.name}: q_frequency", None, "given where a coil has a Q")
         return 2 * math.pi * self.q_frequency / _lift(self.q, frequency) * (frequency / self.q_frequency) ** 0.5
 
-    def stored_energy(self, frequency: float, voltage: complex, current: complex) -> float:
-        """Return mean stored energy [J] at peak ``voltage`` [V] across and ``current`` [A] through it.
+    def stored_energy(self, frequency: float, current: complex) -> float:
+        """Return mean stored energy [J] at peak ``current`` [A] through the branch.
 
         For one sample and frequency; lead inductance and self-capacitance are counted.
         """
         omega = 2 * math.pi * frequency
+        square = abs(current) ** 2 / 4
         if self.kind == "coil":
-            inner = voltage * 1j * omega * float(self.self_capacitance)
-            return (float(self.value) * abs(current - inner) ** 2
-                    + float(self.self_capacitance) * abs(voltage) ** 2) / 4
-        lead = float(self.lead_inductance) * abs(current) ** 2 / 4
+            if not _present(self.self_capacitance):
+                return float(self.value) * square
+            across = current * complex(self.impedance(frequency))
+            winding = current - across * 1j * omega * float(self.self_capacitance)
+            return (float(self.value) * abs(winding) ** 2 + float(self.self_capacitance) * abs(across) ** 2) / 4
         if self.kind == "capacitor":
-            return lead + abs(current) ** 2 / (4 * omega**2 * float(self.value))
-        return lead
+            return square * (float(self.lead_inductance) + 1 / (omega**2 * float(self.value)))
+        return square * float(self.lead_inductance)
 
 
 def _lift(value: Real, frequency: Real) -> Any:
@@ -140,8 +143,7 @@ def _present(value: Real) -> bool:
     return isinstance(value, np.ndarray) or value != 0
 
 
-@dataclass(frozen=True, slots=True)
-class BranchState:
+class BranchState(NamedTuple):
     """What one branch carries for 1 A peak from the device: peak current [A] and loss [W].
 
     Each of shape (samples..., frequencies...). The voltage across it is its impedance times the current.
@@ -151,8 +153,7 @@ class BranchState:
     loss: Real
 
 
-@dataclass(frozen=True, slots=True)
-class Walk:
+class Walk(NamedTuple):
     """One walk of a ladder, for 1 A peak from the device.
 
     ``impedance`` at the device [ohm], ``transimpedance`` V_load/I_device [ohm], ``load_impedance`` [ohm],
@@ -294,20 +295,21 @@ def _square(x: Any) -> Any:
 
 
 _SAMPLED = ("value", "q", "series_resistance", "lead_inductance", "self_capacitance")
+_sampled_of = attrgetter(*_SAMPLED)
 
 
 def _sample_shape(branches: Sequence[Branch]) -> tuple[int, ...]:
-    arrays = [a.shape for b in branches for name in _SAMPLED if isinstance(a := getattr(b, name), np.ndarray)]
+    arrays = [a.shape for branch in branches for a in _sampled_of(branch) if isinstance(a, np.ndarray)]
     return np.broadcast_shapes(*arrays) if arrays else ()
 
 
 def _flat_samples(branch: Branch, shape: tuple[int, ...]) -> Branch:
-    arrays = {name: np.broadcast_to(a, shape).reshape(-1) for name in _SAMPLED
+    arrays: dict[str, Any] = {name: np.broadcast_to(a, shape).reshape(-1) for name in _SAMPLED
               if isinstance(a := getattr(branch, name), np.ndarray)}
     return replace(branch, **arrays) if arrays else branch
 
 
 def _take(branch: Branch, part: slice) -> Branch:
-    arrays = {name: a[part] for name in _SAMPLED if isinstance(a := getattr(branch, name), np.ndarray)}
+    arrays: dict[str, Any] = {name: a[part] for name in _SAMPLED if isinstance(a := getattr(branch, name), np.ndarray)}
     return replace(branch, **arrays) if arrays else branch
 

@@ -27,6 +27,7 @@ from rfstage.stage import BLOCKING, Supply, feed
 
 SMALL_RESISTANCE = 500.0  # ohm: up to here the choke is sized against it, above against the input capacitor
 SETTLED = 1e-13  # relative change of the load resistance
+NEAR = 0.05  # relative change of the load resistance over which the parts found are a good start for the next
 _ROUNDS = 60
 
 
@@ -46,7 +47,7 @@ class Circuit:
         return (*feed(self.output_capacitance, self.supply.branch(self.carrier)), self.blocking)
 
 
-def circuit_for(settings: Settings, resistance: float) -> Circuit:
+def circuit_for(settings: Settings, resistance: float, near: tuple[Branch, ...] = ()) -> Circuit:
     """Return the circuit that shows a resistance [ohm] to the device, exact with its losses.
 
     Raises
@@ -69,7 +70,7 @@ def circuit_for(settings: Settings, resistance: float) -> Circuit:
     blocker = Branch(BLOCKING, "series", "capacitor", blocking, q=None if math.isinf(capacitor_q) else capacitor_q)
     before = (*feed(settings.output_capacitance, supply.branch(job.carrier)), blocker)
     tank = solve_network(settings.request, feed=before, wanted=complex(resistance), load=settings.load_impedance,
-                         carrier=job.carrier)
+                         carrier=job.carrier, near=near)
     return Circuit(supply, settings.output_capacitance, blocker, tank, job.carrier)
 
 
@@ -106,6 +107,15 @@ def point_for(settings: Settings, coefficients: NDArray[np.float64], efficiency:
         tank_efficiency=efficiency, choke_resistance=settings.choke_resistance)
 
 
+def _efficiency_at_first_sight(settings: Settings) -> float:
+    """Return 1 − loaded over unloaded Q [-], about the efficiency of a pi, as a start."""
+    request = settings.request
+    if request.network != "pi" or request.input_q is not None:
+        return 1.0
+    lost = (request.loaded_q or DEFAULT_LOADED_Q) * (1 / request.coil_q + 1 / request.capacitor_q)
+    return 1 - lost if lost < 0.5 else 1.0
+
+
 def by_the_book(settings: Settings, coefficients: NDArray[np.float64]) -> tuple[Circuit, OperatingPoint]:
     """Return circuit and operating point that put the asked power into the load, losses and all.
 
@@ -116,22 +126,23 @@ def by_the_book(settings: Settings, coefficients: NDArray[np.float64]) -> tuple[
     ConvergenceError
         If the loop does not settle.
     """
-    def next_for(resistance: float) -> tuple[Circuit, OperatingPoint]:
-        circuit = circuit_for(settings, resistance)
+    def next_for(resistance: float, near: tuple[Branch, ...]) -> tuple[Circuit, OperatingPoint]:
+        circuit = circuit_for(settings, resistance, near)
         efficiency = tank_efficiency((*circuit.feed, *circuit.tank), settings.load_impedance, settings.job.carrier)
         return circuit, point_for(settings, coefficients, efficiency)
 
-    resistance = point_for(settings, coefficients, 1.0).load_resistance
+    resistance = point_for(settings, coefficients, _efficiency_at_first_sight(settings)).load_resistance
     before: tuple[float, float] | None = None
+    near: tuple[Branch, ...] = ()
     for _ in range(_ROUNDS):
-        circuit, point = next_for(resistance)
+        circuit, point = next_for(resistance, near)
         miss = point.load_resistance - resistance
         if abs(miss) <= SETTLED * resistance:
             return circuit, point
         step = miss
         if before is not None and before[1] != miss:
             step = -miss * (resistance - before[0]) / (miss - before[1])  # secant
-        before = (resistance, miss)
+        before, near = (resistance, miss), circuit.tank if abs(step) < NEAR * resistance else ()
         resistance = max(resistance + step, resistance / 2)
     raise ConvergenceError(
         "the load resistance did not settle between power and tank losses: the tank loses nearly all the power; "

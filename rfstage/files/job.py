@@ -16,6 +16,8 @@ if TYPE_CHECKING:
     from rfstage.job import Job
 
 LOAD_FILE_ENDING = ".s1p"
+# an option puts aside what the file says of these
+_RIVALS = {"load": ("load_file",), "loaded_q": ("input_q",), "input_q": ("loaded_q",)}
 
 
 def load_job(path: str | Path) -> Job:
@@ -50,6 +52,9 @@ def read_job(path: str | Path | None, options: Mapping[str, str]) -> Job:
         where = {name: f"{path}: {key}" for name, key in where.items()}
     for field in JOB_FIELDS:
         if field.name in options:
+            for rival in _RIVALS.get(field.name, ()):
+                if rival not in options:
+                    values.pop(rival, None)
             _take_option(field, options[field.name], values, problems)
     for name in REQUIRED:
         if name not in values and not any(where[name] in p or _field(name).option in p for p in problems):
@@ -83,10 +88,6 @@ def _take_option(field: Field, text: str, values: dict[str, Any], problems: list
         values[field.name] = read(field, text)
     except QuantityError as error:
         problems.append(f"{field.option}: {error}")
-    if field.name == "load":
-        values.pop("load_file", None)
-    if field.name in ("loaded_q", "input_q"):
-        values.pop("input_q" if field.name == "loaded_q" else "loaded_q", None)
 
 
 def _from_file(path: Path, problems: list[str]) -> dict[str, Any]:

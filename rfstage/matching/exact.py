@@ -9,7 +9,7 @@ network goes through this one step.
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -17,11 +17,14 @@ from numpy.typing import NDArray
 
 from rfstage.errors import ConvergenceError
 from rfstage.ladder import Branch, Ladder
-from rfstage.matching.quality import loaded_q
+from rfstage.matching.quality import impedance_and_loaded_q
 
 _TOLERANCE = 1e-12
 _ITERATIONS = 60
 _STEP = 1e-7  # of the one-sided differences; Newton then gains about seven digits an iteration
+_GOOD = 0.2  # an iteration that leaves less than this of the miss lets the derivatives be carried along
+
+Residual = Callable[[NDArray[np.float64]], NDArray[np.float64]]
 
 
 def behind(feed: Sequence[Branch], wanted: complex, carrier: float) -> complex:
@@ -67,18 +70,20 @@ def close(
     scale = np.array([_scale(branch, target, carrier) for branch in moving])
 
     def rebuilt(x: NDArray[np.float64]) -> tuple[Branch, ...]:
-        return (*tank[:fixed],
-                *(replace(b, value=float(v)) for b, v in zip(moving, x * scale, strict=True)))
+        values = (x * scale).tolist()
+        return (*tank[:fixed], *(replace(b, value=v) for b, v in zip(moving, values, strict=True)))
 
     def residual(x: NDArray[np.float64]) -> NDArray[np.float64]:
         parts = rebuilt(x)
         try:
-            miss = complex(Ladder(parts).impedance(carrier, load)) / target - 1
             if asked_loaded_q is None:
+                miss = complex(Ladder(parts).impedance(carrier, load)) / target - 1
                 return np.array([miss.real, miss.imag])
-            return np.array([miss.real, miss.imag, loaded_q(feed, parts, load, carrier) / asked_loaded_q - 1])
+            z, q = impedance_and_loaded_q(feed, parts, load, carrier)
         except ZeroDivisionError:  # a part of exactly nothing on the way: as far off as can be
             return np.full(x.size, math.inf)
+        miss = z / wanted - 1
+        return np.array([miss.real, miss.imag, q / asked_loaded_q - 1])
 
     start = np.array([float(branch.value) for branch in moving]) / scale
     return rebuilt(_newton(residual, start))
@@ -91,17 +96,16 @@ def _scale(branch: Branch, target: complex, carrier: float) -> float:
     return max(abs(float(branch.value)), least)
 
 
-def _newton(residual, start: NDArray[np.float64]) -> NDArray[np.float64]:  # type: ignore[no-untyped-def]
+def _newton(residual: Residual, start: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Solve by Newton's method, its derivatives carried along by Broyden's update while that goes well."""
     x, r = start, residual(start)
     size = float(np.abs(r).max())
+    fresh = good = False
     for _ in range(_ITERATIONS):
         if size <= _TOLERANCE:
             return x
-        jacobian = np.empty((r.size, x.size))
-        for k in range(x.size):
-            moved = x.copy()
-            moved[k] += _STEP
-            jacobian[:, k] = (residual(moved) - r) / _STEP
+        if not good:
+            jacobian, fresh = _derivatives(residual, x, r), True
         try:
             step = np.linalg.solve(jacobian, -r)
         except np.linalg.LinAlgError:
@@ -116,8 +120,24 @@ def _newton(residual, start: NDArray[np.float64]) -> NDArray[np.float64]:  # typ
                 break
             shrink /= 2
         else:
-            break
-        x, r, size = trial, new, new_size
+            if fresh:
+                break
+            good = False
+            continue
+        good = new_size < _GOOD * size
+        if good:
+            moved = trial - x
+            jacobian = jacobian + np.outer(new - r - jacobian @ moved, moved) / (moved @ moved)
+        x, r, size, fresh = trial, new, new_size, False
     if size <= 1e3 * _TOLERANCE:  # rounding in the impedance itself, of high-Q networks
         return x
     raise ConvergenceError(f"the network did not close: {size:.3g} left of the wanted impedance")
+
+
+def _derivatives(residual: Residual, x: NDArray[np.float64], r: NDArray[np.float64]) -> NDArray[np.float64]:
+    jacobian = np.empty((r.size, x.size))
+    for k in range(x.size):
+        moved = x.copy()
+        moved[k] += _STEP
+        jacobian[:, k] = (residual(moved) - r) / _STEP
+    return jacobian

@@ -32,7 +32,7 @@ class Request:
 
 
 def solve_network(request: Request, *, feed: Sequence[Branch], wanted: complex, load: complex,
-                  carrier: float) -> tuple[Branch, ...]:
+                  carrier: float, near: Sequence[Branch] = ()) -> tuple[Branch, ...]:
     """Return the network's parts, exact with their losses.
 
     Parameters
@@ -45,6 +45,8 @@ def solve_network(request: Request, *, feed: Sequence[Branch], wanted: complex, 
         What the device's current generator must see, and the load [ohm].
     carrier : float
         Hz.
+    near : sequence of Branch
+        The parts for nearly the same impedances, where they are known: a start that saves time.
 
     Raises
     ------
@@ -59,9 +61,10 @@ def solve_network(request: Request, *, feed: Sequence[Branch], wanted: complex, 
         raise ImpossibleError(
             f"the choke's loss alone is more than the {exact_complex(_figures(wanted))} ohm asked at the device; "
             "raise supply.choke or supply.choke_q")
-    solve = _solve_pi if request.network == "pi" else _solve_l
     try:
-        return solve(request, feed, wanted, target, load, carrier)
+        if request.network == "pi":
+            return _solve_pi(request, feed, wanted, target, load, carrier, near)
+        return _solve_l(request, feed, wanted, target, load, carrier)
     except ConvergenceError as error:
         raise ImpossibleError(
             f"network {request.network}: with a coil Q of {request.coil_q:.6g} and a capacitor Q of "
@@ -86,7 +89,7 @@ def _solve_l(request: Request, feed: Sequence[Branch], wanted: complex, target: 
         if capacitance and not high_pass:
             room = _room_for_output_capacitance(wanted, load, carrier)
             if room is not None and room < capacitance:
-                raise ImpossibleError(_too_much_capacitance(capacitance, wanted, load, carrier)
+                raise ImpossibleError(_too_much_capacitance(capacitance, wanted, load, carrier, request.coil_q)
                                       + f"; an L leaves room for {show(room, 'F')}") from None
         raise
     lossy = with_losses(tank, coil_q=request.coil_q, capacitor_q=request.capacitor_q, carrier=carrier)
@@ -97,7 +100,7 @@ def _solve_l(request: Request, feed: Sequence[Branch], wanted: complex, target: 
 
 
 def _solve_pi(request: Request, feed: Sequence[Branch], wanted: complex, target: complex, load: complex,
-              carrier: float) -> tuple[Branch, ...]:
+              carrier: float, near: Sequence[Branch]) -> tuple[Branch, ...]:
     omega = 2 * math.pi * carrier
     capacitance = _device_capacitance(feed)
     resistance = 1 / (1 / wanted).real
@@ -116,14 +119,14 @@ def _solve_pi(request: Request, feed: Sequence[Branch], wanted: complex, target:
         if input_q is not None:
             parts = close(feed, lossy, wanted=wanted, load=load, carrier=carrier, fixed=1)
         else:
-            parts = close(feed, lossy, wanted=wanted, load=load, carrier=carrier, asked_loaded_q=asked)
+            parts = close(feed, near or lossy, wanted=wanted, load=load, carrier=carrier, asked_loaded_q=asked)
     except ConvergenceError:
-        if capacitance and taken > (request.input_q or asked or 0):
-            raise ImpossibleError(_too_much_capacitance(capacitance, wanted, load, carrier)) from None
+        if capacitance and taken > (request.input_q or request.loaded_q or DEFAULT_LOADED_Q):
+            raise ImpossibleError(_too_much_capacitance(capacitance, wanted, load, carrier, request.coil_q)) from None
         raise
     if float(parts[0].value) <= 0:
         if capacitance:
-            raise ImpossibleError(_too_much_capacitance(capacitance, wanted, load, carrier))
+            raise ImpossibleError(_too_much_capacitance(capacitance, wanted, load, carrier, request.coil_q))
         raise ImpossibleError("network pi: the input capacitor comes out at nothing; raise the loaded Q")
     if float(parts[2].value) <= 0:
         least = least_loaded_q(wanted, load, least_input_q=taken)
@@ -150,13 +153,15 @@ def _room_for_output_capacitance(wanted: complex, load: complex, carrier: float)
     return float(first.value) if first.place == "shunt" else None
 
 
-def _too_much_capacitance(capacitance: float, wanted: complex, load: complex, carrier: float) -> str:
+def _too_much_capacitance(capacitance: float, wanted: complex, load: complex, carrier: float, coil_q: float) -> str:
     taken = 2 * math.pi * carrier * capacitance / (1 / wanted).real
     fits = least_loaded_q(wanted, load, least_input_q=1.05 * taken)
-    return (f"device.output_capacitance: {show(capacitance, 'F')} has {show(1 / (2 * math.pi * carrier * capacitance), 'ohm')}"
-            f" reactance at {exact_text(carrier, 'Hz')}, an input-side Q of {taken:.3g} by itself against "
-            f"{exact_complex(_figures(wanted))} ohm, which is more than this Q leaves; a pi of loaded Q {fits:.3g} or more "
-            "would take it in")
+    reactance = show(1 / (2 * math.pi * carrier * capacitance), "ohm")
+    better = f", with coils of far higher Q than {coil_q:.4g}" if fits > coil_q / 3 else ""
+    return (f"device.output_capacitance: {show(capacitance, 'F')} has {reactance} reactance at "
+            f"{exact_text(carrier, 'Hz')}, an input-side Q of {taken:.3g} by itself against "
+            f"{exact_complex(_figures(wanted))} ohm, which is more than this Q leaves; a pi of loaded Q {fits:.3g} or "
+            f"more would take it in{better}")
 
 
 def _figures(z: complex) -> complex:
@@ -210,7 +215,7 @@ def describe(network: str, feed: Sequence[Branch], tank: Sequence[Branch], *, lo
         if current is None:
             parts.append(PartStress(branch, None, None, None))
             continue
-        amperes = abs(state.current) * current
+        amperes = abs(complex(state.current)) * current
         parts.append(PartStress(branch, amperes * abs(branch.impedance(carrier)), amperes / math.sqrt(2),
                                 float(state.loss) * current**2))
     z = complex(walk.impedance)

@@ -15,17 +15,25 @@ import numpy as np
 from rfstage.ladder import Branch, Ladder
 from rfstage.load import Load
 
-_OFFSETS = np.geomspace(1e-5, 0.9995, 500)  # distance from the carrier, as a fraction of it
-_UPWARD = np.geomspace(1e-5, 30.0, 500)
+# From the carrier downwards and upwards, relative to it, close together near it
+_BOTH_WAYS = np.array([1 - np.append(0, np.geomspace(1e-5, 0.9995, 500)), 1 + np.append(0, np.geomspace(1e-5, 30.0, 500))])
 
 
-def reactive_power(branches: Sequence[Branch], load: complex, carrier: float) -> float:
-    """Return ω × mean stored energy [var] in the branches, for 1 A peak into the first."""
-    total = 0.0
-    for branch, state in zip(branches, Ladder(branches).walk(carrier, load).branches, strict=True):
-        current = complex(state.current)
-        total += branch.stored_energy(carrier, current * complex(branch.impedance(carrier)), current)
-    return 2 * math.pi * carrier * total
+def impedance_and_loaded_q(
+    feed: Sequence[Branch], tank: Sequence[Branch], load: complex, carrier: float
+) -> tuple[complex, float]:
+    """Return the impedance [ohm] the device sees, and the loaded Q [-], from one walk.
+
+    Arguments as `loaded_q`.
+    """
+    branches = (*feed, *tank)
+    walk = Ladder(branches).walk(carrier, load)
+    z = complex(walk.impedance)
+    stored = 0.0
+    for k, (branch, state) in enumerate(zip(branches, walk.branches, strict=True)):
+        if k >= len(feed) or branch.origin == "device":
+            stored += branch.stored_energy(carrier, complex(state.current))
+    return z, 2 * math.pi * carrier * stored / (z.real / 2)
 
 
 def loaded_q(feed: Sequence[Branch], tank: Sequence[Branch], load: complex, carrier: float) -> float:
@@ -33,13 +41,7 @@ def loaded_q(feed: Sequence[Branch], tank: Sequence[Branch], load: complex, carr
 
     ``load`` [ohm] and ``carrier`` [Hz] are scalars; the definition is in the module's docstring.
     """
-    behind = complex(Ladder(tank).impedance(carrier, load))
-    walk = Ladder(feed).walk(carrier, behind)
-    into_tank = abs(complex(walk.transimpedance) / behind) ** 2
-    stored = into_tank * reactive_power(tank, load, carrier)
-    stored += sum(2 * math.pi * carrier * float(b.value) * abs(walk.impedance) ** 2 / 4
-                  for b in feed if b.origin == "device")
-    return stored / (complex(walk.impedance).real / 2)
+    return impedance_and_loaded_q(feed, tank, load, carrier)[1]
 
 
 def input_side_q(feed: Sequence[Branch], tank: Sequence[Branch], resistance: float, carrier: float) -> float | None:
@@ -55,21 +57,16 @@ def bandwidth(branches: Sequence[Branch], load: Load, carrier: float) -> float |
     """
     ladder = Ladder(branches)
     level = abs(complex(ladder.transimpedance(carrier, load))) / math.sqrt(2)
-    edges = []
-    for frequencies in (carrier * (1 - _OFFSETS), carrier * (1 + _UPWARD)):
+    frequencies = carrier * _BOTH_WAYS
+    for _ in range(4):  # each time between the last point above the level and the first below it
         below = np.abs(ladder.transimpedance(frequencies, load)) < level
-        first = int(np.argmax(below))
-        if not below[first]:
+        if not below.any(axis=1).all():
             return None
-        edge = float(frequencies[first])
-        inner = float(frequencies[first - 1]) if first else carrier
-        for _ in range(3):
-            between = np.linspace(inner, edge, 65)
-            beyond = np.abs(ladder.transimpedance(between, load)) < level
-            at = max(1, int(np.argmax(beyond)))
-            inner, edge = float(between[at - 1]), float(between[at])
-        edges.append((inner + edge) / 2)
-    return edges[1] - edges[0]
+        first = np.maximum(below.argmax(axis=1), 1)
+        inner, outer = frequencies[(0, 1), first - 1], frequencies[(0, 1), first]
+        frequencies = np.linspace(inner, outer, 65, axis=1)
+    low, high = (inner + outer) / 2
+    return float(high - low)
 
 
 def strongest_resonance_below(branches: Sequence[Branch], load: Load, carrier: float) -> tuple[float, float] | None:

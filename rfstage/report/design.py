@@ -36,7 +36,7 @@ def _title(design: Design, look: Look) -> list[Text]:
         f"{show_complex(settings.load_impedance)} from {exact_text(job.supply, 'V')}, {settings.family}, "
         f"{job.conduction_angle:g}° conduction"
     )
-    return [Text(words, "bold")]
+    return note(look, words, style="bold", indent=0)
 
 
 def _circuit(design: Design, look: Look) -> list[Text]:
@@ -74,7 +74,7 @@ def _point(design: Design, look: Look) -> list[Text]:
         items += [(f"{control} bias", _volts(drive.bias)), (f"{control} drive, peak", show(drive.amplitude, "V"))]
     if drive.unbiased_amplitude is not None:
         items.append((f"{control} drive without bias", f"{show(drive.unbiased_amplitude, 'V')} peak"))
-    items.append(("drive power", show(drive.power, "W") if drive.power is not None else "not known from these data"))
+    items.append(("drive power", show(drive.power, "W") if drive.power is not None else "not known"))
     lines = heading(look, f"Operating point, {design.designed_to}") + pairs(look, items)
     shares = "  ".join(f"{_ORDER_NAMES[n]}{NO_BREAK}{design.coefficients[n]:.4f}" for n in range(4))
     lines += note(look, f"Current pulse over its peak: {shares}".replace("-", "−"))

@@ -108,8 +108,14 @@ def note(look: Look, words: str, *, style: str = "", indent: int = 2, hanging: i
 
 def pairs(look: Look, items: Sequence[tuple[str, str]], *, style: str = "") -> list[Text]:
     """Return names and values, two or three pairs a line as the page allows."""
-    widest = max(len(look.text(name)) + len(look.text(value)) for name, value in items) + 6
-    across = max(1, min(3, (look.width - 2) // widest))
+    for across in (3, 2):
+        lines = _pairs_across(look, items, across, style)
+        if max(len(line) for line in lines) <= look.width:
+            return lines
+    return _pairs_across(look, items, 1, style)
+
+
+def _pairs_across(look: Look, items: Sequence[tuple[str, str]], across: int, style: str) -> list[Text]:
     rows_needed = -(-len(items) // across)
     rows = []
     for r in range(rows_needed):

@@ -1,0 +1,16 @@
+"""The steady state of a real stage, by a balance of harmonics.
+
+::
+
+    settling   the entries: one stage with its orders chosen, or many at once
+    report     currents, powers, stresses and harmonics from a solution
+    solve      Newton, then a softened knee, then drive steps
+    balance    the equations, their exact Jacobian, damped Newton, a stage axis in front of everything
+    circuit    stages as arrays: the ladder's impedance at all orders, the device under drive
+    state      what is handed out
+"""
+
+from rfstage.steady.settling import settle, settle_many
+from rfstage.steady.state import BranchStress, HarmonicLevel, OrdersChange, SteadyState, Waveform
+
+__all__ = ["BranchStress", "HarmonicLevel", "OrdersChange", "SteadyState", "Waveform", "settle", "settle_many"]

@@ -1,0 +1,222 @@
+r"""The balance of harmonics, its exact Jacobian, and damped Newton on many stages at once.
+
+::
+
+    W_k + Z_k (I_k + j k ω Q_k) = 0,  k = 0 … N        v(t) = V_supply + W_0 + Σ Re W_k e^{jkωt}
+
+    W_k  deviation of the device node's voltage from the supply (the unknowns: 2N + 1 real numbers)
+    I_k  of the device's current at v(t) and the drive; Q_k of its junction charge; both by FFT of M samples
+
+In this impedance form a short (Z = 0) is as welcome as an open. Written for the deviation, the equations keep
+their relative accuracy down to the faintest drive.
+
+The Jacobian is exact. With G_n the coefficients of the sampled slope di/dv, and W_l = a_l + j b_l,
+
+    dI_k/da_l = G_{k−l} + G_{k+l}            dI_k/db_l = j (G_{k−l} − G_{k+l})
+
+so that it is a Toeplitz and a Hankel array, both only views of one row of numbers. A passive ladder and a
+current that rises with the voltage make the problem monotone: there is one solution, and any way to it is right.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from rfstage.devicelaw import Array, junction_charge
+from rfstage.steady.circuit import Circuit
+
+TOLERANCE = 1e-11  # of the supply voltage, or of the current's response where that is less
+ITERATIONS = 25  # past these, softening the knee is the shorter way
+HALVINGS = 10  # of one step
+
+
+@dataclass(frozen=True, slots=True)
+class Point:
+    """A trial: unknowns and scaled residual [V] (S, 2N + 1), merit and goal [-] (S,), sampled slopes (S, M).
+
+    ``merit`` is the residual's length over the supply voltage, and the solution has ``merit <= goal``.
+    """
+
+    unknowns: Array
+    residual: Array
+    merit: Array
+    goal: Array
+    conductance: Array
+    capacitance: Array | None
+
+    def take(self, rows: Any) -> Point:
+        """Return the chosen rows."""
+        capacitance = None if self.capacitance is None else self.capacitance[rows]
+        return Point(self.unknowns[rows], self.residual[rows], self.merit[rows], self.goal[rows],
+                     self.conductance[rows], capacitance)
+
+    def put(self, rows: Any, other: Point) -> None:
+        """Overwrite the chosen rows."""
+        for name in ("unknowns", "residual", "merit", "goal", "conductance"):
+            getattr(self, name)[rows] = getattr(other, name)
+        if self.capacitance is not None:
+            self.capacitance[rows] = other.capacitance
+
+
+@dataclass(frozen=True, slots=True)
+class Outcome:
+    """Where Newton ended: unknowns (S, 2N + 1), merit, whether it converged, and iterations spent (S,)."""
+
+    unknowns: Array
+    merit: Array
+    converged: NDArray[np.bool_]
+    iterations: NDArray[np.int64]
+
+
+def voltage(circuit: Circuit, unknowns: Array) -> Array:
+    """Return the device node's voltage [V] over the cycle, shape (S, M)."""
+    n = circuit.orders
+    half = np.empty((unknowns.shape[0], n + 1), dtype=np.complex128)
+    half.real[:, 0] = unknowns[:, 0]
+    half.imag[:, 0] = 0
+    half.real[:, 1:] = unknowns[:, 1:n + 1]
+    half.imag[:, 1:] = unknowns[:, n + 1:]
+    half[:, 1:] *= 0.5
+    wave = np.fft.irfft(half, circuit.samples, norm="forward")
+    wave += circuit.supply
+    return wave
+
+
+def spectrum(wave: Array, orders: int) -> NDArray[np.complex128]:
+    """Return twice the Fourier coefficients 0 … orders: peak phasors, and twice the mean."""
+    return np.fft.rfft(wave, norm="forward")[:, :orders + 1] * 2
+
+
+def evaluate(circuit: Circuit, unknowns: Array) -> Point:
+    """Return residual, merit and slopes at the unknowns [V], shape (S, 2N + 1)."""
+    n = circuit.orders
+    volts = voltage(circuit, unknowns)
+    amperes, conductance = circuit.driven.current(volts)
+    drawn = spectrum(amperes, n)
+    capacitance = None
+    if circuit.law.has_charge:
+        charge, capacitance = junction_charge(circuit.law, volts)
+        drawn += 1j * circuit.omega * spectrum(charge, n)
+    response = circuit.impedance * drawn
+    residual = np.empty_like(unknowns)
+    residual[:, :n + 1] = response.real
+    residual[:, n + 1:] = response.imag[:, 1:]
+    size = np.sqrt(np.einsum("sk,sk->s", residual, residual))
+    residual[:, :n + 1] += circuit.scale * unknowns[:, :n + 1]
+    residual[:, n + 1:] += circuit.scale[:, 1:] * unknowns[:, n + 1:]
+    supply = circuit.supply[:, 0]
+    merit = np.sqrt(np.einsum("sk,sk->s", residual, residual)) / supply
+    return Point(unknowns, residual, merit, TOLERANCE * np.minimum(1, size / supply), conductance, capacitance)
+
+
+def jacobian(circuit: Circuit, point: Point) -> Array:
+    """Return d residual/d unknowns [-], shape (S, 2N + 1, 2N + 1), exact for the sampled law."""
+    n = circuit.orders
+    z = circuit.impedance[:, :, np.newaxis]
+    over_a, over_b = _slopes(point.conductance, n)
+    over_a *= z
+    over_b *= z
+    if point.capacitance is not None:
+        charge_a, charge_b = _slopes(point.capacitance, n)
+        reactive = z * (1j * circuit.omega[:, :, np.newaxis])
+        over_a += reactive * charge_a
+        over_b += reactive * charge_b
+    # the columns of b are j times over_b: its real part is −imag, its imaginary part real
+    j = np.empty((z.shape[0], 2 * n + 1, 2 * n + 1))
+    j[:, :n + 1, :n + 1] = over_a.real
+    j[:, n + 1:, :n + 1] = over_a.imag[:, 1:]
+    np.negative(over_b.imag, out=j[:, :n + 1, n + 1:])
+    j[:, n + 1:, n + 1:] = over_b.real[:, 1:]
+    diagonal = np.einsum("sii->si", j)
+    diagonal[:, :n + 1] += circuit.scale
+    diagonal[:, n + 1:] += circuit.scale[:, 1:]
+    return j
+
+
+def _slopes(wave: Array, n: int) -> tuple[NDArray[np.complex128], NDArray[np.complex128]]:
+    """Return d/da and −j d/db of a current's phasors, from its sampled slope.
+
+    Rows k = 0 … n; columns l = 0 … n for a and 1 … n for b. Row 0 is of twice the mean, as in `spectrum`.
+    """
+    g = np.fft.rfft(wave, norm="forward")
+    stages = wave.shape[0]
+    row = np.empty((stages, 3 * n + 1), dtype=np.complex128)  # G_{−n} … G_{2n}; G_{−n} is the conjugate of G_n
+    row[:, n:] = g[:, :2 * n + 1]
+    np.conjugate(g[:, n:0:-1], out=row[:, :n])
+    step = row.itemsize
+    shape, along = (stages, n + 1, n + 1), row.strides[0]
+    toeplitz = np.ndarray(shape, row.dtype, row, n * step, (along, step, -step))  # G_{k−l}
+    hankel = np.ndarray(shape, row.dtype, row, n * step, (along, step, step))  # G_{k+l}
+    return toeplitz + hankel, toeplitz[:, :, 1:] - hankel[:, :, 1:]
+
+
+def newton(circuit: Circuit, start: Array, *, iterations: int = ITERATIONS) -> Outcome:
+    """Solve from a start, shape (S, 2N + 1) [V]; stages that end early no longer cost anything.
+
+    A step is halved until the merit falls, for those stages only where it does not. A stage whose
+    merit can't be lowered, or that uses up its iterations, comes back with ``converged`` False.
+    """
+    out = Outcome(start.copy(), np.full(start.shape[0], np.inf), np.zeros(start.shape[0], dtype=np.bool_),
+                  np.zeros(start.shape[0], dtype=np.int64))
+    rows = np.arange(start.shape[0])
+    point = evaluate(circuit, start)
+    for spent in range(iterations + 1):
+        solved = point.merit <= point.goal
+        stuck = ~np.isfinite(point.merit)
+        ended = solved | stuck if spent < iterations else np.ones_like(solved)
+        _record(out, rows, point, ended, spent)
+        out.converged[rows[solved]] = True
+        if ended.any():
+            if ended.all():
+                return out
+            kept = np.flatnonzero(~ended)
+            rows, circuit, point = rows[kept], circuit.take(kept), point.take(kept)
+        step = _step(circuit, point)
+        trial = evaluate(circuit, point.unknowns + step)
+        lost = _search(circuit, point, step, trial)
+        if lost.size:
+            _record(out, rows, point, lost, spent + 1)
+            kept = np.setdiff1d(np.arange(rows.size), lost)
+            if not kept.size:
+                return out
+            rows, circuit, trial = rows[kept], circuit.take(kept), trial.take(kept)
+        point = trial
+    return out
+
+
+def _record(out: Outcome, rows: NDArray[np.int64], point: Point, which: Any, spent: int) -> None:
+    out.unknowns[rows[which]] = point.unknowns[which]
+    out.merit[rows[which]] = point.merit[which]
+    out.iterations[rows[which]] = spent
+
+
+def _step(circuit: Circuit, point: Point) -> Array:
+    matrix = jacobian(circuit, point)
+    try:
+        return -np.linalg.solve(matrix, point.residual[:, :, np.newaxis])[:, :, 0]
+    except np.linalg.LinAlgError:  # of one stage among many; a step of NaN makes that one fall back alone
+        steps = np.full_like(point.residual, np.nan)
+        for row, one in enumerate(matrix):
+            if np.linalg.cond(one) < 1e15:
+                steps[row] = -np.linalg.solve(one, point.residual[row])
+        return steps
+
+
+def _search(circuit: Circuit, point: Point, step: Array, trial: Point) -> NDArray[np.int64]:
+    """Shorten steps that did not lower the merit, writing into ``trial``; return the rows that never did."""
+    worse = np.flatnonzero(~(trial.merit < point.merit))
+    fraction = 1.0
+    for _ in range(HALVINGS):
+        if not worse.size:
+            break
+        fraction /= 2
+        part = circuit if worse.size == step.shape[0] else circuit.take(worse)
+        again = evaluate(part, point.unknowns[worse] + fraction * step[worse])
+        better = again.merit < point.merit[worse]
+        trial.put(worse[better], again.take(better))
+        worse = worse[~better]
+    return worse

@@ -1,0 +1,133 @@
+"""Stages as arrays: what stands around the device, and the device under drive, a row for each stage.
+
+::
+
+    supply ── dc resistance ──┐            k = 0: the supply's voltage behind the choke's dc resistance
+                              ├── device
+    ladder with its load ─────┘            k = 1 … N: the ladder's impedance at k times the carrier
+
+Everything linear, the choke and the output capacitance included, comes from one walk of the stage's ladder
+over all orders. Rows of impedance are scaled by R0/(R0 + |Z_k|), R0 = |Z_1|: a measure like a wave's, which
+stays of the size of the supply voltage whether the ladder is a short or an open at some order.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from rfstage.devicelaw import Array, DrivenLaw, Law
+from rfstage.errors import ImpossibleError, OutOfRangeError
+from rfstage.ladder import Ladder
+from rfstage.stage import Stage
+
+SAMPLES_PER_ORDER = 8  # times the orders: the least number of samples in a cycle, then the next power of two
+SAMPLES_PER_ORDER_HARD = 32  # the same for a hard threshold corner, whose spectrum falls slowly
+NEARLY_DC = 1e-6  # of the carrier: where a ladder shows whether it conducts direct current
+
+
+@dataclass(frozen=True, slots=True)
+class Circuit:
+    """Stages of one order number N as arrays with a stage axis S in front, M samples a cycle.
+
+    ``supply`` [V] (S, 1); ``bias`` and ``amplitude`` of the drive [V] (S, 1); ``law`` the devices;
+    ``driven`` the same under drive; ``impedance`` scaled [ohm] and its ``scale`` [-] (S, N + 1), that of
+    dc halved since a mean counts once where a peak counts twice; ``omega`` k times the carrier [rad/s].
+    """
+
+    orders: int
+    samples: int
+    supply: Array
+    bias: Array
+    amplitude: Array
+    law: Law
+    driven: DrivenLaw
+    impedance: NDArray[np.complex128]
+    scale: Array
+    omega: Array
+
+    @classmethod
+    def of(cls, stages: Sequence[Stage], orders: int) -> Circuit:
+        """Build the arrays of stages that passed `check`."""
+        law = Law.of([stage.device for stage in stages])
+        hard = bool((law.softness == 0).any())
+        least = orders * (SAMPLES_PER_ORDER_HARD if hard else SAMPLES_PER_ORDER)
+        samples = 1 << (least - 1).bit_length()
+        impedance = np.array([_impedance(stage, orders) for stage in stages])
+        reference = np.abs(impedance[:, 1:2])
+        scale = reference / (reference + np.abs(impedance))
+        scaled = impedance * scale
+        scaled[:, 0] /= 2
+        supply, bias, amplitude, carrier = np.array(
+            [(s.supply.voltage, s.drive.bias, s.drive.amplitude, s.carrier) for s in stages]).T[:, :, np.newaxis]
+        return cls(orders, samples, supply, bias, amplitude, law,
+                   DrivenLaw.at(law, bias + amplitude * _cosine(samples)), scaled, scale,
+                   2 * math.pi * carrier * np.arange(orders + 1))
+
+    def take(self, rows: Any) -> Circuit:
+        """Return the chosen rows."""
+        return Circuit(self.orders, self.samples, self.supply[rows], self.bias[rows], self.amplitude[rows],
+                       self.law.take(rows), self.driven.take(rows), self.impedance[rows], self.scale[rows],
+                       self.omega[rows])
+
+    def softened(self, factor: float) -> Circuit:
+        """Return the same stages with knees and reverse junctions ``factor`` times as soft."""
+        return self._with_law(self.law.softened(factor))
+
+    def driven_at(self, fraction: float) -> Circuit:
+        """Return the same stages with a fraction of the drive amplitude; the bias stays."""
+        return replace(self, amplitude=self.amplitude * fraction)._with_law(self.law)
+
+    def _with_law(self, law: Law) -> Circuit:
+        control = self.bias + self.amplitude * _cosine(self.samples)
+        return replace(self, law=law, driven=DrivenLaw.at(law, control))
+
+
+def _cosine(samples: int) -> Array:
+    return np.cos(2 * math.pi / samples * np.arange(samples))
+
+
+def _impedance(stage: Stage, orders: int) -> NDArray[np.complex128]:
+    z = np.empty(orders + 1, dtype=np.complex128)
+    z[0] = stage.supply.choke_resistance
+    with np.errstate(divide="ignore", invalid="ignore"):
+        z[1:] = stage.ladder.impedance(stage.carrier * np.arange(1.0, orders + 1), stage.load)
+    usable = np.isfinite(z)
+    usable[1] &= z[1] != 0
+    if not usable.all():
+        worst = int(np.argmin(usable))
+        raise ImpossibleError(f"the ladder has no finite impedance at order {worst} of the carrier "
+                              "(is a lossless trap tuned exactly there? give its parts a Q)")
+    return z
+
+
+def check(stage: Stage) -> None:
+    """Raise unless a steady state can be asked of this stage.
+
+    Raises
+    ------
+    OutOfRangeError
+        If the carrier, supply or choke is not above 0, or its resistance or the drive amplitude is below 0.
+    ImpossibleError
+        If nothing keeps the supply's direct current out of the ladder.
+    """
+    supply, drive = stage.supply, stage.drive
+    for name, value, unit in (("carrier", stage.carrier, "Hz"), ("supply voltage", supply.voltage, "V"),
+                              ("choke", supply.choke, "H")):
+        if not (value > 0 and math.isfinite(value)):
+            raise OutOfRangeError(name, value, f"above 0 {unit}")
+    for name, value, unit in (("choke_resistance", supply.choke_resistance, "ohm"),
+                              ("drive amplitude", drive.amplitude, "V")):
+        if not (value >= 0 and math.isfinite(value)):
+            raise OutOfRangeError(name, value, f"0 {unit} or more")
+    if not math.isfinite(drive.bias):
+        raise OutOfRangeError("drive bias", drive.bias, "finite")
+    low = Ladder(stage.branches).impedance(np.array([NEARLY_DC * stage.carrier]), stage.load)[0]
+    if not -low.imag > abs(low.real):
+        raise ImpossibleError("the supply's direct current would flow through the ladder: put a blocking capacitor "
+                              "in series before the first coil to ground and before the load")

@@ -1,0 +1,122 @@
+"""From a cold start to the solution: damped Newton, then a softened knee, then drive steps.
+
+A device far in saturation has a flat current over the voltage, and Newton finds no direction there. With the
+knee a few times softer it does, and the solution follows as the knee hardens again. Each stage that
+needs this gets it by itself; the others of the batch do not notice.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from rfstage.devicelaw import Array
+from rfstage.steady.balance import Outcome, newton, spectrum
+from rfstage.steady.circuit import Circuit
+
+DIRECT, SOFTENED, STEPPED, FAILED = "direct", "softened knee", "drive steps", "failed"
+FIRST_FACTORS = (16.0, 64.0, 256.0, 1024.0)  # of softness, until one converges from the cold start
+HARDENING = 4.0  # by which the softness falls at each step, and the square root of it after a failure
+LEAST_RATIO = 1.02
+SWING_OF_START = 0.9  # of the supply: the most that the start's fundamental may have
+
+
+@dataclass(frozen=True, slots=True)
+class Solution:
+    """Unknowns (S, 2N + 1) [V], merit and iterations (S,), and by which way each stage was solved."""
+
+    unknowns: Array
+    merit: Array
+    iterations: NDArray[np.int64]
+    methods: tuple[str, ...]
+
+    def take(self, row: int) -> Solution:
+        """Return one row, still with its stage axis."""
+        part = slice(row, row + 1)
+        return Solution(self.unknowns[part], self.merit[part], self.iterations[part], self.methods[part])
+
+
+def solve(circuit: Circuit, start: Array | None = None) -> Solution:
+    """Solve all stages, from a start (S, 2N + 1) [V] or cold; a stage that resists has the method ``FAILED``."""
+    first = newton(circuit, cold_start(circuit) if start is None else start)
+    unknowns, merit, iterations = first.unknowns, first.merit, first.iterations
+    methods = [DIRECT] * merit.size
+    for row in np.flatnonzero(~first.converged):
+        found, methods[row], spent = _rescue(circuit.take([row]), tried_cold=start is None)
+        iterations[row] += spent
+        unknowns[row], merit[row] = found.unknowns[0], found.merit[0]
+    return Solution(unknowns, merit, iterations, tuple(methods))
+
+
+def cold_start(circuit: Circuit) -> Array:
+    """Return the first guess: the supply, and the fundamental of the unsaturated current, clipped."""
+    n = circuit.orders
+    guess = np.zeros((circuit.supply.shape[0], 2 * n + 1))
+    flat = circuit.driven.flat_current(np.broadcast_to(circuit.supply, circuit.driven.overdrive.shape))
+    swing = -(circuit.impedance[:, 1] / circuit.scale[:, 1]) * spectrum(flat, 1)[:, 1]
+    most = SWING_OF_START * circuit.supply[:, 0]
+    swing *= most / np.maximum(np.abs(swing), most)
+    guess[:, 1], guess[:, n + 1] = swing.real, swing.imag
+    return guess
+
+
+def _rescue(circuit: Circuit, *, tried_cold: bool) -> tuple[Outcome, str, int]:
+    """Solve one stage by the ways that always get there; returns outcome, method and iterations."""
+    spent = 0
+    cold = cold_start(circuit)
+    if not tried_cold:
+        out = newton(circuit, cold)
+        spent += int(out.iterations[0])
+        if out.converged[0]:
+            return out, DIRECT, spent
+    for first in FIRST_FACTORS:
+        out = newton(circuit.softened(first), cold)
+        spent += int(out.iterations[0])
+        if out.converged[0]:
+            out, more = _harden(circuit, out, first)
+            spent += more
+            break
+    if out.converged[0]:
+        return out, SOFTENED, spent
+    out, more = _step_drive(circuit, cold)
+    return out, STEPPED if out.converged[0] else FAILED, spent + more
+
+
+def _harden(circuit: Circuit, soft: Outcome, factor: float) -> tuple[Outcome, int]:
+    """Follow the solution from a softened knee to the real one."""
+    spent, ratio, reached = 0, HARDENING, soft
+    while True:
+        target = max(factor / ratio, 1.0)
+        out = newton(circuit.softened(target) if target > 1 else circuit, reached.unknowns)
+        spent += int(out.iterations[0])
+        if not out.converged[0]:
+            ratio = ratio**0.5
+            if ratio < LEAST_RATIO:
+                return out, spent
+            continue
+        if target == 1:
+            return out, spent
+        factor, reached = target, out
+
+
+def _step_drive(circuit: Circuit, cold: Array) -> tuple[Outcome, int]:
+    """Raise the drive from nothing, each start extrapolated from the two solutions before."""
+    spent, at, step = 0, 0.0, 0.25
+    known = [(-1.0, np.zeros_like(cold)), (0.0, np.zeros_like(cold))]
+    while True:
+        target = min(1.0, at + step)
+        (before, x_before), (last, x_last) = known
+        start = x_last + (x_last - x_before) * (target - last) / (last - before)
+        out = newton(circuit.driven_at(target), start)
+        spent += int(out.iterations[0])
+        if out.converged[0]:
+            known = [known[1], (target, out.unknowns)]
+            at, step = target, 1.5 * step
+            if target == 1.0:
+                return out, spent
+        else:
+            step /= 3
+            if step < 1e-4:
+                return out, spent

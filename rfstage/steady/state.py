@@ -1,0 +1,150 @@
+"""The steady state as it is handed out: meters, heat, stresses, harmonics, waveform, and how far to trust it."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from rfstage.stage import Stage
+
+ORDERS_DC = 1e-3  # relative change of the dc current below which more orders would not be seen on a meter
+ORDERS_POWER = 0.01  # dB, of the output power
+ORDERS_HARMONICS = 0.1  # dB, of the harmonics that count
+
+
+@dataclass(frozen=True, slots=True)
+class HarmonicLevel:
+    """One order: frequency [Hz], power in the load [W], level against the carrier [dBc].
+
+    The level is None where the device's current has no such harmonic, or where there is no carrier.
+    """
+
+    order: int
+    frequency: float
+    load_power: float
+    level: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class BranchStress:
+    """What one branch bears: loss [W], peak voltage across it [V], rms current through it [A].
+
+    All orders and dc together: a blocking capacitor's voltage has the supply in it, a choke's current the
+    supply current. The choke's loss is that of its dc resistance and of its RF loss.
+    """
+
+    name: str
+    loss: float
+    peak_voltage: float
+    rms_current: float
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Waveform:
+    """One cycle, from the drive's crest: phase [deg], electrode voltage [V], device current [A], shape (M,).
+
+    The current is that of the law; what flows into capacitances is not in it.
+    """
+
+    phase_deg: NDArray[np.float64]
+    voltage: NDArray[np.float64]
+    current: NDArray[np.float64]
+
+
+@dataclass(frozen=True, slots=True)
+class OrdersChange:
+    """What moved when the orders were last doubled.
+
+    ``dc_current`` relative [-], ``output_power_db`` [dB], and the largest move of a harmonic to the tenth above
+    −80 dBc, ``harmonics_db`` [dB].
+    """
+
+    dc_current: float
+    output_power_db: float
+    harmonics_db: float
+
+    @property
+    def settled(self) -> bool:
+        """Whether more orders would change nothing that matters: 1e-3, 0.01 dB and 0.1 dB."""
+        return (self.dc_current < ORDERS_DC and self.output_power_db < ORDERS_POWER
+                and self.harmonics_db < ORDERS_HARMONICS)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class SteadyState:
+    """The steady state of one stage; SI units, phasors are peak values.
+
+    Attributes
+    ----------
+    stage : Stage
+        What was solved.
+    device_voltage, device_current : ndarray, shape (orders_solved + 1,)
+        Phasors of the device node's voltage [V] and of the device's current [A]; entry 0 is the mean.
+        The drive is the phase reference.
+    dc_current, dc_power : float
+        From the supply [A], [W].
+    output_power : float
+        The carrier's power in the load [W].
+    efficiency : float or None
+        Output power over dc power; None where no dc flows.
+    dissipation : float
+        The device's heat [W].
+    charge_power : float
+        Power of the lossless junction charge [W]: zero but for the sampling, so a free check on it.
+    branches : tuple of BranchStress
+        Every branch from device to load, output capacitance and choke among them.
+    choke_loss : float
+        Direct current and RF [W].
+    branch_losses : dict
+        Loss of every branch but these two, by name [W].
+    minimum_voltage, peak_voltage, peak_current : float
+        Extremes over the cycle of electrode voltage [V] and device current [A].
+    conduction_angle_deg : float
+        Part of the cycle in which the effective drive exceeds the threshold.
+    harmonics : tuple of HarmonicLevel
+        From order 2, to the tenth at least.
+    waveform : Waveform
+        One cycle.
+    orders_solved : int
+        Orders in the balance.
+    balance_error : float
+        Supply power that is not found again, over supply power [-]. It proves the bookkeeping, not the orders.
+    residual : float
+        Of the balance of harmonics, over the supply voltage [-].
+    change_from_half_the_orders : OrdersChange or None
+        None where half the orders were not solved.
+    iterations, method : int, str
+        What it took at the last order number.
+    """
+
+    stage: Stage = field(repr=False)
+    device_voltage: NDArray[np.complex128] = field(repr=False)
+    device_current: NDArray[np.complex128] = field(repr=False)
+    dc_current: float
+    dc_power: float
+    output_power: float
+    efficiency: float | None
+    dissipation: float
+    charge_power: float
+    branches: tuple[BranchStress, ...]
+    choke_loss: float
+    branch_losses: dict[str, float]
+    minimum_voltage: float
+    peak_voltage: float
+    peak_current: float
+    conduction_angle_deg: float
+    harmonics: tuple[HarmonicLevel, ...]
+    waveform: Waveform = field(repr=False)
+    orders_solved: int
+    balance_error: float
+    residual: float
+    change_from_half_the_orders: OrdersChange | None
+    iterations: int
+    method: str
+
+    @property
+    def has_output(self) -> bool:
+        """Whether any carrier reaches the load: a drive that stays below the threshold makes none."""
+        return self.output_power > 0

@@ -1,0 +1,40 @@
+"""What the tests share: where the project is, and the terminal program as a person runs it."""
+
+from __future__ import annotations
+
+import os
+import subprocess
+import sys
+from pathlib import Path
+
+import pytest
+
+PROJECT = Path(__file__).resolve().parent.parent
+
+
+@pytest.fixture
+def examples() -> Path:
+    return PROJECT / "examples"
+
+
+@pytest.fixture
+def run(tmp_path):
+    """Run the program in a fresh folder and return the finished process."""
+
+    def runner(*words: str, env: dict[str, str] | None = None, width: int | None = None):
+        settings = {**os.environ, "PYTHONPATH": str(PROJECT), "PYTHONIOENCODING": "utf-8", **(env or {})}
+        settings.pop("NO_COLOR", None)
+        settings.pop("COLUMNS", None)
+        if width:
+            settings["COLUMNS"] = str(width)
+        return subprocess.run(
+            [sys.executable, "-W", "error", "-m", "rfstage", *words],
+            cwd=tmp_path,
+            env=settings,
+            text=True,
+            encoding="utf-8",
+            capture_output=True,
+            check=False,
+        )
+
+    return runner

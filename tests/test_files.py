@@ -1,0 +1,342 @@
+"""Job files, stage files, load files, Touchstone exports, and the way files are written."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+import pytest
+import skrf
+from hypothesis import given, settings
+from hypothesis import strategies as st
+
+from rfstage import Job, Ladder, RfstageError, design, load_job, load_stage
+from rfstage.errors import FileError, InputError
+from rfstage.files.stage import stage_text
+from rfstage.files.touchstone import grid, read_load, touchstone_text
+from rfstage.files.write import write_files
+from rfstage.harmonics import decibels, load_powers
+from rfstage.jobfields import JOB_FIELDS
+from rfstage.load import MeasuredLoad
+
+JOB = Job(carrier=7.1e6, power=10.0, conduction_angle=120.0, supply=13.8, output_capacitance=60e-12)
+
+
+def written(tmp_path, text, name="job.toml"):
+    path = tmp_path / name
+    path.write_text(text, encoding="utf-8")
+    return path
+
+
+def test_a_job_file_gives_the_job(tmp_path):
+    path = written(
+        tmp_path,
+        """
+        [stage]
+        carrier = "7.1 MHz"
+        power = 10
+        conduction_angle = "120 deg"
+        supply = "13V8"
+        [tank]
+        coil_q = "lossless"
+        [load]
+        impedance = "45-j5 ohm"
+    """.replace("13V8", "13.8 V"),
+    )
+    job = load_job(path)
+    assert (job.carrier, job.power, job.supply, job.load, job.coil_q) == (7.1e6, 10, 13.8, 45 - 5j, math.inf)
+
+
+def test_every_error_of_a_job_file_comes_with_its_key_in_one_go(tmp_path):
+    path = written(
+        tmp_path,
+        """
+        [stage]
+        carier = "7.1 MHz"
+        power = "-3 W"
+        conduction_angle = true
+        supply = "13,8 V"
+        minimum_voltage = "2 A"
+        [tank]
+        network = "star"
+        coil_q = 0.2
+        [limits]
+        rule = "x"
+    """,
+    )
+    with pytest.raises(InputError) as caught:
+        load_job(path)
+    text = str(caught.value)
+    for key in (
+        "stage.carier: no such key (did you mean 'carrier'?)",
+        "stage.power: got -3 W; allowed above 0 W",
+        "stage.conduction_angle: got True",
+        "stage.supply: read '13,8 V'",
+        "stage.minimum_voltage: read '2 A'",
+        "tank.network: got 'star'",
+        "tank.coil_q: got 0.2",
+        "limits: no such table (did you mean 'limit'?)",
+        "stage.carrier: missing",
+    ):
+        assert key in text
+    assert len(caught.value.problems) == 9
+    assert all(str(path) in line for line in caught.value.problems)
+
+
+def test_an_unquoted_quantity_is_named_with_its_line(tmp_path):
+    path = written(tmp_path, "[stage]\ncarrier = 7.1MHz\n")
+    with pytest.raises(InputError, match=r'line 2.*needs quotes: carrier = "7.1MHz"'):
+        load_job(path)
+
+
+def test_a_job_that_is_not_text_is_refused(tmp_path):
+    path = tmp_path / "job.toml"
+    path.write_bytes(b"\xff\xfe\x00")
+    with pytest.raises(FileError, match="not a text file"):
+        load_job(path)
+    with pytest.raises(FileError, match="can't be read"):
+        load_job(tmp_path)
+
+
+def test_every_job_key_is_an_attribute_of_the_job():
+    assert {field.name for field in JOB_FIELDS} == set(Job.__dataclass_fields__)
+
+
+@pytest.mark.parametrize("name", ["lantern", "gallery", "tower"])
+def test_a_saved_stage_reads_back_with_the_same_harmonics(name, examples, tmp_path):
+    made = design(load_job(examples / f"{name}.toml"))
+    path = written(tmp_path, stage_text(made.stage, tmp_path), "stage.toml")
+    stage = load_stage(path)
+    frequencies = made.job.carrier * np.arange(1, 11)
+    currents = made.coefficients[1:11] * made.point.peak_current
+    levels = decibels(load_powers(stage.ladder, stage.load, frequencies, currents))
+    assert levels[1:] == pytest.approx([h.level for h in made.harmonics], abs=1e-9)
+    assert stage.device == made.stage.device
+    assert stage.drive == made.stage.drive
+    assert stage.supply == made.stage.supply
+    assert stage.asked == made.stage.asked
+    assert stage_text(stage, tmp_path) == path.read_text(encoding="utf-8")
+
+
+CONTRACT_STAGE = """
+format = "rfstage.stage"
+version = 1
+carrier = "7.1 MHz"
+[device]
+family = "fet"
+transfer_factor = 2.0
+exponent = 1.0
+threshold = "3 V"
+threshold_softness = "40 mV"
+knee_voltage = "70 mV"
+knee_resistance = "0.1 ohm"
+amplification_factor = 20
+output_capacitance = "150 pF"
+junction_capacitance = { at_zero = "465 pF", potential = "0.8 V", grading = 0.5 }
+reverse_conduction = { conductance = 1.95, threshold = "0.7 V", softness = "30 mV" }
+max_voltage = "100 V"
+[drive]
+bias = "1 V"
+amplitude = "4 V"
+[supply]
+voltage = "13.8 V"
+choke = "0.75 uH"
+choke_resistance = "20 mohm"
+choke_q = 100
+[[branch]]
+name = "C1"
+place = "shunt"
+kind = "capacitor"
+value = "1.2 nF"
+q = 800
+lead_inductance = "3 nH"
+trim = ["0.9 nF", "1.5 nF"]
+tolerance = "5 %"
+[[branch]]
+name = "L1"
+place = "series"
+kind = "coil"
+value = "1.2 uH"
+series_resistance = "0.2 ohm"
+self_capacitance = "2 pF"
+winding = { turns = 12, diameter = "25 mm", length = "30 mm", wire = "1.5 mm" }
+[load]
+resistance = "50 ohm"
+inductance = "0.1 uH"
+"""
+
+
+def test_a_hand_written_stage_file_is_read_key_by_key(tmp_path):
+    stage = load_stage(written(tmp_path, CONTRACT_STAGE))
+    assert stage.carrier == 7.1e6
+    assert stage.device.amplification_factor == 20
+    assert stage.device.junction_capacitance is not None
+    assert stage.device.junction_capacitance.at_zero == 465e-12
+    assert stage.device.reverse_conduction is not None
+    assert stage.device.reverse_conduction.conductance == 1.95
+    assert stage.supply.choke_q == 100
+    assert stage.branches[0].lead_inductance == 3e-9
+    assert stage.branches[1].series_resistance == 0.2
+    assert stage.part_data["C1"].trim == (0.9e-9, 1.5e-9)
+    assert stage.part_data["C1"].tolerance == 5
+    assert dict(stage.part_data["L1"].winding or ())["turns"] == 12
+    assert complex(stage.load.impedance(14.2e6)) == pytest.approx(50 + 2j * math.pi * 14.2e6 * 0.1e-6)
+    again = load_stage(written(tmp_path, stage_text(stage, tmp_path), "again.toml"))
+    assert again.branches == stage.branches
+    assert again.part_data == stage.part_data
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "said"),
+    [
+        ("q = 800", 'q = 800\nseries_resistance = "1 ohm"', "give one of them"),
+        ('name = "L1"', 'name = "C1"', "is taken"),
+        ('value = "1.2 nF"', 'value = "1.2 nH"', "wanted a capacitance"),
+        ('value = "1.2 nF"', 'value = "0 F"', "above 0 F"),
+        ('knee_voltage = "70 mV"', 'knee_voltage = "0 V"', "knee_voltage: got 0 V; allowed above 0 V"),
+        ("transfer_factor = 2.0", "transfer_factor = 0", "transfer_factor: got 0; allowed above 0"),
+        ("exponent = 1.0", "exponent = 3.5", "exponent: got 3.5; allowed 1 to 3"),
+        ('place = "shunt"', 'place = "shant"', "did you mean 'shunt'?"),
+        ('trim = ["0.9 nF", "1.5 nF"]', 'trim = ["1.9 nF", "1.5 nF"]', "least must be below"),
+        ('carrier = "7.1 MHz"', "", "carrier: missing"),
+        ('inductance = "0.1 uH"', 'inductance = "0.1 uH"\nimpedance = 50', "wanted one of"),
+        ("version = 1", "version = 7", "version: got 7"),
+    ],
+)
+def test_a_wrong_stage_file_says_which_key(tmp_path, old, new, said):
+    assert old in CONTRACT_STAGE
+    with pytest.raises(RfstageError) as caught:
+        load_stage(written(tmp_path, CONTRACT_STAGE.replace(old, new, 1)))
+    assert said in str(caught.value)
+
+
+def test_the_touchstone_export_reads_back_as_the_ladder(tmp_path):
+    made = design(JOB)
+    path = written(tmp_path, touchstone_text(made), "stage_7.1MHz.s2p")
+    network = skrf.Network()
+    network.read_touchstone(str(path))
+    carrier = JOB.carrier
+    assert set(carrier * np.arange(1, 11)) <= set(network.f)
+    ladder = Ladder([p.branch for p in made.tank.parts if p.branch.origin != "device"])
+    # close port 2 with the load, by scikit-rf's own impedance matrix
+    load = made.settings.load.impedance(network.f)
+    z = network.z
+    seen = z[:, 0, 0] - z[:, 0, 1] * z[:, 1, 0] / (z[:, 1, 1] + load)
+    transfer = z[:, 1, 0] * load / (z[:, 1, 1] + load)
+    want_seen, want_transfer = ladder.transfer(network.f, load)
+    # identities of the same numbers: 1e-12 of the largest term that is subtracted
+    assert np.all(np.abs(seen - want_seen) <= 1e-12 * np.abs(z[:, 0, 0]).max())
+    assert np.all(np.abs(transfer - want_transfer) <= 1e-12 * np.abs(z).max())
+
+
+def test_the_touchstone_export_says_what_it_leaves_out():
+    text = touchstone_text(design(JOB))
+    comments = [line for line in text.splitlines() if line.startswith("! rfstage:")]
+    assert any("output capacitance is left out" in line for line in comments)
+    assert any("Cout" in line and "left out" in line for line in comments)
+    assert any("7.1 MHz" in line and "10 W" in line for line in comments)
+    assert text.isascii()
+
+
+@given(carrier=st.floats(1e3, 3e10), top=st.integers(2, 40))
+def test_every_harmonic_lies_exactly_on_the_export_grid(carrier, top):
+    frequencies = grid(carrier, top)
+    assert np.all(np.diff(frequencies) > 0)
+    assert set(carrier * np.arange(1, max(10, top) + 1)) <= set(frequencies)
+
+
+ONE_PORT = "! a load\n# MHz S RI R 50\n6 0.1 0.2\n7.1 0.0 -0.1\n9 0.3 0.1\n"
+
+
+@pytest.mark.parametrize(
+    "text",
+    [
+        ONE_PORT,
+        "# RI S MHz R 50\n6 0.1 0.2\n7.1 0.0 -0.1\n9 0.3 0.1\n",
+        "  # mhz s ri r 50 ! note\n\n 6 0.1 0.2 ! here\n 7.1 0 -0.1\n9 0.3 0.1\n",
+        "# Hz S RI R 50\n6e6 0.1 0.2\n7.1e6 0.0 -0.1\n9e6 0.3 0.1\n",
+    ],
+)
+def test_a_one_port_is_read_in_its_legal_forms(tmp_path, text):
+    load = read_load(written(tmp_path, text, "a.s1p"))
+    reflection = -0.1j
+    assert complex(load.impedance(7.1e6)) == pytest.approx(50 * (1 + reflection) / (1 - reflection), rel=1e-12)
+
+
+@pytest.mark.parametrize(
+    ("text", "said"),
+    [
+        ("", "no option line"),
+        ("hello\n", "line 1: 'hello' is not a number"),
+        ("6 0.1 0.2\n", "no option line"),
+        ("# MHz S RI R 50\n", "holds 0 numbers"),
+        ("# MHz S RI R 50\n6 0.1\n", "row is cut"),
+        ("# MHz S RI R 0\n6 0.1 0.1\n", "reference resistance"),
+        ("# MHz H RI R 50\n6 0.1 0.1\n", "line 1: 'h' is not known"),
+        ("# MHz S RI R 50\n6 nan 0.1\n", "line 2: 'nan' is not a finite number"),
+        ("# MHz S RI R 50\n6 0,1 0.1\n", "decimal point"),
+        ("# MHz S RI R 50\n7 0.1 0.1\n6 0.1 0.1\n", "must be above 0 and rise"),
+        ("# MHz S RI R 50\n6 1.2 0.1\n", "a passive load has more than 0"),
+    ],
+)
+def test_a_bad_one_port_is_one_clear_line(tmp_path, text, said):
+    path = written(tmp_path, text, "bad.s1p")
+    with pytest.raises(RfstageError) as caught:
+        read_load(path)
+    assert said in str(caught.value)
+    assert "bad.s1p" in str(caught.value)
+
+
+@given(
+    data=st.one_of(
+        st.binary(max_size=80),
+        st.text(alphabet="0123456789.,-+eE#! \nMHzSRIabn[]\t", max_size=80).map(
+            lambda words: ("# MHz S RI R 50\n" + words).encode()
+        ),
+    )
+)
+@settings(deadline=None, max_examples=200)
+def test_any_bytes_give_a_load_or_a_clear_error(tmp_path_factory, data):
+    path = tmp_path_factory.mktemp("fuzz") / "x.s1p"
+    path.write_bytes(data)
+    try:
+        load = read_load(path)
+    except RfstageError as error:
+        assert "x.s1p" in str(error)
+    else:
+        assert isinstance(load, MeasuredLoad)
+        assert np.all(np.isfinite(load.impedances))
+
+
+def test_a_pickle_named_as_a_load_is_never_unpickled(tmp_path):
+    import pickle
+
+    class Trap:
+        def __reduce__(self):
+            return (open, (str(tmp_path / "sprung"), "w"))
+
+    path = tmp_path / "trap.s1p"
+    path.write_bytes(pickle.dumps(Trap()))
+    with pytest.raises(FileError):
+        read_load(path)
+    assert not (tmp_path / "sprung").exists()
+
+
+def test_a_load_that_does_not_reach_the_carrier_says_its_reach(tmp_path):
+    load = read_load(written(tmp_path, ONE_PORT, "a.s1p"))
+    with pytest.raises(InputError, match=r"from 6 MHz to 9 MHz.*14 MHz"):
+        design(Job(carrier=14e6, power=10.0, conduction_angle=120.0, supply=13.8, load=load))
+
+
+def test_a_measured_load_names_the_harmonics_it_was_continued_at(examples):
+    made = design(load_job(examples / "gallery.toml"))
+    assert made.continued == (5, 6, 7, 8, 9, 10)
+    assert any("5, 6, 7, 8, 9, 10" in caution.text for caution in made.cautions if caution.topic == "load file")
+
+
+def test_nothing_is_written_when_one_of_several_files_can_not_be(tmp_path):
+    (tmp_path / "old").write_text("kept", encoding="utf-8")
+    with pytest.raises(FileError, match="exists"):
+        write_files([(tmp_path / "new", "a"), (tmp_path / "old", "b")], overwrite=False)
+    assert sorted(p.name for p in tmp_path.iterdir()) == ["old"]
+    assert (tmp_path / "old").read_text(encoding="utf-8") == "kept"
