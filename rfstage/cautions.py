@@ -11,6 +11,8 @@ DC_SHOCK = 60.0  # V: above it direct current is treated as dangerous to touch (
 RF_BURN = 30.0  # V peak: RF above about this burns skin on contact (common practice, no source)
 HIGH_CURRENT = 10.0  # A: a low-voltage supply that gives this heats rings and tools (common practice, no source)
 DIP_CAUTION, DIP_STRONG = 0.03, 0.10
+FAR_ABOVE_SUPPLY = 3.0  # times the supply
+POWER_MISSED = 0.01  # of the asked power: below it a meter shows no difference
 LOW_RESISTANCE = 4.0  # ohm
 LEAD = 5e-9  # H, of an input capacitor; its reactance must stay ten times below the capacitor's
 
@@ -108,6 +110,61 @@ def about_dip(dip: float) -> list[Caution]:
             ),
         )
     ]
+
+
+def about_settled(
+    *,
+    family: str,
+    supply: float,
+    peak_voltage: float,
+    rating: float | None,
+    minimum_voltage: float,
+    orders_settled: bool,
+    asked_power: float,
+    output_power: float,
+) -> list[Caution]:
+    """Return what a steady state (V, W) says of the stage; a peak beyond what the device stands comes first."""
+    found = []
+    if rating is not None and peak_voltage > rating:
+        found.append(
+            Caution(
+                "peak voltage",
+                f"the settled peak of {show(peak_voltage, 'V')} is beyond the rating of {show(rating, 'V')}: the "
+                "settled figures are not those of a living device.",
+            )
+        )
+    elif peak_voltage > FAR_ABOVE_SUPPLY * supply:
+        found.append(
+            Caution(
+                "peak voltage",
+                f"the settled peak of {show(peak_voltage, 'V')} is more than {FAR_ABOVE_SUPPLY:g} times the supply: "
+                "few devices stand that.",
+            )
+        )
+    if abs(output_power / asked_power - 1) > POWER_MISSED:
+        found.append(
+            Caution(
+                "settled power",
+                f"in steady state this stage gives {show(output_power, 'W')} where {show(asked_power, 'W')} is asked.",
+            )
+        )
+    if minimum_voltage < 0 and family == "tube":
+        found.append(
+            Caution(
+                "negative anode",
+                f"the settled anode voltage falls to {show(minimum_voltage, 'V')}: the law has no current there, "
+                "the tube's grid and screen take it.",
+            )
+        )
+    if not orders_settled:
+        found.append(
+            Caution(
+                "harmonic orders",
+                "even 256 orders do not settle the figures to the last digit shown; the network leaves the device's "
+                "harmonics nowhere to go.",
+            )
+        )
+    return found
 
 
 def about_low_resistance(resistance: float, input_capacitance: float | None, carrier: float) -> list[Caution]:

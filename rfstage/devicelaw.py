@@ -74,8 +74,9 @@ class Law:
                 1 / d.amplification_factor if d.amplification_factor is not None else 0.0, d.family != "fet",
                 *((diode.conductance, diode.threshold, diode.softness) if diode else (0.0, 0.0, 0.0)),
                 *((junction.at_zero, junction.potential, junction.grading) if junction else (0.0, 1.0, 0.0))))
-        columns = np.array(rows, dtype=np.float64).T[:, :, np.newaxis]
-        return cls(*columns[:7], columns[7] != 0, *columns[8:])
+        columns: list[Any] = list(np.array(rows, dtype=np.float64).T[:, :, np.newaxis])
+        columns[_LAW_FIELDS.index("one_way")] = columns[_LAW_FIELDS.index("one_way")] != 0
+        return cls(*columns)
 
     def take(self, rows: Any) -> Law:
         """Return the law of the chosen rows."""

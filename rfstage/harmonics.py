@@ -7,7 +7,7 @@ matched source resistance stands in parallel with it (with one, every level woul
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -27,8 +27,9 @@ _PHASES = 720
 class Harmonic:
     """One order: frequency [Hz], peak device current [A], power in the load [W], levels [dBc].
 
-    ``level`` is in the given load, ``line_level`` in the resistive line load; None where the ideal
-    pulse has no such harmonic. ``limit`` [dBc] and ``margin`` [dB] are None where no figure applies.
+    ``level`` is in the given load, from the textbook pulse; None where that has no such harmonic.
+    ``settled_level`` is the same in steady state, None where that was not asked. ``line_level`` is in the
+    resistive line load, the worse of both. ``limit`` [dBc] and ``margin`` [dB] are None where no figure applies.
     """
 
     order: int
@@ -36,6 +37,7 @@ class Harmonic:
     device_current: float
     load_power: float
     level: float | None
+    settled_level: float | None
     line_level: float | None
     limit: float | None
     margin: float | None
@@ -106,12 +108,29 @@ def harmonics(
                 device_current=float(currents[k]),
                 load_power=float(powers[k]),
                 level=float(levels[k]) if there else None,
+                settled_level=None,
                 line_level=float(line_levels[k]) if there else None,
                 limit=None if needed is None else -needed,
                 margin=margin,
                 strays_decide=bool(abs(moved[k]) > STRAY_DECIDES),
             )
         )
+    return tuple(found)
+
+
+def with_settled_levels(
+    textbook: Sequence[Harmonic], *, settled: Mapping[int, float | None], in_line: Mapping[int, float | None]
+) -> tuple[Harmonic, ...]:
+    """Return the harmonics with settled levels [dBc] by order, and the worse of both in the line.
+
+    ``settled`` holds the levels in the given load, ``in_line`` those in the resistive line load.
+    """
+    found = []
+    for h in textbook:
+        known = [level for level in (h.line_level, in_line.get(h.order)) if level is not None]
+        worse = max(known) if known else None
+        margin = None if h.limit is None or worse is None else h.limit - worse
+        found.append(replace(h, settled_level=settled.get(h.order), line_level=worse, margin=margin))
     return tuple(found)
 
 

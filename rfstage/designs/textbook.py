@@ -22,7 +22,7 @@ from rfstage.matching.networks import (
     tank_efficiency,
 )
 from rfstage.matching.pi import least_loaded_q, pi_network
-from rfstage.operating import OperatingPoint, operating_point
+from rfstage.operating import OperatingPoint, operating_point, operating_point_at
 from rfstage.stage import BLOCKING, Supply, feed
 
 SMALL_RESISTANCE = 500.0  # ohm: up to here the choke is sized against it, above against the input capacitor
@@ -100,11 +100,26 @@ def default_loaded_q(settings: Settings, resistance: float) -> float:
 
 
 def point_for(settings: Settings, coefficients: NDArray[np.float64], efficiency: float) -> OperatingPoint:
-    """Return the operating point for a tank efficiency [-]."""
-    return operating_point(
-        supply=settings.job.supply, minimum_voltage=settings.minimum_voltage, output_power=settings.job.power,
-        dc_coefficient=float(coefficients[0]), fundamental_coefficient=float(coefficients[1]),
-        tank_efficiency=efficiency, choke_resistance=settings.choke_resistance)
+    """Return the operating point that gives the asked power through a tank of this efficiency [-]."""
+    return operating_point(output_power=settings.job.power, tank_efficiency=efficiency, **_given(settings, coefficients))
+
+
+def circuit_at(settings: Settings, coefficients: NDArray[np.float64],
+               resistance: float) -> tuple[Circuit, OperatingPoint]:
+    """Return circuit and operating point of a load resistance [ohm], whatever power it gives."""
+    circuit = circuit_for(settings, resistance)
+    return circuit, operating_point_at(resistance, tank_efficiency=_efficiency(settings, circuit),
+                                       **_given(settings, coefficients))
+
+
+def _given(settings: Settings, coefficients: NDArray[np.float64]) -> dict[str, float]:
+    return {"supply": settings.job.supply, "minimum_voltage": settings.minimum_voltage,
+            "dc_coefficient": float(coefficients[0]), "fundamental_coefficient": float(coefficients[1]),
+            "choke_resistance": settings.choke_resistance}
+
+
+def _efficiency(settings: Settings, circuit: Circuit) -> float:
+    return tank_efficiency((*circuit.feed, *circuit.tank), settings.load_impedance, settings.job.carrier)
 
 
 def _efficiency_at_first_sight(settings: Settings) -> float:
@@ -128,8 +143,7 @@ def by_the_book(settings: Settings, coefficients: NDArray[np.float64]) -> tuple[
     """
     def next_for(resistance: float, near: tuple[Branch, ...]) -> tuple[Circuit, OperatingPoint]:
         circuit = circuit_for(settings, resistance, near)
-        efficiency = tank_efficiency((*circuit.feed, *circuit.tank), settings.load_impedance, settings.job.carrier)
-        return circuit, point_for(settings, coefficients, efficiency)
+        return circuit, point_for(settings, coefficients, _efficiency(settings, circuit))
 
     resistance = point_for(settings, coefficients, _efficiency_at_first_sight(settings)).load_resistance
     before: tuple[float, float] | None = None

@@ -31,7 +31,7 @@ from rfstage.steady.circuit import Circuit
 
 TOLERANCE = 1e-11  # of the supply voltage, or of the current's response where that is less
 ITERATIONS = 25  # past these, softening the knee is the shorter way
-HALVINGS = 10  # of one step
+HALVINGS = 4  # of one step: where more are needed, the knee is in the way
 
 
 @dataclass(frozen=True, slots=True)
@@ -105,12 +105,11 @@ def evaluate(circuit: Circuit, unknowns: Array) -> Point:
     residual = np.empty_like(unknowns)
     residual[:, :n + 1] = response.real
     residual[:, n + 1:] = response.imag[:, 1:]
-    size = np.sqrt(np.einsum("sk,sk->s", residual, residual))
-    residual[:, :n + 1] += circuit.scale * unknowns[:, :n + 1]
-    residual[:, n + 1:] += circuit.scale[:, 1:] * unknowns[:, n + 1:]
     supply = circuit.supply[:, 0]
-    merit = np.sqrt(np.einsum("sk,sk->s", residual, residual)) / supply
-    return Point(unknowns, residual, merit, TOLERANCE * np.minimum(1, size / supply), conductance, capacitance)
+    goal = TOLERANCE * np.minimum(1, np.sqrt(np.vecdot(residual, residual)) / supply)
+    residual += circuit.scale * unknowns
+    merit = np.sqrt(np.vecdot(residual, residual)) / supply
+    return Point(unknowns, residual, merit, goal, conductance, capacitance)
 
 
 def jacobian(circuit: Circuit, point: Point) -> Array:
@@ -131,9 +130,7 @@ def jacobian(circuit: Circuit, point: Point) -> Array:
     j[:, n + 1:, :n + 1] = over_a.imag[:, 1:]
     np.negative(over_b.imag, out=j[:, :n + 1, n + 1:])
     j[:, n + 1:, n + 1:] = over_b.real[:, 1:]
-    diagonal = np.einsum("sii->si", j)
-    diagonal[:, :n + 1] += circuit.scale
-    diagonal[:, n + 1:] += circuit.scale[:, 1:]
+    j.reshape(z.shape[0], -1)[:, ::2 * n + 2] += circuit.scale  # the diagonals
     return j
 
 
@@ -196,14 +193,14 @@ def _record(out: Outcome, rows: NDArray[np.int64], point: Point, which: Any, spe
 
 def _step(circuit: Circuit, point: Point) -> Array:
     matrix = jacobian(circuit, point)
+    steps = np.full_like(point.residual, np.nan)
     try:
-        return -np.linalg.solve(matrix, point.residual[:, :, np.newaxis])[:, :, 0]
+        np.negative(np.linalg.solve(matrix, point.residual[:, :, np.newaxis])[:, :, 0], out=steps)
     except np.linalg.LinAlgError:  # of one stage among many; a step of NaN makes that one fall back alone
-        steps = np.full_like(point.residual, np.nan)
         for row, one in enumerate(matrix):
             if np.linalg.cond(one) < 1e15:
                 steps[row] = -np.linalg.solve(one, point.residual[row])
-        return steps
+    return steps
 
 
 def _search(circuit: Circuit, point: Point, step: Array, trial: Point) -> NDArray[np.int64]:

@@ -25,6 +25,7 @@ from rfstage.devicelaw import Array, DrivenLaw, Law
 from rfstage.errors import ImpossibleError, OutOfRangeError
 from rfstage.ladder import Ladder
 from rfstage.stage import Stage
+from rfstage.steady.network import Network
 
 SAMPLES_PER_ORDER = 8  # times the orders: the least number of samples in a cycle, then the next power of two
 SAMPLES_PER_ORDER_HARD = 32  # the same for a hard threshold corner, whose spectrum falls slowly
@@ -36,8 +37,9 @@ class Circuit:
     """Stages of one order number N as arrays with a stage axis S in front, M samples a cycle.
 
     ``supply`` [V] (S, 1); ``bias`` and ``amplitude`` of the drive [V] (S, 1); ``law`` the devices;
-    ``driven`` the same under drive; ``impedance`` scaled [ohm] and its ``scale`` [-] (S, N + 1), that of
-    dc halved since a mean counts once where a peak counts twice; ``omega`` k times the carrier [rad/s].
+    ``driven`` the same under drive; ``impedance`` scaled [ohm] (S, N + 1), that of dc halved since a mean
+    counts once where a peak counts twice; ``scale`` of each equation [-] (S, 2N + 1); ``resistance`` |Z_1|
+    [ohm] (S,); ``omega`` k times the carrier [rad/s] (S, N + 1).
     """
 
     orders: int
@@ -49,31 +51,34 @@ class Circuit:
     driven: DrivenLaw
     impedance: NDArray[np.complex128]
     scale: Array
+    resistance: Array
     omega: Array
 
     @classmethod
-    def of(cls, stages: Sequence[Stage], orders: int) -> Circuit:
-        """Build the arrays of stages that passed `check`."""
+    def of(cls, stages: Sequence[Stage], ladders: Sequence[Network], orders: int) -> Circuit:
+        """Build the arrays of stages that passed `check`, from the first orders of their ladders, in order."""
         law = Law.of([stage.device for stage in stages])
         hard = bool((law.softness == 0).any())
         least = orders * (SAMPLES_PER_ORDER_HARD if hard else SAMPLES_PER_ORDER)
         samples = 1 << (least - 1).bit_length()
-        impedance = np.array([_impedance(stage, orders) for stage in stages])
-        reference = np.abs(impedance[:, 1:2])
-        scale = reference / (reference + np.abs(impedance))
+        impedance = np.empty((len(stages), orders + 1), dtype=np.complex128)
+        impedance[:, 0] = [stage.supply.choke_resistance for stage in stages]
+        np.concatenate([ladder.impedance[:, :orders] for ladder in ladders], out=impedance[:, 1:])
+        size = np.abs(impedance)
+        scale = size[:, 1:2] / (size[:, 1:2] + size)
         scaled = impedance * scale
         scaled[:, 0] /= 2
         supply, bias, amplitude, carrier = np.array(
             [(s.supply.voltage, s.drive.bias, s.drive.amplitude, s.carrier) for s in stages]).T[:, :, np.newaxis]
         return cls(orders, samples, supply, bias, amplitude, law,
-                   DrivenLaw.at(law, bias + amplitude * _cosine(samples)), scaled, scale,
-                   2 * math.pi * carrier * np.arange(orders + 1))
+                   DrivenLaw.at(law, bias + amplitude * _cosine(samples)), scaled,
+                   np.concatenate((scale, scale[:, 1:]), axis=1), size[:, 1], 2 * math.pi * carrier * np.arange(orders + 1))
 
     def take(self, rows: Any) -> Circuit:
         """Return the chosen rows."""
         return Circuit(self.orders, self.samples, self.supply[rows], self.bias[rows], self.amplitude[rows],
                        self.law.take(rows), self.driven.take(rows), self.impedance[rows], self.scale[rows],
-                       self.omega[rows])
+                       self.resistance[rows], self.omega[rows])
 
     def softened(self, factor: float) -> Circuit:
         """Return the same stages with knees and reverse junctions ``factor`` times as soft."""
@@ -89,21 +94,8 @@ class Circuit:
 
 
 def _cosine(samples: int) -> Array:
-    return np.cos(2 * math.pi / samples * np.arange(samples))
-
-
-def _impedance(stage: Stage, orders: int) -> NDArray[np.complex128]:
-    z = np.empty(orders + 1, dtype=np.complex128)
-    z[0] = stage.supply.choke_resistance
-    with np.errstate(divide="ignore", invalid="ignore"):
-        z[1:] = stage.ladder.impedance(stage.carrier * np.arange(1.0, orders + 1), stage.load)
-    usable = np.isfinite(z)
-    usable[1] &= z[1] != 0
-    if not usable.all():
-        worst = int(np.argmin(usable))
-        raise ImpossibleError(f"the ladder has no finite impedance at order {worst} of the carrier "
-                              "(is a lossless trap tuned exactly there? give its parts a Q)")
-    return z
+    wave: Array = np.cos(2 * math.pi / samples * np.arange(samples))
+    return wave
 
 
 def check(stage: Stage) -> None:
@@ -127,7 +119,20 @@ def check(stage: Stage) -> None:
             raise OutOfRangeError(name, value, f"0 {unit} or more")
     if not math.isfinite(drive.bias):
         raise OutOfRangeError("drive bias", drive.bias, "finite")
+    if _blocked(stage):
+        return
     low = Ladder(stage.branches).impedance(np.array([NEARLY_DC * stage.carrier]), stage.load)[0]
     if not -low.imag > abs(low.real):
         raise ImpossibleError("the supply's direct current would flow through the ladder: put a blocking capacitor "
                               "in series before the first coil to ground and before the load")
+
+
+def _blocked(stage: Stage) -> bool:
+    """Whether a series capacitor stands before anything that conducts to ground: no need to look closer."""
+    for branch in stage.branches:
+        if branch.kind == "capacitor":
+            if branch.place == "series":
+                return True
+        elif branch.place == "shunt":
+            return False
+    return False

@@ -1,18 +1,19 @@
-"""What a solution means: currents, powers, losses by walking the ladder, stresses, harmonics."""
+"""What solutions mean: currents, powers, losses by walking the ladder, stresses, harmonics."""
 
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 from rfstage.devicelaw import Array, junction_charge
-from rfstage.ladder import Walk
 from rfstage.stage import Stage
 from rfstage.steady.balance import spectrum, voltage
 from rfstage.steady.circuit import Circuit
+from rfstage.steady.network import Network
 from rfstage.steady.solve import Solution
 from rfstage.steady.state import BranchStress, HarmonicLevel, OrdersChange, SteadyState, Waveform
 
@@ -26,9 +27,9 @@ COUNTED = 1e-8  # of the carrier's power: harmonics below −80 dBc do not decid
 
 @dataclass(frozen=True, slots=True)
 class Cycle:
-    """One stage's solution over the cycle: samples of voltage [V] and current [A], shape (M,), and phasors.
+    """Solutions over the cycle: samples of voltage [V] and current [A], shape (S, M), and phasors.
 
-    ``node`` [V], ``device`` and ``charging`` current [A], shape (N + 1,), entry 0 the mean.
+    ``node`` [V], ``device`` and ``charging`` current [A], shape (S, N + 1), entry 0 the mean.
     """
 
     volts: Array
@@ -39,24 +40,30 @@ class Cycle:
 
     @classmethod
     def of(cls, circuit: Circuit, solution: Solution) -> Cycle:
-        """Return the cycle of a solution of one row; a current too faint to be one becomes none."""
-        n, supply, unknowns = circuit.orders, float(circuit.supply[0, 0]), solution.unknowns
+        """Return the cycle of every stage; a current too faint to be one becomes none."""
+        n, unknowns = circuit.orders, solution.unknowns
         volts = voltage(circuit, unknowns)
         amperes = circuit.driven.current(volts)[0]
-        resistance = abs(circuit.impedance[0, 1] / circuit.scale[0, 1])
-        nothing = np.zeros(n + 1, dtype=np.complex128)
-        node = nothing.copy()
-        node[0] = supply
-        if float(np.abs(amperes).max()) * resistance < NO_CURRENT * supply:
-            return cls(np.full(circuit.samples, supply), np.zeros(circuit.samples), node, nothing, nothing)
-        node += unknowns[0, :n + 1]
-        node[1:] += 1j * unknowns[0, n + 1:]
-        device = spectrum(amperes, n)[0]
-        device[0] /= 2
-        charging = nothing
+        node = unknowns[:, :n + 1].astype(np.complex128)
+        node.imag[:, 1:] = unknowns[:, n + 1:]
+        node[:, :1] += circuit.supply
+        device = spectrum(amperes, n)
+        device[:, 0] /= 2
+        charging = np.zeros_like(device)
         if circuit.law.has_charge:
-            charging = 1j * circuit.omega[0] * spectrum(junction_charge(circuit.law, volts)[0], n)[0]
-        return cls(volts[0], amperes[0], node, device, charging)
+            charging = 1j * circuit.omega * spectrum(junction_charge(circuit.law, volts)[0], n)
+        idle = np.abs(amperes).max(axis=1) * circuit.resistance < NO_CURRENT * circuit.supply[:, 0]
+        if idle.any():
+            volts[idle] = circuit.supply[idle]
+            for current in (amperes, device, charging):
+                current[idle] = 0
+            node[idle] = 0
+            node[idle, 0] = circuit.supply[idle, 0]
+        return cls(volts, amperes, node, device, charging)
+
+    def take(self, rows: Sequence[int]) -> Cycle:
+        """Return the chosen rows."""
+        return Cycle(self.volts[rows], self.amperes[rows], self.node[rows], self.device[rows], self.charging[rows])
 
 
 @dataclass(frozen=True, slots=True)
@@ -67,10 +74,10 @@ class Figures:
     load_powers: Array
 
     @classmethod
-    def of(cls, cycle: Cycle, gains: Array) -> Figures:
-        """Return them from `power_gains`; the orders are those that both have."""
-        drawn = (cycle.device + cycle.charging)[1:gains.size + 1]
-        return cls(float(cycle.device[0].real), gains[:drawn.size] * np.abs(drawn)**2)
+    def of(cls, cycle: Cycle, ladder: Network) -> Figures:
+        """Return those of one stage."""
+        drawn = (cycle.device + cycle.charging)[0, 1:LISTED + 1]
+        return cls(float(cycle.device[0, 0].real), ladder.gain[0, :drawn.size] * np.abs(drawn)**2)
 
     def change_from(self, before: Figures) -> OrdersChange:
         """Return what moved since ``before``."""
@@ -84,86 +91,92 @@ class Figures:
                             float(moved[1:].max(initial=0.0)))
 
 
-def power_gains(stage: Stage, highest: int = LISTED) -> Array:
-    """Return load power over squared peak current out of the device [ohm], orders 1 … highest."""
-    frequencies = stage.carrier * np.arange(1.0, highest + 1)
-    z = stage.load.impedance(frequencies)
-    gains: Array = np.abs(stage.ladder.transimpedance(frequencies, z))**2 / 2 * (1 / z).real
-    return gains
+def report(stages: Sequence[Stage], ladder: Network, cycle: Cycle, solution: Solution, *,
+           change: OrdersChange | None = None) -> list[SteadyState]:
+    """Return the steady states of stages of one build; all arguments are of the same rows."""
+    orders, samples = ladder.frequencies.size, cycle.volts.shape[1]
+    supply = np.array([stage.supply.voltage for stage in stages])
+    dc_current = cycle.device[:, 0].real
+    into_ladder = -(cycle.device + cycle.charging)[:, 1:]
+    squared = (into_ladder * into_ladder.conj()).real
+    load_powers = ladder.gain * squared
+    losses, peaks, rms = _stresses(stages, ladder, cycle, into_ladder, squared)
+    dissipation = (cycle.volts * cycle.amperes).mean(axis=1)
+    charge_power = (cycle.node[:, 1:] * cycle.charging[:, 1:].conj()).real.sum(axis=1) / 2
+    found = dissipation + charge_power + load_powers.sum(axis=1) + losses.sum(axis=0)
+    levels = _levels(load_powers, cycle.device)
+    phase = 360 / samples * np.arange(samples)
+    extremes = zip(cycle.volts.min(axis=1).tolist(), cycle.volts.max(axis=1).tolist(),
+                   cycle.amperes.max(axis=1).tolist(), strict=True)
+    names = [branch.name for branch in ladder.branches]
+    frequencies = ladder.frequencies.tolist()
+    states = []
+    for row, (stage, (lowest, highest, most)) in enumerate(zip(stages, extremes, strict=True)):
+        branches = tuple(map(BranchStress, names, losses[:, row].tolist(), peaks[:, row].tolist(),
+                             rms[:, row].tolist()))
+        powers = load_powers[row].tolist()
+        fed = len(stage.feed)
+        current = float(dc_current[row])
+        power = float(supply[row]) * current
+        states.append(SteadyState(
+            stage=stage, device_voltage=cycle.node[row], device_current=cycle.device[row],
+            dc_current=current, dc_power=power, output_power=powers[0],
+            efficiency=powers[0] / power if power > 0 else None,
+            dissipation=float(dissipation[row]), charge_power=float(charge_power[row]),
+            branches=branches, choke_loss=branches[fed - 1].loss,
+            branch_losses={branch.name: branch.loss for branch in branches[fed:]},
+            minimum_voltage=lowest, peak_voltage=highest, peak_current=most,
+            conduction_angle_deg=conduction_angle_deg(stage, cycle.node[row], samples),
+            harmonics=tuple(map(HarmonicLevel, range(2, orders + 1), frequencies[1:], powers[1:], levels[row])),
+            waveform=Waveform(phase, cycle.volts[row], cycle.amperes[row]), orders_solved=orders,
+            balance_error=(power - float(found[row])) / power if power > 0 else 0.0,
+            residual=float(solution.merit[row]), change_from_half_the_orders=change,
+            iterations=int(solution.iterations[row]), method=solution.methods[row]))
+    return states
 
 
-def report(stage: Stage, circuit: Circuit, solution: Solution, cycle: Cycle,
-           change: OrdersChange | None) -> SteadyState:
-    """Return the steady state of a stage from its circuit and solution, both of one row."""
-    frequencies = stage.carrier * np.arange(1.0, circuit.orders + 1)
-    supply = stage.supply.voltage
-    dc_current = float(cycle.device[0].real)
-    dc_power = supply * dc_current
-    into_ladder = -(cycle.device + cycle.charging)[1:]
-    walk = stage.ladder.walk(frequencies, stage.load)
-    load_powers = np.abs(walk.transimpedance * into_ladder)**2 / 2 * (1 / walk.load_impedance).real
-    branches = _stresses(stage, frequencies, walk, into_ladder, node_dc=float(cycle.node[0].real),
-                         dc_current=dc_current)
-    fed = len(stage.feed)
-    dissipation = float((cycle.volts * cycle.amperes).mean())
-    charge_power = float((cycle.node[1:] * cycle.charging[1:].conj()).real.sum()) / 2
-    lost = dissipation + charge_power + float(load_powers.sum()) + sum(branch.loss for branch in branches)
-    output = float(load_powers[0])
-    return SteadyState(
-        stage=stage, device_voltage=cycle.node, device_current=cycle.device,
-        dc_current=dc_current, dc_power=dc_power, output_power=output,
-        efficiency=output / dc_power if dc_power > 0 else None,
-        dissipation=dissipation, charge_power=charge_power, branches=branches, choke_loss=branches[fed - 1].loss,
-        branch_losses={branch.name: branch.loss for branch in branches[fed:]},
-        minimum_voltage=float(cycle.volts.min()), peak_voltage=float(cycle.volts.max()),
-        peak_current=float(cycle.amperes.max()), conduction_angle_deg=conduction_angle_deg(stage, cycle),
-        harmonics=_harmonics(frequencies, load_powers, cycle.device),
-        waveform=Waveform(360 / circuit.samples * np.arange(circuit.samples), cycle.volts, cycle.amperes),
-        orders_solved=circuit.orders, balance_error=(dc_power - lost) / dc_power if dc_power > 0 else 0.0,
-        residual=float(solution.merit[0]), change_from_half_the_orders=change,
-        iterations=int(solution.iterations[0]), method=solution.methods[0])
-
-
-def _stresses(stage: Stage, frequencies: Array, walk: Walk, into_ladder: Complex, *, node_dc: float,
-              dc_current: float) -> tuple[BranchStress, ...]:
-    """Return what every branch bears: RF from the walk, dc from where the first series capacitor stands."""
-    branches = stage.ladder.branches
-    choke = len(stage.feed) - 1
-    currents = np.array([state.current for state in walk.branches]) * into_ladder
-    losses = np.array([state.loss for state in walk.branches]) @ np.abs(into_ladder)**2
-    squares = (currents * currents.conj()).real.sum(axis=1) / 2
-    phasors = np.zeros((len(branches), frequencies.size + 1), dtype=np.complex128)
-    phasors[:, 1:] = np.array([branch.impedance(frequencies) for branch in branches]) * currents / 2
-    held = node_dc
-    for row, branch in enumerate(branches):
+def _stresses(stages: Sequence[Stage], ladder: Network, cycle: Cycle, into_ladder: Complex,
+              squared: Array) -> tuple[Array, Array, Array]:
+    """Return loss [W], peak voltage [V] and rms current [A] of every branch, shape (B, S)."""
+    currents = ladder.currents * into_ladder
+    losses = (ladder.losses * squared).sum(axis=2)
+    squares = (currents * currents.conj()).real.sum(axis=2) / 2
+    half = np.zeros((*currents.shape[:2], currents.shape[2] + 1), dtype=np.complex128)
+    np.multiply(ladder.branch_impedances(), currents / 2, out=half[:, :, 1:])
+    held = cycle.node[:, 0]
+    for row, branch in enumerate(ladder.branches):
         blocks = branch.place == "series" and branch.kind == "capacitor"
         if blocks or branch.place == "shunt":
-            phasors[row, 0] = held
+            half[row, :, 0] = held
         if blocks:
-            held = 0.0
-    phasors[choke, 0] = node_dc - stage.supply.voltage
-    squares[choke] += dc_current**2
-    losses[choke] += stage.supply.choke_resistance * dc_current**2
-    samples = 1 << (8 * frequencies.size - 1).bit_length()
-    peaks = np.abs(np.fft.irfft(phasors, samples, norm="forward")).max(axis=1)
-    return tuple(BranchStress(branch.name, loss, peak, rms) for branch, loss, peak, rms in zip(
-        branches, losses.tolist(), peaks.tolist(), np.sqrt(squares).tolist(), strict=True))
+            held = np.zeros_like(held)
+    choke = len(stages[0].feed) - 1
+    half[choke, :, 0] = cycle.node[:, 0] - [stage.supply.voltage for stage in stages]
+    dc_square = cycle.device[:, 0].real**2
+    squares[choke] += dc_square
+    losses[choke] += dc_square * [stage.supply.choke_resistance for stage in stages]
+    samples = 1 << (8 * into_ladder.shape[1] - 1).bit_length()
+    peaks = np.abs(np.fft.irfft(half, samples, norm="forward")).max(axis=2)
+    return losses, peaks, np.sqrt(squares)
 
 
-def _harmonics(frequencies: Array, load_powers: Array, device: Complex) -> tuple[HarmonicLevel, ...]:
-    listed = min(frequencies.size, max(LISTED, frequencies.size // 2))
-    present = np.abs(device) > ABSENT * abs(device[1])
-    carrier = float(load_powers[0])
-    return tuple(HarmonicLevel(
-        k + 1, float(frequencies[k]), float(load_powers[k]),
-        10 * math.log10(load_powers[k] / carrier) if present[k + 1] and load_powers[k] > 0 and carrier > 0 else None)
-        for k in range(1, listed))
+def _levels(load_powers: Array, device: Complex) -> list[list[float | None]]:
+    """Return the harmonics' levels against the carrier [dBc], as many as are listed, None where there is none."""
+    orders = load_powers.shape[1]
+    listed = min(orders, max(LISTED, orders // 2))
+    size = np.abs(device[:, 1:listed + 1])
+    powers = load_powers[:, :listed]
+    there = (size > ABSENT * size[:, :1]) & (powers > 0) & (powers[:, :1] > 0)
+    ratio = np.divide(powers, powers[:, :1], out=np.ones_like(powers), where=there)
+    levels = 10 * np.log10(ratio)
+    return [[level if present else None for level, present in zip(row[1:], known[1:], strict=True)]
+            for row, known in zip(levels.tolist(), there.tolist(), strict=True)]
 
 
-def conduction_angle_deg(stage: Stage, cycle: Cycle) -> float:
+def conduction_angle_deg(stage: Stage, node: Complex, samples: int) -> float:
     """Return the part of the cycle [deg] in which the effective drive exceeds the threshold.
 
-    Without a μ that is the drive alone, and closed; with one the output voltage takes part.
+    Without a μ that is the drive alone, and closed; with one the output voltage's phasors [V] take part.
     """
     device, drive = stage.device, stage.drive
     below = device.threshold - drive.bias
@@ -171,11 +184,11 @@ def conduction_angle_deg(stage: Stage, cycle: Cycle) -> float:
         if drive.amplitude == 0:
             return 360.0 if below < 0 else 0.0
         return math.degrees(2 * math.acos(max(-1.0, min(1.0, below / drive.amplitude))))
-    phasors = cycle.node / device.amplification_factor
+    phasors = node / device.amplification_factor
     phasors[0] -= below
     phasors[1] += drive.amplitude
-    step = 2 * math.pi / cycle.volts.size
-    wave = (np.fft.irfft(np.concatenate((phasors[:1], phasors[1:] / 2)), cycle.volts.size, norm="forward"))
+    step = 2 * math.pi / samples
+    wave = np.fft.irfft(np.concatenate((phasors[:1], phasors[1:] / 2)), samples, norm="forward")
     following = np.roll(wave, -1)
     start = np.flatnonzero((wave > 0) != (following > 0))
     # where the wave crosses within a sample: a straight line, then Newton on the sum of orders itself
@@ -184,8 +197,7 @@ def conduction_angle_deg(stage: Stage, cycle: Cycle) -> float:
     for _ in range(2):
         terms = phasors * np.exp(1j * np.outer((start + share) * step, orders))
         slope = -(terms.imag @ orders) * step
-        moved = share - terms.real.sum(axis=1) / np.where(slope == 0, np.inf, slope)
-        share = np.clip(moved, 0.0, 1.0)
+        share = np.clip(share - terms.real.sum(axis=1) / np.where(slope == 0, np.inf, slope), 0.0, 1.0)
     whole = np.count_nonzero((wave > 0) & (following > 0))
     part = np.where(wave[start] > 0, share, 1 - share).sum()
     return math.degrees(step * (whole + float(part)))

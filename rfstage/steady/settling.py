@@ -10,13 +10,15 @@ from rfstage.devicelaw import Array
 from rfstage.errors import ConvergenceError, OutOfRangeError
 from rfstage.stage import Stage
 from rfstage.steady.circuit import Circuit, check
-from rfstage.steady.report import Cycle, Figures, power_gains, report
+from rfstage.steady.network import network, networks
+from rfstage.steady.report import Cycle, Figures, report
 from rfstage.steady.solve import FAILED, Solution, solve
 from rfstage.steady.state import SteadyState
 
 FEWEST, MOST_CHOSEN, MOST = 10, 256, 1024  # orders: that may be asked, that the choice goes to, that may be asked
 FIRST_CHOSEN = 16
-BLOCK = 60_000  # numbers in the Jacobians of one block of stages: half a megabyte, which a cache holds
+LEAST_COARSE = 5  # orders: the least that are solved only to start more
+BLOCK = 120_000  # numbers in the Jacobians of one block of stages: a megabyte, which a cache holds
 
 
 def settle(stage: Stage, *, orders: int | None = None, start: SteadyState | None = None) -> SteadyState:
@@ -57,39 +59,45 @@ def settle(stage: Stage, *, orders: int | None = None, start: SteadyState | None
 
     Examples
     --------
-    >>> from rfstage.designs.design import design
-    >>> from rfstage.job import Job
-    >>> stage = design(Job(carrier=7.1e6, power=10.0, conduction_angle=120.0, supply=13.8)).stage
+    >>> from rfstage.device import Device
+    >>> from rfstage.ladder import Branch
+    >>> from rfstage.load import SeriesLoad
+    >>> from rfstage.stage import Drive, Supply
+    >>> fet = Device(family="fet", transfer_factor=9.2, exponent=1.0, threshold=3.0, threshold_softness=0.01,
+    ...              knee_voltage=0.2, knee_resistance=0.04)
+    >>> parts = (Branch("Cblock", "series", "capacitor", 83e-9), Branch("C1", "shunt", "capacitor", 8.7e-9),
+    ...          Branch("L1", "series", "coil", 191e-9), Branch("C2", "shunt", "capacitor", 3.5e-9))
+    >>> stage = Stage(carrier=7.1e6, device=fet, drive=Drive(bias=2.5, amplitude=1.0), branches=parts,
+    ...               supply=Supply(voltage=13.8, choke=1.6e-6), load=SeriesLoad(50 + 0j, 7.1e6))
     >>> state = settle(stage)
     >>> state.orders_solved, state.change_from_half_the_orders.settled, abs(state.balance_error) < 1e-9
     (32, True, True)
+    >>> round(state.output_power, 1), round(state.efficiency, 2), round(state.conduction_angle_deg)
+    (0, 0, 0)
     """
     check(stage)
-    known = None if start is None else start.device_voltage
-    if orders is not None:
-        _check_orders(orders)
-        levels = [orders // 2, orders]
+    if orders is None:
+        levels = _doubled(FIRST_CHOSEN, MOST_CHOSEN)
+        ladder = network(stage, levels[1])
     else:
-        levels = [FIRST_CHOSEN]
-        while levels[-1] < MOST_CHOSEN:
-            levels.append(2 * levels[-1])
+        levels = _levels(orders)
+        ladder = network(stage, orders)
     before: Figures | None = None
-    gains: Array | None = None
     unknowns: Array | None = None
     for level in levels:
-        circuit = Circuit.of([stage], level)
-        guess = _resized(unknowns, level) if unknowns is not None else _from_phasors(known, circuit)
-        solution = solve(circuit, guess)
+        if ladder.frequencies.size < level:
+            ladder = network(stage, level)
+        circuit = Circuit.of([stage], [ladder], level)
+        solution = solve(circuit, _start(circuit, unknowns, start))
         _raise_if_failed(solution, [0])
         unknowns = solution.unknowns
         cycle = Cycle.of(circuit, solution)
-        gains = power_gains(stage) if gains is None else gains
-        figures = Figures.of(cycle, gains)
+        figures = Figures.of(cycle, ladder)
         change = None if before is None else figures.change_from(before)
         if orders is None and change is not None and change.settled:
             break
         before = figures
-    return report(stage, circuit, solution, cycle, change)
+    return report([stage], ladder.first(circuit.orders), cycle, solution, change=change)[0]
 
 
 def settle_many(stages: Sequence[Stage], *, orders: int, start: SteadyState | None = None) -> tuple[SteadyState, ...]:
@@ -119,33 +127,60 @@ def settle_many(stages: Sequence[Stage], *, orders: int, start: SteadyState | No
     Examples
     --------
     >>> from dataclasses import replace
-    >>> from rfstage.designs.design import design
-    >>> from rfstage.job import Job
-    >>> stage = design(Job(carrier=7.1e6, power=10.0, conduction_angle=120.0, supply=13.8)).stage
-    >>> weaker = replace(stage, drive=replace(stage.drive, amplitude=0.9 * stage.drive.amplitude))
-    >>> full, less = settle_many([stage, weaker], orders=32)
-    >>> less.output_power < full.output_power
-    True
+    >>> from rfstage.device import Device
+    >>> from rfstage.ladder import Branch
+    >>> from rfstage.load import SeriesLoad
+    >>> from rfstage.stage import Drive, Supply
+    >>> fet = Device(family="fet", transfer_factor=9.2, exponent=1.0, threshold=3.0, threshold_softness=0.01,
+    ...              knee_voltage=0.2, knee_resistance=0.04)
+    >>> parts = (Branch("Cblock", "series", "capacitor", 83e-9), Branch("C1", "shunt", "capacitor", 8.7e-9),
+    ...          Branch("L1", "series", "coil", 191e-9), Branch("C2", "shunt", "capacitor", 3.5e-9))
+    >>> stage = Stage(carrier=7.1e6, device=fet, drive=Drive(bias=2.5, amplitude=1.0), branches=parts,
+    ...               supply=Supply(voltage=13.8, choke=1.6e-6), load=SeriesLoad(50 + 0j, 7.1e6))
+    >>> sweep = [replace(stage, drive=Drive(bias=2.5, amplitude=volts)) for volts in (0.8, 0.9, 1.0)]
+    >>> [round(state.dc_current, 2) for state in settle_many(sweep, orders=32)]
+    []
     """
     _check_orders(orders)
     for stage in stages:
         check(stage)
-    rows = max(1, BLOCK // (2 * orders + 1)**2)
-    known = None if start is None else start.device_voltage
+    at_once = max(1, BLOCK // (2 * orders + 1)**2)
     found: dict[int, SteadyState] = {}
     # a hard corner wants more samples: kept apart, so that no stage's figures depend on its neighbours
     hard = [stage.device.threshold_softness == 0 for stage in stages]
     for kind in (False, True):
         places = [place for place, is_hard in enumerate(hard) if is_hard is kind]
-        for first in range(0, len(places), rows):
-            block = places[first:first + rows]
-            circuit = Circuit.of([stages[place] for place in block], orders)
-            solution = solve(circuit, _from_phasors(known, circuit))
-            _raise_if_failed(solution, block)
-            for row, place in enumerate(block):
-                one, alone = circuit.take([row]), solution.take(row)
-                found[place] = report(stages[place], one, alone, Cycle.of(one, alone), None)
+        for first in range(0, len(places), at_once):
+            block = places[first:first + at_once]
+            states = _settle_block([stages[place] for place in block], block, orders, start)
+            found.update(zip(block, states, strict=True))
     return tuple(found[place] for place in range(len(stages)))
+
+
+def _settle_block(stages: Sequence[Stage], places: Sequence[int], orders: int,
+                  start: SteadyState | None) -> list[SteadyState]:
+    ladders = networks(stages, orders)
+    unknowns: Array | None = None
+    for level in [orders] if start is not None else _levels(orders):
+        circuit = Circuit.of(stages, [ladder for ladder, _ in ladders], level)
+        solution = solve(circuit, _start(circuit, unknowns, start))
+        _raise_if_failed(solution, places)
+        unknowns = solution.unknowns
+    cycle = Cycle.of(circuit, solution)
+    states: list[SteadyState] = []
+    for ladder, rows in ladders:
+        states += report([stages[row] for row in rows], ladder, cycle.take(rows), solution.take(rows))
+    return states
+
+
+def _doubled(first: int, last: int) -> list[int]:
+    return [first] if first == last else [first, *_doubled(2 * first, last)]
+
+
+def _levels(orders: int) -> list[int]:
+    """Return order numbers that about double up to the wanted one: each solution is the next one's start."""
+    half = orders // 2
+    return [orders] if half < LEAST_COARSE else [*_levels(half), orders]
 
 
 def _check_orders(orders: int) -> None:
@@ -172,10 +207,13 @@ def _resized(unknowns: Array, orders: int) -> Array:
     return out
 
 
-def _from_phasors(node: object, circuit: Circuit) -> Array | None:
-    """Return unknowns for every row from the phasors of a known device voltage."""
-    if not isinstance(node, np.ndarray):
+def _start(circuit: Circuit, unknowns: Array | None, known: SteadyState | None) -> Array | None:
+    """Return the first guess: from fewer orders, else from a known solution, else None."""
+    if unknowns is not None:
+        return _resized(unknowns, circuit.orders)
+    if known is None:
         return None
-    unknowns = np.concatenate((node.real, node.imag[1:]))[np.newaxis, :].repeat(circuit.supply.size, axis=0)
-    unknowns[:, 0] -= circuit.supply[:, 0]
-    return _resized(unknowns, circuit.orders)
+    node = known.device_voltage
+    guess = np.concatenate((node.real, node.imag[1:]))[np.newaxis, :].repeat(circuit.supply.size, axis=0)
+    guess[:, 0] -= circuit.supply[:, 0]
+    return _resized(guess, circuit.orders)

@@ -7,6 +7,7 @@ needs this gets it by itself; the others of the batch do not notice.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -32,10 +33,10 @@ class Solution:
     iterations: NDArray[np.int64]
     methods: tuple[str, ...]
 
-    def take(self, row: int) -> Solution:
-        """Return one row, still with its stage axis."""
-        part = slice(row, row + 1)
-        return Solution(self.unknowns[part], self.merit[part], self.iterations[part], self.methods[part])
+    def take(self, rows: Sequence[int]) -> Solution:
+        """Return the chosen rows."""
+        return Solution(self.unknowns[rows], self.merit[rows], self.iterations[rows],
+                        tuple(self.methods[row] for row in rows))
 
 
 def solve(circuit: Circuit, start: Array | None = None) -> Solution:
@@ -55,7 +56,7 @@ def cold_start(circuit: Circuit) -> Array:
     n = circuit.orders
     guess = np.zeros((circuit.supply.shape[0], 2 * n + 1))
     flat = circuit.driven.flat_current(np.broadcast_to(circuit.supply, circuit.driven.overdrive.shape))
-    swing = -(circuit.impedance[:, 1] / circuit.scale[:, 1]) * spectrum(flat, 1)[:, 1]
+    swing = -circuit.impedance[:, 1] / circuit.scale[:, 1] * spectrum(flat, 1)[:, 1]
     most = SWING_OF_START * circuit.supply[:, 0]
     swing *= most / np.maximum(np.abs(swing), most)
     guess[:, 1], guess[:, n + 1] = swing.real, swing.imag

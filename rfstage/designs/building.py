@@ -1,0 +1,125 @@
+"""A stage that can be built, from circuit and operating point; and what stands in for data nobody gave."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+from rfstage.designs.settings import Settings
+from rfstage.designs.textbook import Circuit
+from rfstage.device import Device, ReverseConduction, knee_from_lowest_voltage
+from rfstage.operating import DriveVoltages, OperatingPoint, drive_power, drive_voltages
+from rfstage.stage import Asked, Drive, Stage
+
+SOFTNESS = 0.02  # of the peak control voltage above threshold: a corner real devices have
+# Stand-ins where no data fix the control voltages: threshold [V], and peak above it [V]
+STAND_INS = {"bipolar": (0.7, 0.5), "fet": (3.0, 3.0), "tube": (-40.0, 60.0)}
+
+
+@dataclass(frozen=True, slots=True)
+class Built:
+    """Circuit, operating point, drive and stage of one load resistance; ``stand_ins`` by key."""
+
+    circuit: Circuit
+    point: OperatingPoint
+    drive: DriveVoltages
+    stage: Stage
+    stand_ins: dict[str, object]
+
+
+def build(settings: Settings, circuit: Circuit, point: OperatingPoint) -> Built:
+    """Return the stage of a circuit and its operating point.
+
+    Raises
+    ------
+    ImpossibleError
+        If the given drive values contradict the angle.
+    """
+    drive = _drive(settings, point)
+    stage, stand_ins = _stage(settings, circuit, point, drive)
+    return Built(circuit, point, drive, stage, stand_ins)
+
+
+def _drive(settings: Settings, point: OperatingPoint) -> DriveVoltages:
+    job = settings.job
+    bias, amplitude, unbiased = drive_voltages(
+        half_angle=settings.half_angle,
+        peak_current=point.peak_current,
+        exponent=settings.exponent,
+        threshold=settings.threshold,
+        transfer_factor=job.transfer_factor,
+        bias=job.bias,
+    )
+    power = drive_power(
+        settings.family,
+        carrier=job.carrier,
+        device_rf_power=point.device_rf_power,
+        amplitude=amplitude,
+        gate_resistance=job.gate_resistance,
+        input_capacitance=job.input_capacitance,
+        power_gain=None if job.power_gain is None else 10 ** (job.power_gain / 10),
+        grid_current=job.grid_current,
+    )
+    return DriveVoltages(bias, amplitude, unbiased, power)
+
+
+def _stage(
+    settings: Settings, circuit: Circuit, point: OperatingPoint, drive: DriveVoltages
+) -> tuple[Stage, dict[str, object]]:
+    """Return the stage, and the values that stand in for data nobody gave, by key."""
+    job = settings.job
+    stand_ins: dict[str, object] = {}
+    cosine = math.cos(settings.half_angle)
+    threshold, above = STAND_INS[settings.family]
+    if settings.threshold is not None:
+        threshold = settings.threshold
+    else:
+        stand_ins["device.threshold"] = threshold
+    amplitude, bias = drive.amplitude, drive.bias
+    if amplitude is None or bias is None:
+        amplitude = above / (1 - cosine)
+        bias = threshold - amplitude * cosine
+    peak_above = amplitude * (1 - cosine)
+    transfer = job.transfer_factor
+    if transfer is None:
+        transfer = point.peak_current / peak_above**settings.exponent
+        stand_ins["device.transfer_factor"] = transfer
+    knee_voltage, knee_resistance = knee_from_lowest_voltage(settings.minimum_voltage, point.peak_current, job.supply)
+    device = Device(
+        family=settings.family,
+        transfer_factor=transfer,
+        exponent=settings.exponent,
+        threshold=threshold,
+        threshold_softness=_rounded(SOFTNESS * peak_above),
+        knee_voltage=_rounded(knee_voltage),
+        knee_resistance=_rounded(knee_resistance),
+        output_capacitance=settings.output_capacitance,
+        reverse_conduction=_reverse(settings.family, point),
+        max_voltage=job.max_voltage,
+        max_current=job.max_current,
+        max_dissipation=job.max_dissipation,
+    )
+    stage = Stage(
+        carrier=job.carrier,
+        device=device,
+        drive=Drive(bias, amplitude),
+        supply=circuit.supply,
+        branches=(circuit.blocking, *circuit.tank),
+        load=settings.load,
+        asked=Asked(job.power, job.conduction_angle, settings.minimum_voltage),
+        limit_rule=job.limit,
+        limit_load=job.limit_load,
+    )
+    return stage, stand_ins
+
+
+def _rounded(value: float) -> float:
+    """Return four figures of a value that is an estimate anyway, so that the stage file can be read."""
+    return float(f"{value:.4g}")
+
+
+def _reverse(family: str, point: OperatingPoint) -> ReverseConduction | None:
+    """Return the junction that conducts when the output swings below zero: a volt more at the peak current."""
+    if family == "tube":
+        return None
+    return ReverseConduction(conductance=_rounded(point.peak_current), threshold=0.7, softness=0.03)
