@@ -120,7 +120,7 @@ def about_settled(
     rating: float | None,
     minimum_voltage: float,
     orders_settled: bool,
-    asked_power: float,
+    asked_power: float | None,
     output_power: float,
 ) -> list[Caution]:
     """Return what a steady state (V, W) says of the stage; a peak beyond what the device stands comes first."""
@@ -141,7 +141,7 @@ def about_settled(
                 "few devices stand that.",
             )
         )
-    if abs(output_power / asked_power - 1) > POWER_MISSED:
+    if asked_power is not None and abs(output_power / asked_power - 1) > POWER_MISSED:
         found.append(
             Caution(
                 "settled power",

@@ -35,7 +35,7 @@ _UNITS: dict[str, tuple[str, tuple[str, ...], bool, str]] = {
     "V": ("a voltage", ("volt", "volts"), True, "13.8 V"),
     "A": ("a current", ("amp", "amps"), True, "2.5 A"),
     "W": ("a power", ("watt", "watts"), True, "10 W"),
-    "ohm": ("a resistance or impedance", ("ohms", "Ohm", "Ohms", "Ω", "Ω", "R"), True, "50 ohm"),
+    "ohm": ("a resistance or impedance", ("ohms", "Ohm", "Ohms", "\u03a9", "\u2126", "R"), True, "50 ohm"),
     "F": ("a capacitance", (), True, "150 pF"),
     "H": ("an inductance", (), True, "1.2 uH"),
     "S": ("a conductance", (), True, "20 mS"),

@@ -245,7 +245,7 @@ def test_bias_on_the_wrong_side_of_the_threshold_is_refused_naming_the_side(half
 
 
 def test_bias_at_half_a_cycle_fixes_no_drive_and_is_refused_asking_for_the_transfer_factor():
-    with pytest.raises(ImpossibleError, match="at 180 deg the bias equals the threshold.*transfer factor"):
+    with pytest.raises(ImpossibleError, match=r"at 180 deg the bias equals the threshold.*transfer factor"):
         drive(half_angle=math.pi / 2, bias=0.3)
 
 

@@ -16,6 +16,8 @@ from rfstage.errors import InputError, RfstageError
 COMMANDS = {
     "design": ("design", "a stage from carrier, conduction angle and power: the main job"),
     "match": ("match", "one network by itself, from a resistance to a load"),
+    "settle": ("settle", "the steady state of an as-built stage"),
+    "sweep": ("sweep", "the steady state along one value: tuning, drive, supply, load"),
     "pulse": ("pulse", "Fourier coefficients of the current pulse of a conduction angle"),
 }
 OK, CHECK_FAILED, BAD_INPUT = 0, 1, 2

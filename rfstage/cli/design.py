@@ -36,6 +36,7 @@ def parser() -> Parser:
     files = made.add_argument_group("files and checks")
     files.add_argument("--textbook", action="store_true", help="keep the book's design")
     files.add_argument("--touchstone", metavar="FILE.s2p", help="write the two-port from device node to load")
+    files.add_argument("--spice", metavar="FILE", help="write the stage as a SPICE deck")
     files.add_argument("--save", metavar="STAGE.toml", help="write the stage file")
     return made
 
@@ -44,13 +45,13 @@ def run(words: Sequence[str]) -> int:
     """Run the command and return its exit status."""
     found = parser().read(words)
     job = read_job(found.job.strip() if found.job else None, given(found, JOB_FIELDS))
-    targets = [Path(name) for name in (found.touchstone, found.save) if name]
+    targets = [Path(name) for name in (found.touchstone, found.save, found.spice) if name]
     check_targets(targets, overwrite=found.overwrite)
 
-    from rfstage.designs.design import design
+    from rfstage.designs.design import design, with_settled
     from rfstage.files.records import design_record
 
-    made = design(job, textbook=found.textbook)
+    made = with_settled(design(job, textbook=True)) if found.textbook else design(job)
     contents: list[tuple[Path, str]] = []
     if found.touchstone:
         from rfstage.files.touchstone import touchstone_text
@@ -60,6 +61,10 @@ def run(words: Sequence[str]) -> int:
         from rfstage.files.stage import stage_text
 
         contents.append((Path(found.save), stage_text(made.stage, Path(found.save).parent)))
+    if found.spice:
+        from rfstage.files.spice import spice_text
+
+        contents.append((Path(found.spice), spice_text(made.stage)))
     write_files(contents, overwrite=found.overwrite)
 
     def page(look):  # type: ignore[no-untyped-def]

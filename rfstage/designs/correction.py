@@ -65,11 +65,18 @@ def _search(settings: Settings, coefficients: NDArray[np.float64], book: Built) 
         goal *= asked / state.output_power
     raise ImpossibleError(
         f"the settled power stays at {show(state.output_power, 'W') if state else 'nothing'} where "
-        f"{exact_text(asked, 'W')} is asked: it no longer follows the load resistance")
+        f"{exact_text(asked, 'W')} is asked: it no longer follows the load resistance"
+    )
 
 
-def _secant(settings: Settings, coefficients: NDArray[np.float64], book: Built, built: Built,
-            state: SteadyState | None, goal: float) -> tuple[Built, SteadyState]:
+def _secant(
+    settings: Settings,
+    coefficients: NDArray[np.float64],
+    book: Built,
+    built: Built,
+    state: SteadyState | None,
+    goal: float,
+) -> tuple[Built, SteadyState]:
     before: tuple[float, float] | None = None
     for _ in range(SOLVES):
         state = settle_many([built.stage], orders=TRIAL_ORDERS, start=state)[0]
@@ -88,7 +95,8 @@ def _secant(settings: Settings, coefficients: NDArray[np.float64], book: Built, 
             raise ImpossibleError(
                 f"in steady state network {settings.request.network} gives {show(state.output_power, 'W')} where "
                 f"{show(goal, 'W')} is asked, and would need less than {LEAST_RESISTANCE:g} of the textbook's "
-                f"load resistance of {show(book.point.load_resistance, 'ohm')}")
+                f"load resistance of {show(book.point.load_resistance, 'ohm')}"
+            )
         built = build(settings, *circuit_at(settings, coefficients, resistance))
     assert state is not None
     return built, state
@@ -103,12 +111,14 @@ def _judge(settings: Settings, book: Built, state: SteadyState) -> None:
     if state.peak_voltage > most:
         raise ImpossibleError(
             f"in steady state network {settings.request.network} gives {exact_text(job.power, 'W')} only with "
-            f"{show(state.peak_voltage, 'V')} peak across the device, above {named} of {show(most, 'V')}")
+            f"{show(state.peak_voltage, 'V')} peak across the device, above {named} of {show(most, 'V')}"
+        )
     efficiency = state.efficiency or 0.0
     if efficiency < book.point.overall_efficiency - EFFICIENCY_LOST:
         raise ImpossibleError(
             f"in steady state network {settings.request.network} gives {exact_text(job.power, 'W')} at an efficiency of "
-            f"{100 * efficiency:.0f} % where the textbook has {100 * book.point.overall_efficiency:.0f} %")
+            f"{100 * efficiency:.0f} % where the textbook has {100 * book.point.overall_efficiency:.0f} %"
+        )
 
 
 def _way_out(job: Job) -> str:
@@ -117,8 +127,10 @@ def _way_out(job: Job) -> str:
         ("network pi", {"network": "pi", "loaded_q": None, "input_q": None}),
         ("network pi with an input-side Q of 4", {"network": "pi", "loaded_q": None, "input_q": 4.0}),
         (f"a supply of {1.3 * job.supply:.3g} V", {"supply": 1.3 * job.supply}),
-        (f"network pi and a supply of {1.3 * job.supply:.3g} V",
-         {"network": "pi", "loaded_q": None, "input_q": None, "supply": 1.3 * job.supply}),
+        (
+            f"network pi and a supply of {1.3 * job.supply:.3g} V",
+            {"network": "pi", "loaded_q": None, "input_q": None, "supply": 1.3 * job.supply},
+        ),
     ]
     for name, changes in trials:
         try:
@@ -129,4 +141,3 @@ def _way_out(job: Job) -> str:
             continue
         return f"; {name} does it (--textbook keeps the book's design as it is)"
     return "; --textbook keeps the book's design as it is"
-

@@ -129,7 +129,7 @@ def with_settled(made: Design, state: SteadyState | None = None) -> Design:
     Returns
     -------
     Design
-        Line levels are then the worse of textbook and settled. Where no steady state is reached a
+        Line levels and what the ratings are held against are then the worse of textbook and settled. Where no steady state is reached a
         textbook design comes back as it was, with a caution that says so.
     """
     from rfstage.steady import settle
@@ -158,35 +158,81 @@ def with_settled(made: Design, state: SteadyState | None = None) -> Design:
         asked_power=made.job.power,
         output_power=state.output_power,
     )
-    return replace(made, settled=state, harmonics=levels, cautions=(*found, *made.cautions))
+    worst = {
+        "max_voltage": state.peak_voltage,
+        "max_current": state.peak_current,
+        "max_dissipation": state.dissipation,
+    }
+    return replace(
+        made,
+        settled=state,
+        harmonics=levels,
+        ratings=tuple(replace(r, value=max(r.value, worst[r.name])) for r in made.ratings),
+        cautions=(*found, *made.cautions),
+    )
 
 
-def _assembled(settings: Settings, coefficients: NDArray[np.float64], built: Built, designed_to: str,
-               book_resistance: float) -> Design:
+def _assembled(
+    settings: Settings, coefficients: NDArray[np.float64], built: Built, designed_to: str, book_resistance: float
+) -> Design:
     job, circuit, point = settings.job, built.circuit, built.point
     ladder = Ladder((*circuit.feed, *circuit.tank))
     shown_orders = range(2, settings.highest_order + 1)
-    dip = trough_dip(ladder, settings.load, carrier=job.carrier, coefficients=coefficients,
-                     peak_current=point.peak_current, swing=point.swing)
+    dip = trough_dip(
+        ladder,
+        settings.load,
+        carrier=job.carrier,
+        coefficients=coefficients,
+        peak_current=point.peak_current,
+        swing=point.swing,
+    )
     tank = describe(
-        settings.request.network, circuit.feed, circuit.tank, load=settings.load, carrier=job.carrier,
-        current=point.fundamental_current, trough_dip=dip,
-        terminations=terminations(ladder, settings.load, job.carrier, point.load_resistance, shown_orders))
+        settings.request.network,
+        circuit.feed,
+        circuit.tank,
+        load=settings.load,
+        carrier=job.carrier,
+        current=point.fundamental_current,
+        trough_dip=dip,
+        terminations=terminations(ladder, settings.load, job.carrier, point.load_resistance, shown_orders),
+    )
     levels = harmonics(
-        ladder, load=settings.load, line=settings.line, carrier=job.carrier, coefficients=coefficients,
-        peak_current=point.peak_current, highest_order=settings.highest_order, output_power=job.power,
-        limit=settings.limit)
-    continued = tuple(n for n in shown_orders if isinstance(settings.load, MeasuredLoad)
-                      and not settings.load.reaches(n * job.carrier))
+        ladder,
+        load=settings.load,
+        line=settings.line,
+        carrier=job.carrier,
+        coefficients=coefficients,
+        peak_current=point.peak_current,
+        highest_order=settings.highest_order,
+        output_power=job.power,
+        limit=settings.limit,
+    )
+    continued = tuple(
+        n
+        for n in shown_orders
+        if isinstance(settings.load, MeasuredLoad) and not settings.load.reaches(n * job.carrier)
+    )
     return Design(
-        job=job, settings=settings, designed_to=designed_to, coefficients=coefficients,
-        operating_class=operating_class(job.conduction_angle), point=point, book_resistance=book_resistance,
+        job=job,
+        settings=settings,
+        designed_to=designed_to,
+        coefficients=coefficients,
+        operating_class=operating_class(job.conduction_angle),
+        point=point,
+        book_resistance=book_resistance,
         drive=built.drive,
-        ratings=tuple(ratings(point, max_voltage=job.max_voltage, max_current=job.max_current,
-                              max_dissipation=job.max_dissipation)),
-        tank=tank, harmonics=levels, continued=continued,
+        ratings=tuple(
+            ratings(
+                point, max_voltage=job.max_voltage, max_current=job.max_current, max_dissipation=job.max_dissipation
+            )
+        ),
+        tank=tank,
+        harmonics=levels,
+        continued=continued,
         cautions=_cautions(settings, point, tank, levels, ladder, continued),
-        stage=built.stage, assumed={**settings.assumed, **_sized(settings, circuit, point), **built.stand_ins})
+        stage=built.stage,
+        assumed={**settings.assumed, **_sized(settings, circuit, point), **built.stand_ins},
+    )
 
 
 def _sized(settings: Settings, circuit: Circuit, point: OperatingPoint) -> dict[str, object]:

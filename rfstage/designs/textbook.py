@@ -64,13 +64,20 @@ def circuit_for(settings: Settings, resistance: float, near: tuple[Branch, ...] 
     blocking = job.blocking
     if blocking is None:
         blocking = 10 / (omega * min(resistance, across or resistance))
-    supply = Supply(voltage=job.supply, choke=choke, choke_resistance=settings.choke_resistance,
-                    choke_q=settings.choke_q)
+    supply = Supply(
+        voltage=job.supply, choke=choke, choke_resistance=settings.choke_resistance, choke_q=settings.choke_q
+    )
     capacitor_q = settings.request.capacitor_q
     blocker = Branch(BLOCKING, "series", "capacitor", blocking, q=None if math.isinf(capacitor_q) else capacitor_q)
     before = (*feed(settings.output_capacitance, supply.branch(job.carrier)), blocker)
-    tank = solve_network(settings.request, feed=before, wanted=complex(resistance), load=settings.load_impedance,
-                         carrier=job.carrier, near=near)
+    tank = solve_network(
+        settings.request,
+        feed=before,
+        wanted=complex(resistance),
+        load=settings.load_impedance,
+        carrier=job.carrier,
+        near=near,
+    )
     return Circuit(supply, settings.output_capacitance, blocker, tank, job.carrier)
 
 
@@ -85,11 +92,17 @@ def _input_reactance(settings: Settings, resistance: float) -> float | None:
         return None
     q = settings.request.loaded_q or default_loaded_q(settings, resistance)
     try:
-        first = pi_network(complex(resistance), settings.load_impedance, carrier=settings.job.carrier,
-                           loaded_q=q, input_q=settings.request.input_q)[0]
+        first = pi_network(
+            complex(resistance),
+            settings.load_impedance,
+            carrier=settings.job.carrier,
+            loaded_q=q,
+            input_q=settings.request.input_q,
+        )[0]
     except ImpossibleError:
         return None  # the network itself says what is wrong
-    return 1 / (2 * math.pi * settings.job.carrier * float(first.value))
+    value = float(first.value)
+    return 1 / (2 * math.pi * settings.job.carrier * value) if value > 0 else None
 
 
 def default_loaded_q(settings: Settings, resistance: float) -> float:
@@ -101,21 +114,29 @@ def default_loaded_q(settings: Settings, resistance: float) -> float:
 
 def point_for(settings: Settings, coefficients: NDArray[np.float64], efficiency: float) -> OperatingPoint:
     """Return the operating point that gives the asked power through a tank of this efficiency [-]."""
-    return operating_point(output_power=settings.job.power, tank_efficiency=efficiency, **_given(settings, coefficients))
+    return operating_point(
+        output_power=settings.job.power, tank_efficiency=efficiency, **_given(settings, coefficients)
+    )
 
 
-def circuit_at(settings: Settings, coefficients: NDArray[np.float64],
-               resistance: float) -> tuple[Circuit, OperatingPoint]:
+def circuit_at(
+    settings: Settings, coefficients: NDArray[np.float64], resistance: float
+) -> tuple[Circuit, OperatingPoint]:
     """Return circuit and operating point of a load resistance [ohm], whatever power it gives."""
     circuit = circuit_for(settings, resistance)
-    return circuit, operating_point_at(resistance, tank_efficiency=_efficiency(settings, circuit),
-                                       **_given(settings, coefficients))
+    return circuit, operating_point_at(
+        resistance, tank_efficiency=_efficiency(settings, circuit), **_given(settings, coefficients)
+    )
 
 
 def _given(settings: Settings, coefficients: NDArray[np.float64]) -> dict[str, float]:
-    return {"supply": settings.job.supply, "minimum_voltage": settings.minimum_voltage,
-            "dc_coefficient": float(coefficients[0]), "fundamental_coefficient": float(coefficients[1]),
-            "choke_resistance": settings.choke_resistance}
+    return {
+        "supply": settings.job.supply,
+        "minimum_voltage": settings.minimum_voltage,
+        "dc_coefficient": float(coefficients[0]),
+        "fundamental_coefficient": float(coefficients[1]),
+        "choke_resistance": settings.choke_resistance,
+    }
 
 
 def _efficiency(settings: Settings, circuit: Circuit) -> float:
@@ -141,6 +162,7 @@ def by_the_book(settings: Settings, coefficients: NDArray[np.float64]) -> tuple[
     ConvergenceError
         If the loop does not settle.
     """
+
     def next_for(resistance: float, near: tuple[Branch, ...]) -> tuple[Circuit, OperatingPoint]:
         circuit = circuit_for(settings, resistance, near)
         return circuit, point_for(settings, coefficients, _efficiency(settings, circuit))
@@ -160,4 +182,5 @@ def by_the_book(settings: Settings, coefficients: NDArray[np.float64]) -> tuple[
         resistance = max(resistance + step, resistance / 2)
     raise ConvergenceError(
         "the load resistance did not settle between power and tank losses: the tank loses nearly all the power; "
-        "raise tank.coil_q or lower the loaded Q")
+        "raise tank.coil_q or lower the loaded Q"
+    )

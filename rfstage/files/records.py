@@ -5,7 +5,7 @@ from __future__ import annotations
 import json
 import math
 from collections.abc import Sequence
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -13,6 +13,10 @@ from numpy.typing import NDArray
 from rfstage.designs.design import Design
 from rfstage.ladder import Branch
 from rfstage.matching.networks import PartStress, Tank
+
+if TYPE_CHECKING:
+    from rfstage.steady import SteadyState
+    from rfstage.sweep import Extreme, Sweep
 
 VERSION = 1
 _UNIT = {"capacitor": "F", "coil": "H", "resistor": "ohm"}
@@ -79,6 +83,7 @@ def design_record(design: Design, files: Sequence[str]) -> dict[str, Any]:
                 "device_current_a": h.device_current,
                 "load_power_w": h.load_power,
                 "level_dbc": h.level,
+                "settled_level_dbc": h.settled_level,
                 "line_level_dbc": h.line_level,
                 "limit_dbc": h.limit,
                 "margin_db": h.margin,
@@ -86,7 +91,7 @@ def design_record(design: Design, files: Sequence[str]) -> dict[str, Any]:
             }
             for h in design.harmonics
         ],
-        "settled": None,
+        "settled": None if design.settled is None else settled_record(design.settled),
         "cautions": [{"topic": c.topic, "text": c.text} for c in design.cautions],
         "files": list(files),
     }
@@ -157,3 +162,107 @@ def pulse_record(
         "fundamental_to_dc": ratio,
         "maximum_efficiency": ratio / 2,
     }
+
+
+def settle_record(state: SteadyState) -> dict[str, Any]:
+    """Return a steady state as ``rfstage.settle``, version 1."""
+    return {"format": "rfstage.settle", "version": VERSION, **settled_record(state)}
+
+
+def settled_record(state: SteadyState) -> dict[str, Any]:
+    """Return a steady state, with its waveform."""
+    change = state.change_from_half_the_orders
+    return {
+        **_meters(state),
+        "dc_power_w": state.dc_power,
+        "choke_loss_w": state.choke_loss,
+        "branch_losses_w": dict(state.branch_losses),
+        "branch_stresses": [
+            {"name": b.name, "peak_voltage_v": b.peak_voltage, "rms_current_a": b.rms_current, "loss_w": b.loss}
+            for b in state.branches
+        ],
+        "harmonics": [
+            {"order": h.order, "frequency_hz": h.frequency, "load_power_w": h.load_power, "level_dbc": h.level}
+            for h in state.harmonics
+        ],
+        "waveform": {
+            "phase_deg": numbers(state.waveform.phase_deg),
+            "voltage_v": numbers(state.waveform.voltage),
+            "current_a": numbers(state.waveform.current),
+        },
+        "orders_solved": state.orders_solved,
+        "balance_error": state.balance_error,
+        "residual": state.residual,
+        "change_from_half_the_orders": None
+        if change is None
+        else {
+            "dc_current": change.dc_current,
+            "output_power_db": change.output_power_db,
+            "harmonics_db": change.harmonics_db,
+        },
+    }
+
+
+def _meters(state: SteadyState) -> dict[str, Any]:
+    return {
+        "dc_current_a": state.dc_current,
+        "output_power_w": state.output_power,
+        "efficiency": state.efficiency,
+        "dissipation_w": state.dissipation,
+        "minimum_voltage_v": state.minimum_voltage,
+        "peak_voltage_v": state.peak_voltage,
+        "peak_current_a": state.peak_current,
+        "conduction_angle_deg": state.conduction_angle_deg,
+    }
+
+
+def sweep_record(swept: Sweep) -> dict[str, Any]:
+    """Return a sweep as ``rfstage.sweep``, version 1; a turning point is its value or null.
+
+    For a sweep of the load each point is the hottest of its circle, with the worst of the circle beside it.
+    """
+    points = []
+    for k, state in enumerate(swept.points):
+        point = {
+            **_meters(state),
+            "dc_power_w": state.dc_power,
+            "harmonics_dbc": [[h.order, h.level] for h in state.harmonics],
+        }
+        if swept.circles:
+            circle = swept.circles[k]
+            point["circle"] = {
+                "dissipation_w": circle.dissipation,
+                "dissipation_phase_deg": circle.dissipation_phase,
+                "peak_voltage_v": circle.peak_voltage,
+                "peak_voltage_phase_deg": circle.peak_voltage_phase,
+                "least_output_w": circle.least_output,
+                "greatest_output_w": circle.greatest_output,
+            }
+        points.append(point)
+    return {
+        "format": "rfstage.sweep",
+        "version": VERSION,
+        "path": swept.path,
+        "unit": swept.unit,
+        "values": list(swept.values),
+        "points": points,
+        "dip": _turning(swept.dip),
+        "efficiency_peak": _turning(swept.efficiency_peak),
+        "output_peak": _turning(swept.output_peak),
+    }
+
+
+def _turning(extreme: Extreme | None) -> float | None:
+    return None if extreme is None else extreme.value
+
+
+def sweep_table(swept: Sweep) -> str:
+    """Return a sweep as CSV: a line of names with units, a line a point."""
+    unit = f"_{swept.unit}" if swept.unit else ""
+    names = [f"{swept.path}{unit}", *_meters(swept.points[0]), "dc_power_w"]
+    names += [f"harmonic_{h.order}_dbc" for h in swept.points[0].harmonics[:9]]
+    lines = [",".join(names)]
+    for value, state in zip(swept.values, swept.points, strict=True):
+        row = [value, *_meters(state).values(), state.dc_power, *(h.level for h in state.harmonics[:9])]
+        lines.append(",".join("" if cell is None else repr(float(cell)) for cell in row))
+    return "\n".join(lines) + "\n"

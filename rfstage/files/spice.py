@@ -64,8 +64,15 @@ def spice_text(stage: Stage, run: Run | None = None) -> str:
     run = run or default_run(stage)
     period = 1 / stage.carrier
     begin, end = (run.periods - run.measured) * period, run.periods * period
-    lines = [*_head(stage, run), *_supply(stage), *_drive(stage), *_device(stage.device),
-             *_capacitances(stage.device, stage.supply.voltage), *_branches(stage), *_load(stage)]
+    lines = [
+        *_head(stage, run),
+        *_supply(stage),
+        *_drive(stage),
+        *_device(stage.device),
+        *_capacitances(stage.device, stage.supply.voltage),
+        *_branches(stage),
+        *_load(stage),
+    ]
     lines += [
         "",
         "* start-up with the device off; the last periods are measured",
@@ -87,7 +94,9 @@ def _head(stage: Stage, run: Run) -> list[str]:
     ]
     if isinstance(stage.load, MeasuredLoad):
         z = complex(stage.load.impedance(stage.carrier))
-        lines.append(f"* the measured load is written as {exact_complex(z)} ohm at the carrier, continued as R and L or C")
+        lines.append(
+            f"* the measured load is written as {exact_complex(z)} ohm at the carrier, continued as R and L or C"
+        )
     return lines
 
 
@@ -111,8 +120,11 @@ def _supply(stage: Stage) -> list[str]:
 
 def _drive(stage: Stage) -> list[str]:
     drive = stage.drive
-    return ["", "* drive, from its trough",
-            f"Vdrive control 0 SIN({_value(drive.bias)} {_value(drive.amplitude)} {_value(stage.carrier)} 0 0 -90)"]
+    return [
+        "",
+        "* drive, from its trough",
+        f"Vdrive control 0 SIN({_value(drive.bias)} {_value(drive.amplitude)} {_value(stage.carrier)} 0 0 -90)",
+    ]
 
 
 def _soft(x: str, softness: float) -> str:
@@ -129,7 +141,8 @@ def _device(device: Device) -> list[str]:
     knee = f"({_value(device.knee_voltage)} + {_value(device.knee_resistance)}*v(flat))"
     ratio = "v(ratio)" if device.family == "fet" else _soft("v(ratio)", 0.1)
     lines = [
-        "", "* device: drive above the threshold, flat current, voltage over the knee, current",
+        "",
+        "* device: drive above the threshold, flat current, voltage over the knee, current",
         f"Babove above 0 V = {_soft(above, device.threshold_softness)}",
         f"Bflat flat 0 V = {_value(device.transfer_factor)}*v(above)^{_value(device.exponent)}",
         f"Bratio ratio 0 V = v({NODE})/{knee}",
@@ -153,8 +166,10 @@ def _capacitances(device: Device, start: float) -> list[str]:
         inside = f"max(1 + v({NODE})/{_value(phi)}, 0.5)"
         beyond = f"min(0.5 + v({NODE})/{_value(phi)}, 0)"
         end = 0.5**-m
-        charge = (f"{_value(phi / (1 - m))}*({inside}^{_value(1 - m)} - 1)"
-                  f" + {_value(phi)}*{beyond}*({_value(end)} - {_value(m * end)}*{beyond})")
+        charge = (
+            f"{_value(phi / (1 - m))}*({inside}^{_value(1 - m)} - 1)"
+            f" + {_value(phi)}*{beyond}*({_value(end)} - {_value(m * end)}*{beyond})"
+        )
         first = phi / (1 - m) * ((1 + start / phi) ** (1 - m) - 1)
         lines += [
             "* junction capacitance: its charge as a voltage, differentiated by a capacitor, fed back as a current",
@@ -218,5 +233,7 @@ def _load(stage: Stage) -> list[str]:
     lines = ["", "* load"]
     if z.imag == 0:
         return [*lines, f"Rload load 0 {_value(z.real)}"]
-    second = f"Lload loadr 0 {_value(z.imag / omega)}" if z.imag > 0 else f"Cload loadr 0 {_value(-1 / (omega * z.imag))}"
+    second = (
+        f"Lload loadr 0 {_value(z.imag / omega)}" if z.imag > 0 else f"Cload loadr 0 {_value(-1 / (omega * z.imag))}"
+    )
     return [*lines, f"Rload load loadr {_value(z.real)}", second]

@@ -19,7 +19,8 @@ from rfstage.errors import ConvergenceError
 from rfstage.ladder import Branch, Ladder
 from rfstage.matching.quality import impedance_and_loaded_q
 
-_TOLERANCE = 1e-12
+_TOLERANCE = 1e-12  # of the impedance at the device
+_ROUNDING = 500  # times that is let pass where rounding leaves no better, in networks of high Q
 _ITERATIONS = 60
 _STEP = 1e-7  # of the one-sided differences; Newton then gains about seven digits an iteration
 _GOOD = 0.2  # an iteration that leaves less than this of the miss lets the derivatives be carried along
@@ -65,13 +66,16 @@ def close(
     ConvergenceError
         If no values near the start do it.
     """
-    target = behind(feed, wanted, carrier)
+    a, b, c, d = (complex(x) for x in Ladder(feed).chain(carrier))
+    target = (d * wanted - b) / (a - c * wanted)
+    # relative misses behind the feed show at the device as many times larger as this
+    steepness = max(1.0, abs(target / wanted / (c * target + d) ** 2))
     moving = tank[fixed:]
     scale = np.array([_scale(branch, target, carrier) for branch in moving])
 
     def rebuilt(x: NDArray[np.float64]) -> tuple[Branch, ...]:
         values = (x * scale).tolist()
-        return (*tank[:fixed], *(replace(b, value=v) for b, v in zip(moving, values, strict=True)))
+        return (*tank[:fixed], *(replace(branch, value=v) for branch, v in zip(moving, values, strict=True)))
 
     def residual(x: NDArray[np.float64]) -> NDArray[np.float64]:
         parts = rebuilt(x)
@@ -80,13 +84,24 @@ def close(
                 miss = complex(Ladder(parts).impedance(carrier, load)) / target - 1
                 return np.array([miss.real, miss.imag])
             z, q = impedance_and_loaded_q(feed, parts, load, carrier)
+            miss = (d * z - b) / (a - c * z) / target - 1
         except ZeroDivisionError:  # a part of exactly nothing on the way: as far off as can be
             return np.full(x.size, math.inf)
-        miss = z / wanted - 1
         return np.array([miss.real, miss.imag, q / asked_loaded_q - 1])
 
     start = np.array([float(branch.value) for branch in moving]) / scale
-    return rebuilt(_newton(residual, start))
+    parts = rebuilt(_newton(residual, start, tolerance=_TOLERANCE / steepness))
+    if not _balances((*feed, *parts), load, carrier):
+        raise ConvergenceError("its Q is beyond what 16 digits can tell")
+    return parts
+
+
+def _balances(branches: Sequence[Branch], load: complex, carrier: float) -> bool:
+    """Return whether input power equals losses and load power to ten digits; extreme ratios lose it to rounding."""
+    walk = Ladder(branches).walk(carrier, load)
+    given = walk.impedance.real
+    taken = abs(walk.transimpedance) ** 2 * (1 / load).real + 2 * sum(state.loss for state in walk.branches)
+    return bool(abs(given - taken) <= 1e-10 * given)
 
 
 def _scale(branch: Branch, target: complex, carrier: float) -> float:
@@ -96,16 +111,18 @@ def _scale(branch: Branch, target: complex, carrier: float) -> float:
     return max(abs(float(branch.value)), least)
 
 
-def _newton(residual: Residual, start: NDArray[np.float64]) -> NDArray[np.float64]:
+def _newton(residual: Residual, start: NDArray[np.float64], *, tolerance: float) -> NDArray[np.float64]:
     """Solve by Newton's method, its derivatives carried along by Broyden's update while that goes well."""
     x, r = start, residual(start)
     size = float(np.abs(r).max())
     fresh = good = False
-    for _ in range(_ITERATIONS):
-        if size <= _TOLERANCE:
+    for _ in range(_ITERATIONS if math.isfinite(size) else 0):
+        if size <= tolerance:
             return x
         if not good:
             jacobian, fresh = _derivatives(residual, x, r), True
+        if not np.isfinite(jacobian).all():
+            break
         try:
             step = np.linalg.solve(jacobian, -r)
         except np.linalg.LinAlgError:
@@ -129,7 +146,7 @@ def _newton(residual: Residual, start: NDArray[np.float64]) -> NDArray[np.float6
             moved = trial - x
             jacobian = jacobian + np.outer(new - r - jacobian @ moved, moved) / (moved @ moved)
         x, r, size, fresh = trial, new, new_size, False
-    if size <= 1e3 * _TOLERANCE:  # rounding in the impedance itself, of high-Q networks
+    if size <= _ROUNDING * tolerance:
         return x
     raise ConvergenceError(f"the network did not close: {size:.3g} left of the wanted impedance")
 

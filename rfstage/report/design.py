@@ -11,6 +11,7 @@ from rfstage.quantity import exact_text, show, show_complex
 from rfstage.report.circuit import CONTROL, ELECTRODE, circuit
 from rfstage.report.page import NO_BREAK, Cell, Look, columns, heading, note, pairs
 
+WIDE = 100  # columns, from which device current and power in the load are shown too
 BAR_FLOOR = -100.0  # dBc at the left end of a bar; the right end is the carrier
 _ORDER_NAMES = ("dc", "fundamental", "second", "third")
 _UNITS_OF = {"max_voltage": "V", "max_current": "A", "max_dissipation": "W"}
@@ -58,24 +59,17 @@ def _point(design: Design, look: Look) -> list[Text]:
     items = [
         ("load resistance", show(point.load_resistance, "ohm", 4)),
         (f"{electrode} swing", show(point.swing, "V")),
-        (f"peak {electrode} voltage", show(point.peak_voltage, "V")),
-        (f"lowest {electrode} voltage", show(settings.minimum_voltage, "V") if settings.minimum_voltage else "0 V"),
-        (f"peak {electrode} current", show(point.peak_current, "A")),
-        ("dc current", show(point.dc_current, "A")),
         ("fundamental current, peak", show(point.fundamental_current, "A")),
-        ("dc power", show(point.dc_power, "W")),
         ("RF power from the device", show(point.device_rf_power, "W")),
-        ("power at the load", show(point.output_power, "W")),
-        ("device dissipation", show(point.dissipation, "W")),
         ("device efficiency", f"{100 * point.device_efficiency:.1f} %"),
-        ("overall efficiency", f"{100 * point.overall_efficiency:.1f} %"),
     ]
     if drive.bias is not None and drive.amplitude is not None:
         items += [(f"{control} bias", _volts(drive.bias)), (f"{control} drive, peak", show(drive.amplitude, "V"))]
     if drive.unbiased_amplitude is not None:
         items.append((f"{control} drive without bias", f"{show(drive.unbiased_amplitude, 'V')} peak"))
     items.append(("drive power", show(drive.power, "W") if drive.power is not None else "not known"))
-    lines = heading(look, f"Operating point, {design.designed_to}") + pairs(look, items)
+    lines = heading(look, f"Operating point, designed to the {design.designed_to} power") + _compared(design, look)
+    lines += pairs(look, items)
     shares = "  ".join(f"{_ORDER_NAMES[n]}{NO_BREAK}{design.coefficients[n]:.4f}" for n in range(4))
     lines += note(look, f"Current pulse over its peak: {shares}".replace("-", "−"))
     for rating in design.ratings:
@@ -95,8 +89,51 @@ def _point(design: Design, look: Look) -> list[Text]:
     return lines
 
 
-def _volts(value: float) -> str:
-    return "0 V" if value == 0 else show(value, "V")
+def _compared(design: Design, look: Look) -> list[Text]:
+    """Return the figures that textbook and steady state both have, side by side."""
+    point, state = design.point, design.settled
+    electrode = ELECTRODE[design.settings.family]
+    book = [
+        ("power at the load", show(point.output_power, "W")),
+        ("dc current", show(point.dc_current, "A")),
+        ("dc power", show(point.dc_power, "W")),
+        ("overall efficiency", f"{100 * point.overall_efficiency:.1f} %"),
+        ("device dissipation", show(point.dissipation, "W")),
+        (f"peak {electrode} voltage", show(point.peak_voltage, "V")),
+        (f"lowest {electrode} voltage", _volts(design.settings.minimum_voltage)),
+        (f"peak {electrode} current", show(point.peak_current, "A")),
+    ]
+    if state is None:
+        return pairs(look, book)
+    real = [
+        show(state.output_power, "W") if state.has_output else "no output",
+        _volts(state.dc_current, "A"),
+        _volts(state.dc_power, "W"),
+        "none" if state.efficiency is None else f"{100 * state.efficiency:.1f} %",
+        _volts(state.dissipation, "W"),
+        show(state.peak_voltage, "V"),
+        _volts(state.minimum_voltage),
+        _volts(state.peak_current, "A"),
+    ]
+    rows = [[Cell(""), Cell("textbook", "dim", right=True), Cell("settled", "dim", right=True)]]
+    rows += [
+        [Cell(name, "dim"), Cell(value, right=True), Cell(settled, "bold", right=True)]
+        for (name, value), settled in zip(book, real, strict=True)
+    ]
+    lines = columns(look, rows)
+    if design.designed_to == "settled":
+        change = 100 * (point.load_resistance / design.book_resistance - 1)
+        lines += note(
+            look,
+            f"The book alone would have {show(design.book_resistance, 'ohm', 4)}; corrected by {change:+.1f} %, so that "
+            "the steady state gives the power asked.".replace("-", "−"),
+            style="dim",
+        )
+    return lines
+
+
+def _volts(value: float, unit: str = "V") -> str:
+    return f"0 {unit}" if value == 0 else show(value, unit)
 
 
 def _tank(design: Design, look: Look) -> list[Text]:
@@ -127,41 +164,50 @@ def tank_lines(tank: Tank, look: Look) -> list[Text]:
 
 
 def _harmonics(design: Design, look: Look) -> list[Text]:
-    limit, settings = design.settings.limit, design.settings
-    line = show(settings.line.at_carrier.real, "ohm")
+    line = show(design.settings.line.at_carrier.real, "ohm")
     judged = any(h.limit is not None for h in design.harmonics)
-    titles = ["n", "frequency", "device", "in load", "dBc", "dBc in line", *(["limit", "margin"] if judged else []), ""]
+    wide = look.width >= WIDE
+    titles = ["n", "frequency", *(["device", "in load"] if wide else []), "textbook"]
+    titles += ["settled"] if design.settled is not None else []
+    titles += ["line", *(["limit", "margin"] if judged else []), ""]
     rows = [[Cell(t, "dim", right=True) for t in titles]]
-    room = max(8, min(40, look.width - (72 if judged else 58)))
-    rows += [_harmonic_row(h, look, judged, room) for h in design.harmonics]
-    lines = heading(look, f"Harmonics at the load, line {line}") + columns(look, rows, gap=1)
+    room = max(8, min(40, look.width - 14 - 9 * (len(titles) - 3)))
+    rows += [_harmonic_row(h, look, design, wide=wide, judged=judged, room=room) for h in design.harmonics]
+    lines = heading(look, "Harmonics at the load, dBc") + columns(look, rows, gap=1)
+    worse = "the worse of textbook and settled" if design.settled is not None else "from the textbook pulse"
+    lines += note(look, f"textbook and settled: in the given load; line: in a resistive {line}, {worse}.", style="dim")
     if any(h.strays_decide for h in design.harmonics):
         lines += note(
             look, "* strays decide: 5 nH of lead in each shunt capacitor moves it by more than 3 dB", style="dim"
         )
-    return lines + _verdict(design, look, limit is not None)
+    return lines + _verdict(design, look)
 
 
-def _harmonic_row(h: Harmonic, look: Look, judged: bool, room: int) -> list[Cell]:
-    front = [Cell(f"{h.order}", right=True), Cell(show(h.frequency, "Hz", 4), right=True)]
-    if h.level is None or h.line_level is None:
-        return [*front, Cell("none in the ideal pulse")]
-    star = "*" if h.strays_decide else " "
-    cells = [
-        *front,
-        Cell(show(abs(h.device_current), "A"), right=True),
-        Cell(show(h.load_power, "W"), right=True),
-        Cell(f"{h.level:.1f}".replace("-", "−"), right=True),
-        Cell(f"{h.line_level:.1f}{star}".replace("-", "−"), right=True),
-    ]
+def _harmonic_row(h: Harmonic, look: Look, design: Design, *, wide: bool, judged: bool, room: int) -> list[Cell]:
+    cells = [Cell(f"{h.order}", right=True), Cell(show(h.frequency, "Hz", 4), right=True)]
+    if wide:
+        cells += [
+            Cell(show(abs(h.device_current), "A") if h.device_current else "none", right=True),
+            Cell(show(h.load_power, "W") if h.load_power else "none", right=True),
+        ]
+    cells.append(Cell(_level(h.level), right=True))
+    if design.settled is not None:
+        cells.append(Cell(_level(h.settled_level), right=True))
+    cells.append(Cell(_level(h.line_level) + ("*" if h.strays_decide else " "), "bold", right=True))
     style = ""
     if judged:
         style = "" if h.margin is None else "green" if h.margin >= 0 else "bold red"
         cells += [
-            Cell("none" if h.limit is None else f"{h.limit:.1f}".replace("-", "−"), right=True),
+            Cell(_level(h.limit), right=True),
             Cell("none" if h.margin is None else _signed(h.margin), style, right=True),
         ]
-    return [*cells, Cell(_bar(h.line_level, h.limit, look, room), style)]
+    if h.level is None:
+        return [*cells, Cell("none in the ideal pulse", "dim")]
+    return [*cells, Cell("" if h.line_level is None else _bar(h.line_level, h.limit, look, room), style)]
+
+
+def _level(decibels: float | None) -> str:
+    return "none" if decibels is None else f"{decibels:.1f}".replace("-", "−")
 
 
 def _signed(decibels: float) -> str:
@@ -182,9 +228,9 @@ def _bar(level: float, limit: float | None, look: Look, room: int) -> str:
     return "".join(cells)
 
 
-def _verdict(design: Design, look: Look, limited: bool) -> list[Text]:
+def _verdict(design: Design, look: Look) -> list[Text]:
     limit = design.settings.limit
-    if limit is None or not limited:
+    if limit is None:
         return note(look, "No limit rule was given; --limit names one.", style="dim")
     worst = design.worst
     where = f"limit {limit.name} ({limit.source}; {limit.conditions})"

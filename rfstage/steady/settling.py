@@ -17,7 +17,7 @@ from rfstage.steady.state import SteadyState
 
 FEWEST, MOST_CHOSEN, MOST = 10, 256, 1024  # orders: that may be asked, that the choice goes to, that may be asked
 FIRST_CHOSEN = 16
-LEAST_COARSE = 5  # orders: the least that are solved only to start more
+LEAST_COARSE = 24  # orders: the least that are worth solving only as a start for more
 BLOCK = 120_000  # numbers in the Jacobians of one block of stages: a megabyte, which a cache holds
 
 
@@ -80,7 +80,8 @@ def settle(stage: Stage, *, orders: int | None = None, start: SteadyState | None
         levels = _doubled(FIRST_CHOSEN, MOST_CHOSEN)
         ladder = network(stage, levels[1])
     else:
-        levels = _levels(orders)
+        _check_orders(orders)
+        levels = _levels(orders // 2) + [orders]
         ladder = network(stage, orders)
     before: Figures | None = None
     unknowns: Array | None = None

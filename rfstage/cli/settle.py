@@ -1,0 +1,56 @@
+"""``rfstage settle``: the steady state of an as-built stage."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from rfstage.cli.words import Parser, output
+from rfstage.files.write import check_targets, write_files
+
+if TYPE_CHECKING:
+    from rich.text import Text
+
+    from rfstage.report.page import Look
+
+ABOUT = """\
+The steady state of a stage as it is built: what the meters read, what gets hot, what each part bears,
+the harmonics, and how far to trust it all.
+
+  rfstage settle stage.toml
+"""
+
+
+def parser() -> Parser:
+    """Return the command's parser."""
+    made = Parser("settle", ABOUT)
+    made.add_argument("stage", metavar="STAGE.toml", help="stage file, such as 'rfstage design --save' writes")
+    made.add_argument("--spice", metavar="FILE", help="write the stage as a SPICE deck")
+    return made
+
+
+def run(words: Sequence[str]) -> int:
+    """Run the command and return its exit status."""
+    found = parser().read(words)
+    targets = [Path(found.spice)] if found.spice else []
+    check_targets(targets, overwrite=found.overwrite)
+
+    from rfstage.files.records import settle_record
+    from rfstage.files.stage import load_stage
+    from rfstage.steady import settle
+
+    stage = load_stage(found.stage.strip())
+    state = settle(stage)
+    if targets:
+        from rfstage.files.spice import spice_text
+
+        write_files([(targets[0], spice_text(stage))], overwrite=found.overwrite)
+
+    def page(look: Look) -> list[Text]:
+        from rfstage.report.settled import settled_page
+
+        return settled_page(state, look)
+
+    output(found, settle_record(state), page)
+    return 0
