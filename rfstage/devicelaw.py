@@ -41,13 +41,26 @@ HARD = 1e-200  # V; a hard corner is the limit of the soft one, and |x|/HARD sti
 
 
 @dataclass(frozen=True, slots=True)
+class Parts:
+    """What any of a law's devices has; ``one_way`` and ``both_ways`` say whether there are such devices."""
+
+    mu: bool
+    one_way: bool
+    both_ways: bool
+    reverse: bool
+    charge: bool
+
+
+@dataclass(frozen=True, slots=True)
 class Law:
     """The parameters of one device or many, as arrays of shape (stages..., 1) that meet samples in time.
 
     Names and units as in the table above; ``inverse_mu`` is 1/μ, and 0 without one; absent junctions have
-    a conductance or a capacitance of 0. ``one_way`` is False for a FET.
+    a conductance or a capacitance of 0. ``one_way`` is False for a FET. ``parts`` spares looking for
+    what no device has.
     """
 
+    parts: Parts
     transfer_factor: Array
     exponent: Array
     threshold: Array
@@ -75,12 +88,15 @@ class Law:
                 *((diode.conductance, diode.threshold, diode.softness) if diode else (0.0, 0.0, 0.0)),
                 *((junction.at_zero, junction.potential, junction.grading) if junction else (0.0, 1.0, 0.0))))
         columns: list[Any] = list(np.array(rows, dtype=np.float64).T[:, :, np.newaxis])
-        columns[_LAW_FIELDS.index("one_way")] = columns[_LAW_FIELDS.index("one_way")] != 0
-        return cls(*columns)
+        mu, one_way, reverse, charge = (columns[_COLUMNS.index(name)] != 0 for name in (
+            "inverse_mu", "one_way", "reverse_conductance", "junction_at_zero"))
+        columns[_COLUMNS.index("one_way")] = one_way
+        return cls(Parts(bool(mu.any()), bool(one_way.any()), not one_way.all(), bool(reverse.any()),
+                         bool(charge.any())), *columns)
 
     def take(self, rows: Any) -> Law:
         """Return the law of the chosen rows."""
-        return Law(*(getattr(self, name)[rows] for name in _LAW_FIELDS))
+        return Law(self.parts, *(getattr(self, name)[rows] for name in _COLUMNS))
 
     def softened(self, factor: float) -> Law:
         """Return the same device with a knee and a reverse junction ``factor`` times as soft."""
@@ -88,13 +104,8 @@ class Law:
                        reverse_conductance=self.reverse_conductance / factor,
                        reverse_softness=self.reverse_softness * factor)
 
-    @property
-    def has_charge(self) -> bool:
-        """Whether any junction capacitance is there."""
-        return bool(self.junction_at_zero.any())
 
-
-_LAW_FIELDS = tuple(Law.__slots__)
+_COLUMNS = tuple(Law.__slots__)[1:]
 
 
 @dataclass(frozen=True, slots=True)
@@ -115,7 +126,7 @@ class DrivenLaw:
     def at(cls, law: Law, control: Array) -> DrivenLaw:
         """Apply a control voltage [V], shape (stages..., samples)."""
         overdrive = control - law.threshold
-        if law.inverse_mu.any():
+        if law.parts.mu:
             return cls(law, overdrive, None, None)
         flat, _ = _flat(law, overdrive)
         return cls(law, overdrive, flat, 1 / (law.knee_voltage + law.knee_resistance * flat))
@@ -147,10 +158,10 @@ class DrivenLaw:
             rate = 1 / (law.knee_voltage + law.knee_resistance * flat)
             ratio = voltage * rate
             rate = rate * (1 - ratio * law.knee_resistance * slope)
-        if law.one_way.all():
+        if not law.parts.both_ways:
             ratio, factor = soft(ratio, ONE_WAY_SOFTNESS)
             rate = rate * factor
-        elif law.one_way.any():
+        elif law.parts.one_way:
             closing, factor = soft(ratio, ONE_WAY_SOFTNESS)
             ratio = np.where(law.one_way, closing, ratio)
             rate = np.where(law.one_way, rate * factor, rate)
@@ -159,7 +170,7 @@ class DrivenLaw:
         conductance = flat * (1 - bend * bend) * rate
         if slope is not None:
             conductance = conductance + slope * bend
-        if law.reverse_conductance.any():
+        if law.parts.reverse:
             beyond, on = soft(-voltage - law.reverse_threshold, law.reverse_softness)
             current = current - law.reverse_conductance * beyond
             conductance = conductance + law.reverse_conductance * on

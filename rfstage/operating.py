@@ -211,7 +211,7 @@ def drive_voltages(
     if threshold is None:
         return bias, None, None
     if transfer_factor is not None:
-        amplitude = (peak_current / transfer_factor) ** (1 / exponent) / (1 - cosine)
+        amplitude = (peak_current / transfer_factor) ** (1 / exponent) / (2 * math.sin(half_angle / 2) ** 2)  # 1 − cos
         wanted = threshold - amplitude * cosine
         if bias is not None and abs(bias - wanted) > 0.005 * amplitude:
             raise ImpossibleError(

@@ -91,31 +91,33 @@ def pulse_coefficients(half_angle: ArrayLike, *, highest_order: int, exponent: f
 
 
 def _linear(theta: NDArray[np.float64], highest_order: int) -> NDArray[np.float64]:
-    out = np.empty((*theta.shape, highest_order + 1))
-    sine_half, cosine = np.sin(theta / 2), np.cos(theta)
-    small = theta < 1
-    tiny = np.where(small, theta, 0.5)
-    large = np.where(small, 2.0, theta)
-    # sin t − t cos t = t³/3 · S(t²), and 2t − sin 2t = (2t)³/6 · T(t²); sin(t/2) = t/2 · sinc
-    sinc = np.sin(tiny / 2) / (tiny / 2)
-    square = tiny * tiny
-    dc_series = 2 * tiny / (3 * math.pi * sinc**2) * _odd_series(square)
-    out[..., 0] = np.where(
-        small, dc_series, (np.sin(large) - large * np.cos(large)) / (2 * math.pi * np.sin(large / 2) ** 2)
-    )
-    if highest_order >= 1:
-        first_series = 4 * tiny / (3 * math.pi * sinc**2) * _cubic_series(4 * square)
-        out[..., 1] = np.where(
-            small, first_series, (2 * large - np.sin(2 * large)) / (4 * math.pi * np.sin(large / 2) ** 2)
-        )
+    t = theta.reshape(-1)
+    out = np.empty((highest_order + 1, t.size))  # an order a row: every pass below runs through memory in a line
+    small = t < 1
+    for here, first_two in ((small, _by_series), (~small, _in_closed_form)):
+        out[:2, here] = first_two(t[here])[: highest_order + 1]
     if highest_order >= 2:
-        common = 16 / math.pi * sine_half * np.cos(theta / 2) ** 3
-        before, now = np.zeros_like(theta), np.ones_like(theta)
+        common = 16 / math.pi * np.sin(t / 2) * np.cos(t / 2) ** 3
+        cosine = np.cos(t)
+        before, now = np.zeros_like(t), np.ones_like(t)
         for n in range(2, highest_order + 1):
-            out[..., n] = common * now / (n * (n * n - 1.0))
+            np.multiply(common / (n * (n * n - 1.0)), now, out=out[n])
             m = n - 2
-            before, now = now, (2 * (m + 2) * cosine * now - (m + 3) * before) / (m + 1)
-    return out
+            before, now = now, (2 * (m + 2) / (m + 1)) * (cosine * now) - ((m + 3) / (m + 1)) * before
+    return np.moveaxis(out.reshape(highest_order + 1, *theta.shape), 0, -1)
+
+
+def _by_series(t: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Return a0 and a1 below one radian: sin t − t cos t = t³/3 · S(t²), 2t − sin 2t = (2t)³/6 · T(4t²)."""
+    sinc = np.sin(t / 2) / (t / 2)
+    scale = 2 * t / (3 * math.pi * sinc**2)
+    return np.stack([scale * _odd_series(t * t), 2 * scale * _cubic_series(4 * t * t)])
+
+
+def _in_closed_form(t: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Return a0 and a1 from one radian up."""
+    scale = 2 * math.pi * np.sin(t / 2) ** 2
+    return np.stack([(np.sin(t) - t * np.cos(t)) / scale, (t - np.sin(2 * t) / 2) / scale])
 
 
 def _odd_series(square: NDArray[np.float64]) -> NDArray[np.float64]:

@@ -261,7 +261,7 @@ def show_complex(value: complex, digits: int = 3) -> str:
     Examples
     --------
     >>> show_complex(20.5 - 3.2j), show_complex(50 + 0j)
-    ('20.5 − j3.20 Ω', '50.0 Ω')
+    ('20.5 − j3.2 Ω', '50.0 Ω')
     """
     if abs(value.imag) < 0.5 * 10 ** (1 - digits) * abs(value.real):
         return show(value.real, "ohm", digits)

@@ -70,6 +70,7 @@ def _stage(
     job = settings.job
     stand_ins: dict[str, object] = {}
     cosine = math.cos(settings.half_angle)
+    peak_share = 2 * math.sin(settings.half_angle / 2) ** 2  # 1 − cos, with its digits at small angles
     threshold, above = STAND_INS[settings.family]
     if settings.threshold is not None:
         threshold = settings.threshold
@@ -77,9 +78,9 @@ def _stage(
         stand_ins["device.threshold"] = threshold
     amplitude, bias = drive.amplitude, drive.bias
     if amplitude is None or bias is None:
-        amplitude = above / (1 - cosine)
+        amplitude = above / peak_share
         bias = threshold - amplitude * cosine
-    peak_above = amplitude * (1 - cosine)
+    peak_above = amplitude * peak_share
     transfer = job.transfer_factor
     if transfer is None:
         transfer = point.peak_current / peak_above**settings.exponent

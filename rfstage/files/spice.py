@@ -78,7 +78,7 @@ def spice_text(stage: Stage, run: Run | None = None) -> str:
         "* start-up with the device off; the last periods are measured",
         f".tran {period / run.steps:.12g} {end:.12g} {begin:.12g} {period / run.steps:.12g} uic",
         f".four {stage.carrier:.12g} v(load) v({NODE})",
-        ".options reltol=1e-6 abstol=1e-12 vntol=1e-9 method=trap",
+        ".options reltol=1e-6 abstol=1e-9 vntol=1e-7 itl4=100 method=trap",
         f".print tran v(load) v({NODE}) i(vsupply)",
         ".end",
     ]

@@ -23,6 +23,7 @@ _TOLERANCE = 1e-12  # of the impedance at the device
 _ROUNDING = 500  # times that is let pass where rounding leaves no better, in networks of high Q
 _ITERATIONS = 60
 _STEP = 1e-7  # of the one-sided differences; Newton then gains about seven digits an iteration
+_KEPT = 5e-10  # of the impedance, and of the power balance, in what is returned
 _GOOD = 0.2  # an iteration that leaves less than this of the miss lets the derivatives be carried along
 
 Residual = Callable[[NDArray[np.float64]], NDArray[np.float64]]
@@ -91,17 +92,17 @@ def close(
 
     start = np.array([float(branch.value) for branch in moving]) / scale
     parts = rebuilt(_newton(residual, start, tolerance=_TOLERANCE / steepness))
-    if not _balances((*feed, *parts), load, carrier):
+    if not _holds((*feed, *parts), wanted, load, carrier):
         raise ConvergenceError("its Q is beyond what 16 digits can tell")
     return parts
 
 
-def _balances(branches: Sequence[Branch], load: complex, carrier: float) -> bool:
-    """Return whether input power equals losses and load power to ten digits; extreme ratios lose it to rounding."""
+def _holds(branches: Sequence[Branch], wanted: complex, load: complex, carrier: float) -> bool:
+    """Return whether impedance and power balance stand to nine digits; extreme ratios lose them to rounding."""
     walk = Ladder(branches).walk(carrier, load)
-    given = walk.impedance.real
+    z = complex(walk.impedance)
     taken = abs(walk.transimpedance) ** 2 * (1 / load).real + 2 * sum(state.loss for state in walk.branches)
-    return bool(abs(given - taken) <= 1e-10 * given)
+    return bool(abs(z - wanted) <= _KEPT * abs(wanted) and abs(z.real - taken) <= _KEPT * z.real)
 
 
 def _scale(branch: Branch, target: complex, carrier: float) -> float:

@@ -124,6 +124,8 @@ def _solve_pi(request: Request, feed: Sequence[Branch], wanted: complex, target:
         if capacitance and taken > (request.input_q or request.loaded_q or DEFAULT_LOADED_Q):
             raise ImpossibleError(_too_much_capacitance(capacitance, wanted, load, carrier, request.coil_q)) from None
         raise
+    if float(parts[1].value) <= 0:
+        raise ConvergenceError("the coil would have to be negative")
     if float(parts[0].value) <= 0:
         if capacitance:
             raise ImpossibleError(_too_much_capacitance(capacitance, wanted, load, carrier, request.coil_q))

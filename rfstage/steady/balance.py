@@ -4,7 +4,7 @@ r"""The balance of harmonics, its exact Jacobian, and damped Newton on many stag
 
     W_k + Z_k (I_k + j k ω Q_k) = 0,  k = 0 … N        v(t) = V_supply + W_0 + Σ Re W_k e^{jkωt}
 
-    W_k  deviation of the device node's voltage from the supply (the unknowns: 2N + 1 real numbers)
+    W_k  deviation of the device node's voltage from the supply (the unknowns; Im W_0 is carried along as 0)
     I_k  of the device's current at v(t) and the drive; Q_k of its junction charge; both by FFT of M samples
 
 In this impedance form a short (Z = 0) is as welcome as an open. Written for the deviation, the equations keep
@@ -28,6 +28,7 @@ from numpy.typing import NDArray
 
 from rfstage.devicelaw import Array, junction_charge
 from rfstage.steady.circuit import Circuit
+from rfstage.steady.network import Complex
 
 TOLERANCE = 1e-11  # of the supply voltage, or of the current's response where that is less
 ITERATIONS = 25  # past these, softening the knee is the shorter way
@@ -36,13 +37,13 @@ HALVINGS = 4  # of one step: where more are needed, the knee is in the way
 
 @dataclass(frozen=True, slots=True)
 class Point:
-    """A trial: unknowns and scaled residual [V] (S, 2N + 1), merit and goal [-] (S,), sampled slopes (S, M).
+    """A trial: unknowns and scaled residual [V] (S, N + 1), merit and goal [-] (S,), sampled slopes (S, M).
 
     ``merit`` is the residual's length over the supply voltage, and the solution has ``merit <= goal``.
     """
 
-    unknowns: Array
-    residual: Array
+    unknowns: Complex
+    residual: Complex
     merit: Array
     goal: Array
     conductance: Array
@@ -64,56 +65,56 @@ class Point:
 
 @dataclass(frozen=True, slots=True)
 class Outcome:
-    """Where Newton ended: unknowns (S, 2N + 1), merit, whether it converged, and iterations spent (S,)."""
+    """Where Newton ended: unknowns (S, N + 1), merit, whether it converged, and iterations spent (S,)."""
 
-    unknowns: Array
+    unknowns: Complex
     merit: Array
     converged: NDArray[np.bool_]
     iterations: NDArray[np.int64]
 
 
-def voltage(circuit: Circuit, unknowns: Array) -> Array:
+def voltage(circuit: Circuit, unknowns: Complex) -> Array:
     """Return the device node's voltage [V] over the cycle, shape (S, M)."""
-    n = circuit.orders
-    half = np.empty((unknowns.shape[0], n + 1), dtype=np.complex128)
-    half.real[:, 0] = unknowns[:, 0]
-    half.imag[:, 0] = 0
-    half.real[:, 1:] = unknowns[:, 1:n + 1]
-    half.imag[:, 1:] = unknowns[:, n + 1:]
-    half[:, 1:] *= 0.5
-    wave = np.fft.irfft(half, circuit.samples, norm="forward")
+    half = unknowns / 2
+    half[:, 0] = unknowns[:, 0]
+    wave: Array = np.fft.irfft(half, circuit.samples, norm="forward")
     wave += circuit.supply
     return wave
 
 
-def spectrum(wave: Array, orders: int) -> NDArray[np.complex128]:
+def spectrum(wave: Array, orders: int) -> Complex:
     """Return twice the Fourier coefficients 0 … orders: peak phasors, and twice the mean."""
-    return np.fft.rfft(wave, norm="forward")[:, :orders + 1] * 2
+    coefficients: Complex = np.fft.rfft(wave, norm="forward")[:, :orders + 1] * 2
+    return coefficients
 
 
-def evaluate(circuit: Circuit, unknowns: Array) -> Point:
-    """Return residual, merit and slopes at the unknowns [V], shape (S, 2N + 1)."""
+def evaluate(circuit: Circuit, unknowns: Complex) -> Point:
+    """Return residual, merit and slopes at the unknowns [V], shape (S, N + 1)."""
     n = circuit.orders
     volts = voltage(circuit, unknowns)
     amperes, conductance = circuit.driven.current(volts)
     drawn = spectrum(amperes, n)
     capacitance = None
-    if circuit.law.has_charge:
+    if circuit.law.parts.charge:
         charge, capacitance = junction_charge(circuit.law, volts)
         drawn += 1j * circuit.omega * spectrum(charge, n)
-    response = circuit.impedance * drawn
-    residual = np.empty_like(unknowns)
-    residual[:, :n + 1] = response.real
-    residual[:, n + 1:] = response.imag[:, 1:]
+    residual = circuit.impedance * drawn
     supply = circuit.supply[:, 0]
-    goal = TOLERANCE * np.minimum(1, np.sqrt(np.vecdot(residual, residual)) / supply)
+    goal = TOLERANCE * np.minimum(1, _length(residual) / supply)
     residual += circuit.scale * unknowns
-    merit = np.sqrt(np.vecdot(residual, residual)) / supply
-    return Point(unknowns, residual, merit, goal, conductance, capacitance)
+    return Point(unknowns, residual, _length(residual) / supply, goal, conductance, capacitance)
+
+
+def _length(phasors: Complex) -> Array:
+    length: Array = np.sqrt(np.vecdot(phasors, phasors).real)
+    return length
 
 
 def jacobian(circuit: Circuit, point: Point) -> Array:
-    """Return d residual/d unknowns [-], shape (S, 2N + 1, 2N + 1), exact for the sampled law."""
+    """Return d residual/d unknowns [-], shape (S, 2N + 2, 2N + 2), exact for the sampled law.
+
+    Rows and columns are real and imaginary part of order 0, then of order 1, and so on.
+    """
     n = circuit.orders
     z = circuit.impedance[:, :, np.newaxis]
     over_a, over_b = _slopes(point.conductance, n)
@@ -125,19 +126,21 @@ def jacobian(circuit: Circuit, point: Point) -> Array:
         over_a += reactive * charge_a
         over_b += reactive * charge_b
     # the columns of b are j times over_b: its real part is −imag, its imaginary part real
-    j = np.empty((z.shape[0], 2 * n + 1, 2 * n + 1))
-    j[:, :n + 1, :n + 1] = over_a.real
-    j[:, n + 1:, :n + 1] = over_a.imag[:, 1:]
-    np.negative(over_b.imag, out=j[:, :n + 1, n + 1:])
-    j[:, n + 1:, n + 1:] = over_b.real[:, 1:]
-    j.reshape(z.shape[0], -1)[:, ::2 * n + 2] += circuit.scale  # the diagonals
+    j = np.empty((z.shape[0], 2 * n + 2, 2 * n + 2))
+    j[:, ::2, ::2] = over_a.real
+    j[:, 1::2, ::2] = over_a.imag
+    np.negative(over_b.imag, out=j[:, ::2, 1::2])
+    j[:, 1::2, 1::2] = over_b.real
+    diagonals = j.reshape(z.shape[0], -1)[:, ::2 * n + 3]
+    diagonals[:, ::2] += circuit.scale
+    diagonals[:, 1::2] += circuit.scale
     return j
 
 
-def _slopes(wave: Array, n: int) -> tuple[NDArray[np.complex128], NDArray[np.complex128]]:
+def _slopes(wave: Array, n: int) -> tuple[Complex, Complex]:
     """Return d/da and −j d/db of a current's phasors, from its sampled slope.
 
-    Rows k = 0 … n; columns l = 0 … n for a and 1 … n for b. Row 0 is of twice the mean, as in `spectrum`.
+    Rows k and columns l from 0 to n. Row 0 is of twice the mean, as in `spectrum`.
     """
     g = np.fft.rfft(wave, norm="forward")
     stages = wave.shape[0]
@@ -148,11 +151,11 @@ def _slopes(wave: Array, n: int) -> tuple[NDArray[np.complex128], NDArray[np.com
     shape, along = (stages, n + 1, n + 1), row.strides[0]
     toeplitz = np.ndarray(shape, row.dtype, row, n * step, (along, step, -step))  # G_{k−l}
     hankel = np.ndarray(shape, row.dtype, row, n * step, (along, step, step))  # G_{k+l}
-    return toeplitz + hankel, toeplitz[:, :, 1:] - hankel[:, :, 1:]
+    return toeplitz + hankel, toeplitz - hankel
 
 
-def newton(circuit: Circuit, start: Array, *, iterations: int = ITERATIONS) -> Outcome:
-    """Solve from a start, shape (S, 2N + 1) [V]; stages that end early no longer cost anything.
+def newton(circuit: Circuit, start: Complex, *, iterations: int = ITERATIONS) -> Outcome:
+    """Solve from a start, shape (S, N + 1) [V]; stages that end early no longer cost anything.
 
     A step is halved until the merit falls, for those stages only where it does not. A stage whose
     merit can't be lowered, or that uses up its iterations, comes back with ``converged`` False.
@@ -191,19 +194,20 @@ def _record(out: Outcome, rows: NDArray[np.int64], point: Point, which: Any, spe
     out.iterations[rows[which]] = spent
 
 
-def _step(circuit: Circuit, point: Point) -> Array:
+def _step(circuit: Circuit, point: Point) -> Complex:
     matrix = jacobian(circuit, point)
-    steps = np.full_like(point.residual, np.nan)
+    wanted = point.residual.view(np.float64)
+    steps = np.full_like(wanted, np.nan)
     try:
-        np.negative(np.linalg.solve(matrix, point.residual[:, :, np.newaxis])[:, :, 0], out=steps)
+        np.negative(np.linalg.solve(matrix, wanted[:, :, np.newaxis])[:, :, 0], out=steps)
     except np.linalg.LinAlgError:  # of one stage among many; a step of NaN makes that one fall back alone
         for row, one in enumerate(matrix):
             if np.linalg.cond(one) < 1e15:
-                steps[row] = -np.linalg.solve(one, point.residual[row])
-    return steps
+                steps[row] = -np.linalg.solve(one, wanted[row])
+    return steps.view(np.complex128)
 
 
-def _search(circuit: Circuit, point: Point, step: Array, trial: Point) -> NDArray[np.int64]:
+def _search(circuit: Circuit, point: Point, step: Complex, trial: Point) -> NDArray[np.int64]:
     """Shorten steps that did not lower the merit, writing into ``trial``; return the rows that never did."""
     worse = np.flatnonzero(~(trial.merit < point.merit))
     fraction = 1.0

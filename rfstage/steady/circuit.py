@@ -38,8 +38,8 @@ class Circuit:
 
     ``supply`` [V] (S, 1); ``bias`` and ``amplitude`` of the drive [V] (S, 1); ``law`` the devices;
     ``driven`` the same under drive; ``impedance`` scaled [ohm] (S, N + 1), that of dc halved since a mean
-    counts once where a peak counts twice; ``scale`` of each equation [-] (S, 2N + 1); ``resistance`` |Z_1|
-    [ohm] (S,); ``omega`` k times the carrier [rad/s] (S, N + 1).
+    counts once where a peak counts twice; ``scale`` of each equation [-] (S, N + 1); ``resistance`` |Z_1| [ohm]
+    (S,); ``omega`` k times the carrier [rad/s] (S, N + 1).
     """
 
     orders: int
@@ -70,9 +70,9 @@ class Circuit:
         scaled[:, 0] /= 2
         supply, bias, amplitude, carrier = np.array(
             [(s.supply.voltage, s.drive.bias, s.drive.amplitude, s.carrier) for s in stages]).T[:, :, np.newaxis]
-        return cls(orders, samples, supply, bias, amplitude, law,
-                   DrivenLaw.at(law, bias + amplitude * _cosine(samples)), scaled,
-                   np.concatenate((scale, scale[:, 1:]), axis=1), size[:, 1], 2 * math.pi * carrier * np.arange(orders + 1))
+        driven = DrivenLaw.at(law, bias + amplitude * _cosine(samples))
+        omega = 2 * math.pi * carrier * np.arange(orders + 1)
+        return cls(orders, samples, supply, bias, amplitude, law, driven, scaled, scale, size[:, 1], omega)
 
     def take(self, rows: Any) -> Circuit:
         """Return the chosen rows."""

@@ -7,17 +7,14 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from rfstage.devicelaw import Array, junction_charge
 from rfstage.stage import Stage
 from rfstage.steady.balance import spectrum, voltage
 from rfstage.steady.circuit import Circuit
-from rfstage.steady.network import Network
+from rfstage.steady.network import Complex, Network
 from rfstage.steady.solve import Solution
 from rfstage.steady.state import BranchStress, HarmonicLevel, OrdersChange, SteadyState, Waveform
-
-Complex = NDArray[np.complex128]
 
 LISTED = 10  # harmonics listed at least; beyond, up to half of the orders solved
 ABSENT = 1e-12  # of the fundamental: the accuracy of the balance; a weaker harmonic is not there
@@ -44,13 +41,12 @@ class Cycle:
         n, unknowns = circuit.orders, solution.unknowns
         volts = voltage(circuit, unknowns)
         amperes = circuit.driven.current(volts)[0]
-        node = unknowns[:, :n + 1].astype(np.complex128)
-        node.imag[:, 1:] = unknowns[:, n + 1:]
+        node = unknowns.copy()
         node[:, :1] += circuit.supply
         device = spectrum(amperes, n)
         device[:, 0] /= 2
         charging = np.zeros_like(device)
-        if circuit.law.has_charge:
+        if circuit.law.parts.charge:
             charging = 1j * circuit.omega * spectrum(junction_charge(circuit.law, volts)[0], n)
         idle = np.abs(amperes).max(axis=1) * circuit.resistance < NO_CURRENT * circuit.supply[:, 0]
         if idle.any():

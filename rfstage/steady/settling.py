@@ -6,11 +6,10 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from rfstage.devicelaw import Array
 from rfstage.errors import ConvergenceError, OutOfRangeError
 from rfstage.stage import Stage
 from rfstage.steady.circuit import Circuit, check
-from rfstage.steady.network import network, networks
+from rfstage.steady.network import Complex, network, networks
 from rfstage.steady.report import Cycle, Figures, report
 from rfstage.steady.solve import FAILED, Solution, solve
 from rfstage.steady.state import SteadyState
@@ -49,13 +48,9 @@ def settle(stage: Stage, *, orders: int | None = None, start: SteadyState | None
 
     Notes
     -----
-    Feedback capacitance, the drive source's impedance, charge stored in junctions and heating are not in it,
-    and a steady state says nothing about stability.
-
-    References
-    ----------
-    M. S. Nakhla and J. Vlach, "A piecewise harmonic balance technique for determination of periodic response of
-    nonlinear systems", IEEE Trans. Circuits Syst. 23 (1976): the idea of the balance.
+    The equations and why they have one solution are in `rfstage.steady.balance`. Feedback capacitance, the drive
+    source's impedance, charge stored in junctions and heating are not in them, and a steady state says
+    nothing about stability.
 
     Examples
     --------
@@ -73,7 +68,7 @@ def settle(stage: Stage, *, orders: int | None = None, start: SteadyState | None
     >>> state.orders_solved, state.change_from_half_the_orders.settled, abs(state.balance_error) < 1e-9
     (32, True, True)
     >>> round(state.output_power, 1), round(state.efficiency, 2), round(state.conduction_angle_deg)
-    (0, 0, 0)
+    (10.9, 0.79, 120)
     """
     check(stage)
     if orders is None:
@@ -81,10 +76,10 @@ def settle(stage: Stage, *, orders: int | None = None, start: SteadyState | None
         ladder = network(stage, levels[1])
     else:
         _check_orders(orders)
-        levels = _levels(orders // 2) + [orders]
+        levels = [*_levels(orders // 2), orders]
         ladder = network(stage, orders)
     before: Figures | None = None
-    unknowns: Array | None = None
+    unknowns: Complex | None = None
     for level in levels:
         if ladder.frequencies.size < level:
             ladder = network(stage, level)
@@ -140,12 +135,12 @@ def settle_many(stages: Sequence[Stage], *, orders: int, start: SteadyState | No
     ...               supply=Supply(voltage=13.8, choke=1.6e-6), load=SeriesLoad(50 + 0j, 7.1e6))
     >>> sweep = [replace(stage, drive=Drive(bias=2.5, amplitude=volts)) for volts in (0.8, 0.9, 1.0)]
     >>> [round(state.dc_current, 2) for state in settle_many(sweep, orders=32)]
-    []
+    [0.52, 0.75, 1.0]
     """
     _check_orders(orders)
     for stage in stages:
         check(stage)
-    at_once = max(1, BLOCK // (2 * orders + 1)**2)
+    at_once = max(1, BLOCK // (2 * orders + 2)**2)
     found: dict[int, SteadyState] = {}
     # a hard corner wants more samples: kept apart, so that no stage's figures depend on its neighbours
     hard = [stage.device.threshold_softness == 0 for stage in stages]
@@ -161,8 +156,8 @@ def settle_many(stages: Sequence[Stage], *, orders: int, start: SteadyState | No
 def _settle_block(stages: Sequence[Stage], places: Sequence[int], orders: int,
                   start: SteadyState | None) -> list[SteadyState]:
     ladders = networks(stages, orders)
-    unknowns: Array | None = None
-    for level in [orders] if start is not None else _levels(orders):
+    unknowns: Complex | None = None
+    for level in _levels(orders):
         circuit = Circuit.of(stages, [ladder for ladder, _ in ladders], level)
         solution = solve(circuit, _start(circuit, unknowns, start))
         _raise_if_failed(solution, places)
@@ -198,23 +193,15 @@ def _raise_if_failed(solution: Solution, places: Sequence[int]) -> None:
                 "the supply, or a part lossless?)")
 
 
-def _resized(unknowns: Array, orders: int) -> Array:
-    """Return unknowns of another order number: cut off, or continued with zeros."""
-    n = unknowns.shape[1] // 2
-    kept = min(n, orders)
-    out = np.zeros((unknowns.shape[0], 2 * orders + 1))
-    out[:, :kept + 1] = unknowns[:, :kept + 1]
-    out[:, orders + 1:orders + 1 + kept] = unknowns[:, n + 1:n + 1 + kept]
-    return out
-
-
-def _start(circuit: Circuit, unknowns: Array | None, known: SteadyState | None) -> Array | None:
+def _start(circuit: Circuit, unknowns: Complex | None, known: SteadyState | None) -> Complex | None:
     """Return the first guess: from fewer orders, else from a known solution, else None."""
-    if unknowns is not None:
-        return _resized(unknowns, circuit.orders)
-    if known is None:
+    if unknowns is None and known is None:
         return None
-    node = known.device_voltage
-    guess = np.concatenate((node.real, node.imag[1:]))[np.newaxis, :].repeat(circuit.supply.size, axis=0)
-    guess[:, 0] -= circuit.supply[:, 0]
-    return _resized(guess, circuit.orders)
+    guess = np.zeros_like(circuit.impedance)
+    if unknowns is not None:
+        guess[:, :unknowns.shape[1]] = unknowns
+    elif known is not None:
+        shared = min(guess.shape[1], known.device_voltage.size)
+        guess[:, :shared] = known.device_voltage[:shared]
+        guess[:, :1] -= circuit.supply
+    return guess

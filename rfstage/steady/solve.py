@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from rfstage.devicelaw import Array
 from rfstage.steady.balance import Outcome, newton, spectrum
 from rfstage.steady.circuit import Circuit
+from rfstage.steady.network import Complex
 
 DIRECT, SOFTENED, STEPPED, FAILED = "direct", "softened knee", "drive steps", "failed"
 FIRST_FACTORS = (16.0, 64.0, 256.0, 1024.0)  # of softness, until one converges from the cold start
@@ -26,9 +27,9 @@ SWING_OF_START = 0.9  # of the supply: the most that the start's fundamental may
 
 @dataclass(frozen=True, slots=True)
 class Solution:
-    """Unknowns (S, 2N + 1) [V], merit and iterations (S,), and by which way each stage was solved."""
+    """Unknowns (S, N + 1) [V], merit and iterations (S,), and by which way each stage was solved."""
 
-    unknowns: Array
+    unknowns: Complex
     merit: Array
     iterations: NDArray[np.int64]
     methods: tuple[str, ...]
@@ -39,8 +40,8 @@ class Solution:
                         tuple(self.methods[row] for row in rows))
 
 
-def solve(circuit: Circuit, start: Array | None = None) -> Solution:
-    """Solve all stages, from a start (S, 2N + 1) [V] or cold; a stage that resists has the method ``FAILED``."""
+def solve(circuit: Circuit, start: Complex | None = None) -> Solution:
+    """Solve all stages, from a start (S, N + 1) [V] or cold; a stage that resists has the method ``FAILED``."""
     first = newton(circuit, cold_start(circuit) if start is None else start)
     unknowns, merit, iterations = first.unknowns, first.merit, first.iterations
     methods = [DIRECT] * merit.size
@@ -51,15 +52,13 @@ def solve(circuit: Circuit, start: Array | None = None) -> Solution:
     return Solution(unknowns, merit, iterations, tuple(methods))
 
 
-def cold_start(circuit: Circuit) -> Array:
+def cold_start(circuit: Circuit) -> Complex:
     """Return the first guess: the supply, and the fundamental of the unsaturated current, clipped."""
-    n = circuit.orders
-    guess = np.zeros((circuit.supply.shape[0], 2 * n + 1))
+    guess = np.zeros_like(circuit.impedance)
     flat = circuit.driven.flat_current(np.broadcast_to(circuit.supply, circuit.driven.overdrive.shape))
     swing = -circuit.impedance[:, 1] / circuit.scale[:, 1] * spectrum(flat, 1)[:, 1]
     most = SWING_OF_START * circuit.supply[:, 0]
-    swing *= most / np.maximum(np.abs(swing), most)
-    guess[:, 1], guess[:, n + 1] = swing.real, swing.imag
+    guess[:, 1] = swing * most / np.maximum(np.abs(swing), most)
     return guess
 
 
@@ -102,7 +101,7 @@ def _harden(circuit: Circuit, soft: Outcome, factor: float) -> tuple[Outcome, in
         factor, reached = target, out
 
 
-def _step_drive(circuit: Circuit, cold: Array) -> tuple[Outcome, int]:
+def _step_drive(circuit: Circuit, cold: Complex) -> tuple[Outcome, int]:
     """Raise the drive from nothing, each start extrapolated from the two solutions before."""
     spent, at, step = 0, 0.0, 0.25
     known = [(-1.0, np.zeros_like(cold)), (0.0, np.zeros_like(cold))]

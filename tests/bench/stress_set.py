@@ -48,7 +48,8 @@ def _accuracy(states: list[SteadyState]) -> None:
     print(f"  balance     max {balance.max():.1e}, 99 % below {np.percentile(balance, 99):.1e}; "
           f"residual max {max(s.residual for s in states):.1e}")
     swing = [s.minimum_voltage / s.stage.supply.voltage for s in states]
-    print(f"  reach a tenth of the supply {np.mean(np.less(swing, 0.1)):.0%}, swing below zero {np.mean(np.less(swing, 0)):.0%}")
+    print(f"  reach a tenth of the supply {np.mean(np.less(swing, 0.1)):.0%}, "
+          f"swing below zero {np.mean(np.less(swing, 0)):.0%}")
 
 
 def _spread(values: list[float] | list[int]) -> str:
