@@ -13,6 +13,7 @@ HIGH_CURRENT = 10.0  # A: a low-voltage supply that gives this heats rings and t
 DIP_CAUTION, DIP_STRONG = 0.03, 0.10
 FAR_ABOVE_SUPPLY = 3.0  # times the supply
 POWER_MISSED = 0.01  # of the asked power: below it a meter shows no difference
+LOSSY_TANK = 0.85  # efficiency below which a tank is mostly heat (common practice, no source)
 LOW_RESISTANCE = 4.0  # ohm
 LEAD = 5e-9  # H, of an input capacitor; its reactance must stay ten times below the capacitor's
 
@@ -180,6 +181,19 @@ def about_low_resistance(resistance: float, input_capacitance: float | None, car
     else:
         return []
     return [Caution("low resistance", f"{why}: use a higher supply, two devices, or a wide-band transformer.")]
+
+
+def about_tank_loss(efficiency: float, loaded_q: float) -> list[Caution]:
+    """Return what to change where the tank keeps much of the power; ``efficiency`` and ``loaded_q`` [-]."""
+    if efficiency >= LOSSY_TANK:
+        return []
+    return [
+        Caution(
+            "tank loss",
+            f"the tank keeps {100 * (1 - efficiency):.0f} % of the device's power at a loaded Q of {loaded_q:.3g}: coils "
+            "of higher Q, or a lower loaded Q where harmonics and output capacitance allow it.",
+        )
+    ]
 
 
 def about_resonance(resonance: tuple[float, float] | None) -> list[Caution]:

@@ -19,6 +19,8 @@ from dataclasses import dataclass
 from rfstage.errors import OutOfRangeError
 
 FAMILIES = ("bipolar", "fet", "tube")
+PUSH_PULL, PARALLEL = "push-pull", "parallel"
+PAIRS = (PUSH_PULL, PARALLEL)
 
 
 def _need(name: str, value: float, need: str, *, holds: bool, hint: str = "") -> None:
@@ -63,11 +65,16 @@ class Device:
     ``amplification_factor`` (mu of a triode) a ratio or None; ``output_capacitance`` in F; the ratings
     ``max_voltage``, ``max_current`` and ``max_dissipation`` in V, A and W, or None.
 
+    ``pair`` is None for a single device, or ``"push-pull"`` or ``"parallel"`` for two of them; every other number is
+    still that of one. ``imbalance`` d [-] is the relative difference of their transfer factors K: the first has
+    K (1 + d/2), the second K (1 − d/2).
+
     Raises
     ------
     OutOfRangeError
         If a value is outside its range: the transfer factor and the knee voltage are above 0, the exponent
-        is from 1 to 3, a softness, resistance or capacitance is 0 or more.
+        is from 1 to 3, a softness, resistance or capacitance is 0 or more, the imbalance from 0 to below 2, and
+        0 where there is no pair.
     """
 
     family: str
@@ -84,6 +91,8 @@ class Device:
     max_voltage: float | None = None
     max_current: float | None = None
     max_dissipation: float | None = None
+    pair: str | None = None
+    imbalance: float = 0.0
 
     def __post_init__(self) -> None:
         if self.family not in FAMILIES:
@@ -99,6 +108,11 @@ class Device:
         if self.amplification_factor is not None:
             _need("amplification_factor", self.amplification_factor, "above 0",
                   holds=self.amplification_factor > 0, hint="leave it out for none")
+        if self.pair is None:
+            _need("imbalance", self.imbalance, "0 where there is no pair", holds=self.imbalance == 0)
+        elif self.pair not in PAIRS:
+            raise OutOfRangeError("pair", self.pair, " or ".join(PAIRS))
+        _need("imbalance", self.imbalance, "from 0 to below 2", holds=0 <= self.imbalance < 2)
 
 
 def knee_from_lowest_voltage(lowest: float, peak_current: float, supply: float) -> tuple[float, float]:

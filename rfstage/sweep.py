@@ -16,15 +16,15 @@ import cmath
 import math
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, replace
+from typing import Any
 
 import numpy as np
 
-from rfstage.device import Device
 from rfstage.errors import InputError, OutOfRangeError
 from rfstage.fields import nearest
 from rfstage.ladder import Branch
 from rfstage.load import SeriesLoad
-from rfstage.stage import Drive, Stage, Supply
+from rfstage.stage import Stage
 from rfstage.steady import SteadyState, settle, settle_many
 
 PHASES = 24  # of each circle of standing-wave ratio
@@ -130,12 +130,12 @@ def with_value(stage: Stage, path: str, value: float) -> Stage:
     if path == "load.resistance":
         return replace(stage, load=SeriesLoad(complex(value), stage.carrier))
     head, _, key = path.partition(".")
+    changed: dict[str, Any] = {key or "value": value}
     if head in _PART_UNITS:
-        part: Drive | Supply | Device = getattr(stage, head)
-        return replace(stage, **{head: replace(part, **{key: value})})
-    return replace(
-        stage, branches=tuple(replace(b, **{key or "value": value}) if b.name == head else b for b in stage.branches)
-    )
+        part: Any = getattr(stage, head)
+        whole: dict[str, Any] = {head: replace(part, **changed)}
+        return replace(stage, **whole)
+    return replace(stage, branches=tuple(replace(b, **changed) if b.name == head else b for b in stage.branches))
 
 
 def fitted_value(stage: Stage, path: str) -> float | None:

@@ -223,7 +223,7 @@ def test_options_are_not_abbreviated(run):
         (("design", *GOOD, "--network", "l", "--loaded-q", "5"), "ask for network pi"),
         (("design", *GOOD, "--touchstone", "no/such/folder/x.s2p"), "is not there"),
         (("design", *GOOD, "--save", "same", "--touchstone", "same"), "same file name"),
-        (("design", *GOOD, "--output-capacitance", "100nF"), "device.output_capacitance"),
+        (("design", *GOOD, "--output-capacitance", "100nF", "--loaded-q", "10"), "device.output_capacitance"),
         (("design", *GOOD, "--power", ""), "empty"),
         (("design", *GOOD, "--power", "nan"), "not a finite number"),
         (("design", *GOOD, "--coil-q", "0"), "1 to"),

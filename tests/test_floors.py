@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import ast
 from collections.abc import Iterator
+from functools import cache
 from pathlib import Path
 
 import pytest
@@ -55,9 +56,14 @@ def room(name: str) -> str:
     return name.split(".")[0]
 
 
+@cache
+def parsed(path: Path) -> ast.Module:
+    return ast.parse(path.read_text(encoding="utf-8"))
+
+
 def imports_of(path: Path, *, outside_functions: bool = False) -> Iterator[tuple[str, int]]:
     """Every absolute module name a file imports, with its line; relative imports are made absolute."""
-    tree = ast.parse(path.read_text(encoding="utf-8"))
+    tree = parsed(path)
     inside: set[int] = set()
     if outside_functions:
         for node in ast.walk(tree):
@@ -170,7 +176,7 @@ def test_rooms_that_answer_before_numpy_use_the_standard_library_only(name):
 def test_rooms_below_the_files_neither_print_nor_open_anything(name):
     calls = {
         node.func.id
-        for node in ast.walk(ast.parse(NAMES[name].read_text(encoding="utf-8")))
+        for node in ast.walk(parsed(NAMES[name]))
         if isinstance(node, ast.Call) and isinstance(node.func, ast.Name)
     }
     assert not calls & {"print", "open", "input", "exec", "eval"}
@@ -189,11 +195,11 @@ def described(tree: ast.Module) -> Iterator[tuple[str, ast.AST]]:
 
 @rooms
 def test_every_room_opens_with_its_description(name):
-    assert ast.get_docstring(ast.parse(NAMES[name].read_text(encoding="utf-8")))
+    assert ast.get_docstring(parsed(NAMES[name]))
 
 
 @rooms
 def test_every_public_function_and_class_is_described(name):
-    tree = ast.parse(NAMES[name].read_text(encoding="utf-8"))
+    tree = parsed(NAMES[name])
     silent = [who for who, node in described(tree) if not ast.get_docstring(node)]  # type: ignore[arg-type]
     assert silent == []

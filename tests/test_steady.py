@@ -495,5 +495,20 @@ def test_unfinished_solution_is_never_returned(monkeypatch):
         return out
 
     monkeypatch.setattr("rfstage.steady.solve.newton", newton_that_fails)
-    with pytest.raises(ConvergenceError, match="residual of"):
+    with pytest.raises(ConvergenceError, match="steady state was not reached: a residual of"):
         settle(DESIGNED)
+    with pytest.raises(ConvergenceError, match="of stage 2 was not reached: a residual of"):
+        settle_many([driven(HARD, 0.0), DESIGNED], orders=32)
+
+
+def test_orders_that_fail_on_the_way_do_not_stop_the_wanted_ones(monkeypatch):
+    def newton_that_fails_when_coarse(part, start, **options):
+        out = newton(part, start, **options)
+        out.converged[:] &= part.orders > 16
+        return out
+
+    known = settle(DESIGNED, orders=32)
+    monkeypatch.setattr("rfstage.steady.solve.newton", newton_that_fails_when_coarse)
+    state = settle(DESIGNED, orders=32)
+    assert state.change_from_half_the_orders is None
+    assert np.abs(state.device_voltage - known.device_voltage).max() < 1e-9 * 13.8

@@ -3,12 +3,20 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from pathlib import Path
+
+from typing import TYPE_CHECKING
 
 from rfstage.cli.words import Parser, add_field_options, given, output
 from rfstage.files.job import read_job
 from rfstage.files.write import check_targets, write_files
 from rfstage.jobfields import JOB_FIELDS
+
+if TYPE_CHECKING:
+    from pathlib import Path
+
+    from rich.text import Text
+
+    from rfstage.report.page import Look
 
 ABOUT = """\
 Design a stage: from carrier, conduction angle and power to pulse, operating point, tank, harmonics.
@@ -30,7 +38,7 @@ _GROUPS = {
 def parser() -> Parser:
     """Return the command's parser."""
     made = Parser("design", ABOUT)
-    made.add_argument("job", nargs="?", metavar="JOB.toml", help="job file")
+    made.positional("job", "JOB.toml", "job file", optional=True)
     for group, title in _GROUPS.items():
         add_field_options(made, title, [f for f in JOB_FIELDS if f.path.startswith(f"{group}.")])
     files = made.add_argument_group("files and checks")
@@ -45,29 +53,30 @@ def run(words: Sequence[str]) -> int:
     """Run the command and return its exit status."""
     found = parser().read(words)
     job = read_job(found.job.strip() if found.job else None, given(found, JOB_FIELDS))
-    targets = [Path(name) for name in (found.touchstone, found.save, found.spice) if name]
-    check_targets(targets, overwrite=found.overwrite)
+    check_targets([name for name in (found.touchstone, found.save, found.spice) if name], overwrite=found.overwrite)
 
     from rfstage.designs.design import design, with_settled
     from rfstage.files.records import design_record
 
     made = with_settled(design(job, textbook=True)) if found.textbook else design(job)
-    contents: list[tuple[Path, str]] = []
+    contents: list[tuple[str | Path, str]] = []
     if found.touchstone:
         from rfstage.files.touchstone import touchstone_text
 
-        contents.append((Path(found.touchstone), touchstone_text(made)))
+        contents.append((found.touchstone, touchstone_text(made)))
     if found.save:
+        from pathlib import Path
+
         from rfstage.files.stage import stage_text
 
-        contents.append((Path(found.save), stage_text(made.stage, Path(found.save).parent)))
+        contents.append((found.save, stage_text(made.stage, Path(found.save).parent)))
     if found.spice:
         from rfstage.files.spice import spice_text
 
-        contents.append((Path(found.spice), spice_text(made.stage)))
+        contents.append((found.spice, spice_text(made.stage)))
     write_files(contents, overwrite=found.overwrite)
 
-    def page(look):  # type: ignore[no-untyped-def]
+    def page(look: Look) -> list[Text]:
         from rfstage.report.design import summary
 
         return summary(made, look)

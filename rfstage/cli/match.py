@@ -4,11 +4,18 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
+from typing import TYPE_CHECKING
+
 from rfstage.cli.words import Parser, add_field_options, given, output, read_all
 from rfstage.errors import InputError
 from rfstage.fields import Field
 from rfstage.files.job import LOAD_FILE_ENDING
 from rfstage.jobfields import CAPACITOR_Q, CARRIER, COIL_Q, INPUT_Q, LOADED_Q, NETWORK
+
+if TYPE_CHECKING:
+    from rich.text import Text
+
+    from rfstage.report.page import Look
 
 ABOUT = """\
 One network that turns the load into what the device should see, without choke, blocking capacitor
@@ -26,8 +33,8 @@ _OPTIONS = (CARRIER, NETWORK, LOADED_Q, INPUT_Q, COIL_Q, CAPACITOR_Q, _POWER, _H
 def parser() -> Parser:
     """Return the command's parser."""
     made = Parser("match", ABOUT)
-    made.add_argument("wanted", metavar="RESISTANCE", help="what the device should see: a resistance or R+jX")
-    made.add_argument("load", metavar="LOAD", help="the load: an impedance, or a file ending in .s1p")
+    made.positional("wanted", "RESISTANCE", "what the device should see: a resistance or R+jX")
+    made.positional("load", "LOAD", "the load: an impedance, or a file ending in .s1p")
     add_field_options(made, "network", _OPTIONS)
     return made
 
@@ -57,7 +64,7 @@ def run(words: Sequence[str]) -> int:
 
     made = single_network(**values)
 
-    def page(look):  # type: ignore[no-untyped-def]
+    def page(look: Look) -> list[Text]:
         from rfstage.report.small import match_page
 
         return match_page(look, tank=made.tank, load=made.load, transfer=made.transfer)

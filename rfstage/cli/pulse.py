@@ -5,8 +5,15 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 
+from typing import TYPE_CHECKING
+
 from rfstage.cli.words import Parser, output, read_all
 from rfstage.fields import Field
+
+if TYPE_CHECKING:
+    from rich.text import Text
+
+    from rfstage.report.page import Look
 
 ABOUT = """\
 Fourier coefficients of the current pulse of a device that conducts for part of each cycle.
@@ -21,9 +28,10 @@ _ORDERS = Field("", "orders", "count", "", 1, 10_000, option="--orders")
 def parser() -> Parser:
     """Return the command's parser."""
     made = Parser("pulse", ABOUT)
-    made.add_argument("angle", metavar="ANGLE", help="full conduction angle in degrees")
-    made.add_argument("--exponent", metavar="P", default="1", help="power law of the device, 1 to 3 [1]")
-    made.add_argument("--orders", metavar="N", default="10", help="highest order [10]")
+    made.positional("angle", "ANGLE", "full conduction angle in degrees")
+    pulse = made.add_argument_group("pulse")
+    pulse.add_argument("--exponent", metavar="P", default="1", help="power law of the device, 1 to 3 [1]")
+    pulse.add_argument("--orders", metavar="N", default="10", help="highest order [10]")
     return made
 
 
@@ -41,7 +49,7 @@ def run(words: Sequence[str]) -> int:
     a = pulse_coefficients(math.radians(angle / 2), highest_order=values["orders"], exponent=exponent)
     letter = operating_class(angle)
 
-    def page(look):  # type: ignore[no-untyped-def]
+    def page(look: Look) -> list[Text]:
         from rfstage.report.small import pulse_page
 
         return pulse_page(look, angle=angle, exponent=exponent, operating_class=letter, coefficients=numbers(a))

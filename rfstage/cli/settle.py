@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from pathlib import Path
 from typing import TYPE_CHECKING
 
 from rfstage.cli.words import Parser, output
@@ -25,7 +24,7 @@ the harmonics, and how far to trust it all.
 def parser() -> Parser:
     """Return the command's parser."""
     made = Parser("settle", ABOUT)
-    made.add_argument("stage", metavar="STAGE.toml", help="stage file, such as 'rfstage design --save' writes")
+    made.positional("stage", "STAGE.toml", "stage file, such as 'rfstage design --save' writes")
     made.add_argument("--spice", metavar="FILE", help="write the stage as a SPICE deck")
     return made
 
@@ -33,7 +32,7 @@ def parser() -> Parser:
 def run(words: Sequence[str]) -> int:
     """Run the command and return its exit status."""
     found = parser().read(words)
-    targets = [Path(found.spice)] if found.spice else []
+    targets = [found.spice] if found.spice else []
     check_targets(targets, overwrite=found.overwrite)
 
     from rfstage.files.records import settle_record

@@ -6,7 +6,6 @@ import math
 import sys
 import time
 from collections.abc import Callable, Sequence
-from pathlib import Path
 from typing import TYPE_CHECKING
 
 from rfstage.cli.words import Parser, output, read_all
@@ -32,7 +31,7 @@ PATIENCE = 1.0  # s: past it a progress bar shows
 def parser() -> Parser:
     """Return the command's parser."""
     made = Parser("sweep", ABOUT)
-    made.add_argument("stage", metavar="STAGE.toml", help="stage file")
+    made.positional("stage", "STAGE.toml", "stage file")
     made.add_argument("--of", metavar="PATH", required=True, help="the value to move")
     made.add_argument("--from", dest="first", metavar="X", required=True, help="where it begins, with its unit")
     made.add_argument("--to", dest="last", metavar="Y", required=True, help="where it ends")
@@ -44,7 +43,7 @@ def parser() -> Parser:
 def run(words: Sequence[str]) -> int:
     """Run the command and return its exit status."""
     found = parser().read(words)
-    targets = [Path(found.csv)] if found.csv else []
+    targets = [found.csv] if found.csv else []
     check_targets(targets, overwrite=found.overwrite)
 
     import numpy as np

@@ -28,10 +28,16 @@ class Parser(argparse.ArgumentParser):
             allow_abbrev=False,
             formatter_class=argparse.RawDescriptionHelpFormatter,
         )
+        # in a group of its own: an argument added to the parser itself loads what only --help needs
+        self._given = self.add_argument_group("given")
         everywhere = self.add_argument_group("output")
         everywhere.add_argument("--json", action="store_true", help="one JSON object on stdout and nothing else")
         everywhere.add_argument("--plain", action="store_true", help="no colour, no box art, ASCII")
         everywhere.add_argument("--overwrite", action="store_true", help="replace files that exist")
+
+    def positional(self, name: str, metavar: str, about: str, *, optional: bool = False) -> None:
+        """Add an argument that is known by its place."""
+        self._given.add_argument(name, metavar=metavar, help=about, nargs="?" if optional else None)
 
     def error(self, message: str) -> NoReturn:
         """Raise instead of exiting, so that every error takes the same way out."""

@@ -14,6 +14,7 @@ from rfstage.cautions import (
     about_low_resistance,
     about_resonance,
     about_settled,
+    about_tank_loss,
     safety,
 )
 from rfstage.designs.building import Built, build
@@ -258,6 +259,7 @@ def _cautions(
 ) -> tuple[Caution, ...]:
     job = settings.job
     found = about_dip(tank.trough_dip or 0.0)
+    found += about_tank_loss(tank.efficiency, tank.loaded_q)
     found += about_low_resistance(point.load_resistance, _input_capacitance(tank), job.carrier)
     found += about_resonance(strongest_resonance_below(ladder.branches, settings.load, job.carrier))
     if continued:

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Mapping
-from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from rfstage.errors import InputError
@@ -20,12 +20,12 @@ LOAD_FILE_ENDING = ".s1p"
 _RIVALS = {"load": ("load_file",), "loaded_q": ("input_q",), "input_q": ("loaded_q",)}
 
 
-def load_job(path: str | Path) -> Job:
+def load_job(path: str | os.PathLike[str]) -> Job:
     """Read a job file.
 
     Parameters
     ----------
-    path : str or Path
+    path : str or path
         A TOML file with the keys of `rfstage.jobfields.JOB_FIELDS`.
 
     Returns
@@ -42,13 +42,13 @@ def load_job(path: str | Path) -> Job:
     return read_job(path, {})
 
 
-def read_job(path: str | Path | None, options: Mapping[str, str]) -> Job:
+def read_job(path: str | os.PathLike[str] | None, options: Mapping[str, str]) -> Job:
     """Return the job of a file and options by field name; options win. Errors as `load_job`."""
     problems: list[str] = []
     values: dict[str, Any] = {}
     where = {field.name: field.path for field in JOB_FIELDS}
     if path is not None:
-        values = _from_file(Path(path), problems)
+        values = _from_file(os.fspath(path), problems)
         where = {name: f"{path}: {key}" for name, key in where.items()}
     for field in JOB_FIELDS:
         if field.name in options:
@@ -62,7 +62,7 @@ def read_job(path: str | Path | None, options: Mapping[str, str]) -> Job:
             problems.append(f"{where[name]}: missing ({field.help}; option {field.option})")
     problems += conflicts(values)
     file = values.get("load_file")
-    if file is not None and not Path(file).is_file():
+    if file is not None and not os.path.isfile(file):
         problems.append(f"load.file: {file} is not there")
     if problems:
         raise InputError(*problems)
@@ -90,7 +90,7 @@ def _take_option(field: Field, text: str, values: dict[str, Any], problems: list
         problems.append(f"{field.option}: {error}")
 
 
-def _from_file(path: Path, problems: list[str]) -> dict[str, Any]:
+def _from_file(path: str, problems: list[str]) -> dict[str, Any]:
     values: dict[str, Any] = {}
     groups: dict[str, list[Field]] = {}
     for field in JOB_FIELDS:
@@ -103,5 +103,5 @@ def _from_file(path: Path, problems: list[str]) -> dict[str, Any]:
     if "load_file" in values:
         if "load" in values:
             problems.append(f"{path}: load: got both an impedance and a file; give one of them")
-        values["load_file"] = str(path.parent / values["load_file"])
+        values["load_file"] = os.path.join(os.path.dirname(path), values["load_file"])
     return values

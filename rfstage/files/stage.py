@@ -7,7 +7,7 @@ import os
 from pathlib import Path
 from typing import Any
 
-from rfstage.device import Device, JunctionCapacitance, ReverseConduction
+from rfstage.device import PAIRS, Device, JunctionCapacitance, ReverseConduction
 from rfstage.errors import InputError
 from rfstage.fields import LOSSLESS, Field
 from rfstage.files.tables import parse_toml, read_table
@@ -40,6 +40,10 @@ _DEVICE = (
     Field("max_voltage", "max_voltage", "real", "V", 0, 1e7, True),
     Field("max_current", "max_current", "real", "A", 0, 1e7, True),
     Field("max_dissipation", "max_dissipation", "real", "W", 0, 1e8, True),
+)
+_PAIR = (
+    Field("pair", "pair", "choice", choices=PAIRS),
+    Field("imbalance", "imbalance", "real", "", 0, 2),
 )
 _JUNCTION = (
     Field("at_zero", "at_zero", "real", "F", 0, 1e-3, True),
@@ -106,6 +110,8 @@ def stage_text(stage: Stage, folder: Path) -> str:
         f'family = "{device.family}"',
     ]
     lines += _lines(_DEVICE[1:], device)
+    if device.pair is not None:
+        lines += _lines(_PAIR, device)
     if device.junction_capacitance is not None:
         lines.append(f"junction_capacitance = {_inline(_JUNCTION, device.junction_capacitance)}")
     if device.reverse_conduction is not None:
@@ -127,7 +133,7 @@ def stage_text(stage: Stage, folder: Path) -> str:
 def _written(field: Field, value: Any) -> str:
     if field.kind == "q":
         return f'"{LOSSLESS}"' if math.isinf(value) else repr(value)
-    if field.kind == "text":
+    if field.kind in ("text", "choice"):
         return f'"{value}"'
     return f'"{exact_text(value, field.unit)}"' if field.unit else repr(value)
 
@@ -202,7 +208,7 @@ def load_stage(path: str | Path) -> Stage:
     tables = {name: document.get(name, {}) for name in _TABLES}
     read: dict[str, dict[str, Any]] = {}
     for name, fields, also in (
-        ("device", _DEVICE, ("junction_capacitance", "reverse_conduction")),
+        ("device", (*_DEVICE, *_PAIR), ("junction_capacitance", "reverse_conduction")),
         ("drive", _DRIVE, ()),
         ("supply", _SUPPLY, ()),
         ("load", _LOAD, ()),
@@ -220,6 +226,7 @@ def load_stage(path: str | Path) -> Stage:
     _missing(read, needed, str(path), problems)
     junction = _read_inline(tables["device"], "junction_capacitance", _JUNCTION, JunctionCapacitance, path, problems)
     reverse = _read_inline(tables["device"], "reverse_conduction", _REVERSE, ReverseConduction, path, problems)
+    _check_imbalance(read["device"], path, problems)
     load = _read_load(read["load"], top.get("carrier"), path, problems)
     rule = read["limit"].get("rule")
     if rule is not None:
@@ -253,6 +260,15 @@ def _missing(
             full = f"{path}: {table}.{key}" if table else f"{path}: {key}"
             if key not in read[table] and not any(problem.startswith(full + ":") for problem in problems):
                 problems.append(f"{full}: missing")
+
+
+def _check_imbalance(device: dict[str, Any], path: Path, problems: list[str]) -> None:
+    where = f"{path}: device.imbalance"
+    if "imbalance" in device and "pair" not in device:
+        if not any(problem.startswith(f"{path}: device.pair:") for problem in problems):
+            problems.append(f"{where}: only a pair has one; give device.pair ({' or '.join(PAIRS)}) or leave it out")
+    elif device.get("imbalance") == 2:
+        problems.append(f"{where}: got 2; allowed 0 to below 2, since at 2 the second device gives nothing")
 
 
 def _read_inline(

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
+import os
 import re
 from collections.abc import Iterable, Sequence
-from pathlib import Path
 from typing import Any
 
 from rfstage.errors import FileError, InputError
@@ -12,7 +12,7 @@ from rfstage.fields import Field, nearest, read
 from rfstage.quantity import QuantityError
 
 
-def parse_toml(path: Path) -> dict[str, Any]:
+def parse_toml(path: str | os.PathLike[str]) -> dict[str, Any]:
     """Return a TOML file's content.
 
     Raises
@@ -23,7 +23,8 @@ def parse_toml(path: Path) -> dict[str, Any]:
         If it is not TOML, with the line, and a hint at quotes around quantities.
     """
     try:
-        text = path.read_bytes().decode("utf-8")
+        with open(path, "rb") as file:
+            text = file.read().decode("utf-8")
     except OSError as error:
         raise FileError(f"{path}: can't be read ({error.strerror})") from None
     except UnicodeDecodeError:

@@ -7,12 +7,15 @@ from __future__ import annotations
 
 import os
 from collections.abc import Sequence
-from pathlib import Path
+from typing import TYPE_CHECKING
 
 from rfstage.errors import FileError
 
+if TYPE_CHECKING:
+    from pathlib import Path
 
-def check_targets(paths: Sequence[Path], *, overwrite: bool) -> None:
+
+def check_targets(names: Sequence[str | Path], *, overwrite: bool) -> None:
     """Refuse targets that can't be written, all in one go.
 
     Raises
@@ -20,6 +23,12 @@ def check_targets(paths: Sequence[Path], *, overwrite: bool) -> None:
     FileError
         With one line for each: no such folder, a folder by that name, an existing file, one name twice.
     """
+    if not names:
+        return  # most runs write nothing, and need no paths loaded
+
+    from pathlib import Path
+
+    paths = [Path(name) for name in names]
     problems = []
     for path in paths:
         if not path.parent.is_dir():
@@ -36,7 +45,7 @@ def check_targets(paths: Sequence[Path], *, overwrite: bool) -> None:
         raise FileError("\n".join(problems))
 
 
-def write_files(contents: Sequence[tuple[Path, str]], *, overwrite: bool) -> None:
+def write_files(contents: Sequence[tuple[str | Path, str]], *, overwrite: bool) -> None:
     """Write all the texts as UTF-8, or none of them.
 
     Raises
@@ -44,12 +53,17 @@ def write_files(contents: Sequence[tuple[Path, str]], *, overwrite: bool) -> Non
     FileError
         If a target can't be written; then nothing was.
     """
-    check_targets([path for path, _ in contents], overwrite=overwrite)
-    import tempfile  # it loads a dozen modules, and most runs write nothing
+    check_targets([name for name, _ in contents], overwrite=overwrite)
+    if not contents:
+        return
+
+    import tempfile
+    from pathlib import Path
 
     aside: list[tuple[str, Path]] = []
     try:
-        for path, text in contents:
+        for target, text in contents:
+            path = Path(target)
             handle, name = tempfile.mkstemp(dir=path.parent, prefix=f".{path.name}.")
             aside.append((name, path))
             with os.fdopen(handle, "w", encoding="utf-8", newline="\n") as file:

@@ -101,7 +101,7 @@ def _holds(branches: Sequence[Branch], wanted: complex, load: complex, carrier: 
     """Return whether impedance and power balance stand to nine digits; extreme ratios lose them to rounding."""
     walk = Ladder(branches).walk(carrier, load)
     z = complex(walk.impedance)
-    taken = abs(walk.transimpedance) ** 2 * (1 / load).real + 2 * sum(state.loss for state in walk.branches)
+    taken = abs(complex(walk.transimpedance)) ** 2 * (1 / load).real + 2 * sum(float(s.loss) for s in walk.branches)
     return bool(abs(z - wanted) <= _KEPT * abs(wanted) and abs(z.real - taken) <= _KEPT * z.real)
 
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 from rfstage.errors import ConvergenceError, ImpossibleError
 from rfstage.ladder import Branch, Ladder
@@ -135,7 +135,8 @@ def _solve_pi(request: Request, feed: Sequence[Branch], wanted: complex, target:
         if load.imag >= 0:
             raise ImpossibleError(
                 f"network pi: the output capacitor comes out at nothing, from the losses or from a blocking capacitor "
-                f"with too much reactance; a loaded Q above {least:.3g} by some margin, or a larger tank.blocking, helps")
+                f"with too much reactance; a loaded Q above {least:.3g} by some margin, or a larger tank.blocking, "
+                "helps")
         raise ImpossibleError(
             f"network pi: the load's own capacitance is more than the output capacitor this Q leaves; a loaded Q "
             f"above about {least:.3g} leaves room")

@@ -16,7 +16,10 @@ from rfstage.ladder import Branch, Ladder
 from rfstage.load import Load
 
 # From the carrier downwards and upwards, relative to it, close together near it
-_BOTH_WAYS = np.array([1 - np.append(0, np.geomspace(1e-5, 0.9995, 500)), 1 + np.append(0, np.geomspace(1e-5, 30.0, 500))])
+_BOTH_WAYS = np.array([
+    1 - np.append(0, np.geomspace(1e-5, 0.9995, 500)),
+    1 + np.append(0, np.geomspace(1e-5, 30.0, 500)),
+])
 
 
 def impedance_and_loaded_q(

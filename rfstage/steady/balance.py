@@ -31,8 +31,18 @@ from rfstage.steady.circuit import Circuit
 from rfstage.steady.network import Complex
 
 TOLERANCE = 1e-11  # of the supply voltage, or of the current's response where that is less
-ITERATIONS = 25  # past these, softening the knee is the shorter way
-HALVINGS = 4  # of one step: where more are needed, the knee is in the way
+
+
+@dataclass(frozen=True, slots=True)
+class Effort:
+    """How long Newton tries: iterations, and halvings of one step."""
+
+    iterations: int
+    halvings: int
+
+
+QUICK = Effort(25, 4)  # past these the knee is in the way, and softening it is shorter
+PATIENT = Effort(60, 12)
 
 
 @dataclass(frozen=True, slots=True)
@@ -154,7 +164,7 @@ def _slopes(wave: Array, n: int) -> tuple[Complex, Complex]:
     return toeplitz + hankel, toeplitz - hankel
 
 
-def newton(circuit: Circuit, start: Complex, *, iterations: int = ITERATIONS) -> Outcome:
+def newton(circuit: Circuit, start: Complex, *, effort: Effort = QUICK) -> Outcome:
     """Solve from a start, shape (S, N + 1) [V]; stages that end early no longer cost anything.
 
     A step is halved until the merit falls, for those stages only where it does not. A stage whose
@@ -164,10 +174,10 @@ def newton(circuit: Circuit, start: Complex, *, iterations: int = ITERATIONS) ->
                   np.zeros(start.shape[0], dtype=np.int64))
     rows = np.arange(start.shape[0])
     point = evaluate(circuit, start)
-    for spent in range(iterations + 1):
+    for spent in range(effort.iterations + 1):
         solved = point.merit <= point.goal
         stuck = ~np.isfinite(point.merit)
-        ended = solved | stuck if spent < iterations else np.ones_like(solved)
+        ended = solved | stuck if spent < effort.iterations else np.ones_like(solved)
         _record(out, rows, point, ended, spent)
         out.converged[rows[solved]] = True
         if ended.any():
@@ -177,7 +187,7 @@ def newton(circuit: Circuit, start: Complex, *, iterations: int = ITERATIONS) ->
             rows, circuit, point = rows[kept], circuit.take(kept), point.take(kept)
         step = _step(circuit, point)
         trial = evaluate(circuit, point.unknowns + step)
-        lost = _search(circuit, point, step, trial)
+        lost = _search(circuit, point, step, trial, effort.halvings)
         if lost.size:
             _record(out, rows, point, lost, spent + 1)
             kept = np.setdiff1d(np.arange(rows.size), lost)
@@ -207,11 +217,11 @@ def _step(circuit: Circuit, point: Point) -> Complex:
     return steps.view(np.complex128)
 
 
-def _search(circuit: Circuit, point: Point, step: Complex, trial: Point) -> NDArray[np.int64]:
+def _search(circuit: Circuit, point: Point, step: Complex, trial: Point, halvings: int) -> NDArray[np.int64]:
     """Shorten steps that did not lower the merit, writing into ``trial``; return the rows that never did."""
     worse = np.flatnonzero(~(trial.merit < point.merit))
     fraction = 1.0
-    for _ in range(HALVINGS):
+    for _ in range(halvings):
         if not worse.size:
             break
         fraction /= 2

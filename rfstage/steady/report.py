@@ -102,6 +102,8 @@ def report(stages: Sequence[Stage], ladder: Network, cycle: Cycle, solution: Sol
     found = dissipation + charge_power + load_powers.sum(axis=1) + losses.sum(axis=0)
     levels = _levels(load_powers, cycle.device)
     phase = 360 / samples * np.arange(samples)
+    for shared in (phase, cycle.volts, cycle.amperes, cycle.node, cycle.device):
+        shared.flags.writeable = False
     extremes = zip(cycle.volts.min(axis=1).tolist(), cycle.volts.max(axis=1).tolist(),
                    cycle.amperes.max(axis=1).tolist(), strict=True)
     names = [branch.name for branch in ladder.branches]

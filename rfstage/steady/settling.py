@@ -11,7 +11,7 @@ from rfstage.stage import Stage
 from rfstage.steady.circuit import Circuit, check
 from rfstage.steady.network import Complex, network, networks
 from rfstage.steady.report import Cycle, Figures, report
-from rfstage.steady.solve import FAILED, Solution, solve
+from rfstage.steady.solve import FAILED, solve
 from rfstage.steady.state import SteadyState
 
 FEWEST, MOST_CHOSEN, MOST = 10, 256, 1024  # orders: that may be asked, that the choice goes to, that may be asked
@@ -85,7 +85,11 @@ def settle(stage: Stage, *, orders: int | None = None, start: SteadyState | None
             ladder = network(stage, level)
         circuit = Circuit.of([stage], [ladder], level)
         solution = solve(circuit, _start(circuit, unknowns, start))
-        _raise_if_failed(solution, [0])
+        if FAILED in solution.methods:
+            if level == levels[-1]:
+                raise _not_reached("the steady state", float(solution.merit[0]))
+            before = unknowns = None
+            continue
         unknowns = solution.unknowns
         cycle = Cycle.of(circuit, solution)
         figures = Figures.of(cycle, ladder)
@@ -160,8 +164,10 @@ def _settle_block(stages: Sequence[Stage], places: Sequence[int], orders: int,
     for level in _levels(orders):
         circuit = Circuit.of(stages, [ladder for ladder, _ in ladders], level)
         solution = solve(circuit, _start(circuit, unknowns, start))
-        _raise_if_failed(solution, places)
         unknowns = solution.unknowns
+    if FAILED in solution.methods:
+        row = solution.methods.index(FAILED)
+        raise _not_reached(f"the steady state of stage {places[row] + 1}", float(solution.merit[row]))
     cycle = Cycle.of(circuit, solution)
     states: list[SteadyState] = []
     for ladder, rows in ladders:
@@ -184,13 +190,10 @@ def _check_orders(orders: int) -> None:
         raise OutOfRangeError("orders", orders, f"from {FEWEST} to {MOST}")
 
 
-def _raise_if_failed(solution: Solution, places: Sequence[int]) -> None:
-    for row, (place, method) in enumerate(zip(places, solution.methods, strict=True)):
-        if method == FAILED:
-            raise ConvergenceError(
-                f"the steady state of stage {place + 1} was not reached: a residual of "
-                f"{solution.merit[row]:.2g} of the supply voltage is left (is the knee voltage far below 0.1 % of "
-                "the supply, or a part lossless?)")
+def _not_reached(what: str, residual: float) -> ConvergenceError:
+    return ConvergenceError(
+        f"{what} was not reached: a residual of {residual:.2g} of the supply voltage is left (is the knee voltage far "
+        "below 0.1 % of the supply, or a part lossless?)")
 
 
 def _start(circuit: Circuit, unknowns: Complex | None, known: SteadyState | None) -> Complex | None:

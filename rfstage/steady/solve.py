@@ -14,7 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from rfstage.devicelaw import Array
-from rfstage.steady.balance import Outcome, newton, spectrum
+from rfstage.steady.balance import PATIENT, QUICK, Effort, Outcome, newton, spectrum
 from rfstage.steady.circuit import Circuit
 from rfstage.steady.network import Complex
 
@@ -71,34 +71,35 @@ def _rescue(circuit: Circuit, *, tried_cold: bool) -> tuple[Outcome, str, int]:
         spent += int(out.iterations[0])
         if out.converged[0]:
             return out, DIRECT, spent
-    for first in FIRST_FACTORS:
-        out = newton(circuit.softened(first), cold)
-        spent += int(out.iterations[0])
+    for effort in (QUICK, PATIENT):
+        out, more = _by_softening(circuit, cold, effort)
+        spent += more
         if out.converged[0]:
-            out, more = _harden(circuit, out, first)
-            spent += more
-            break
-    if out.converged[0]:
-        return out, SOFTENED, spent
+            return out, SOFTENED, spent
     out, more = _step_drive(circuit, cold)
     return out, STEPPED if out.converged[0] else FAILED, spent + more
 
 
-def _harden(circuit: Circuit, soft: Outcome, factor: float) -> tuple[Outcome, int]:
-    """Follow the solution from a softened knee to the real one."""
-    spent, ratio, reached = 0, HARDENING, soft
-    while True:
+def _by_softening(circuit: Circuit, cold: Complex, effort: Effort) -> tuple[Outcome, int]:
+    """Soften the knee until Newton converges, and follow the solution back to the real knee."""
+    spent = 0
+    for factor in FIRST_FACTORS:
+        out = newton(circuit.softened(factor), cold, effort=effort)
+        spent += int(out.iterations[0])
+        if out.converged[0]:
+            break
+    reached, ratio = out, HARDENING
+    while reached.converged[0] and ratio > LEAST_RATIO:
         target = max(factor / ratio, 1.0)
-        out = newton(circuit.softened(target) if target > 1 else circuit, reached.unknowns)
+        out = newton(circuit.softened(target) if target > 1 else circuit, reached.unknowns, effort=effort)
         spent += int(out.iterations[0])
         if not out.converged[0]:
             ratio = ratio**0.5
-            if ratio < LEAST_RATIO:
-                return out, spent
-            continue
-        if target == 1:
-            return out, spent
-        factor, reached = target, out
+        elif target == 1:
+            break
+        else:
+            factor, reached = target, out
+    return out, spent
 
 
 def _step_drive(circuit: Circuit, cold: Complex) -> tuple[Outcome, int]:

@@ -18,6 +18,7 @@ PROGRAM = str(Path(sys.executable).parent / "rfstage")
 JOB = ("--carrier", "7.1MHz", "--power", "10W", "--angle", "120deg", "--supply", "13.8V")
 CASES = (
     ("design --textbook", (PROGRAM, "design", *JOB, "--textbook"), 1.6),
+    ("design (corrected)", (PROGRAM, "design", *JOB), 2.2),
     ("--help", (PROGRAM, "--help"), 0.35),
     ("design --help", (PROGRAM, "design", "--help"), 0.35),
     ("a wrong option", (PROGRAM, "design", "--carier", "7MHz"), 0.35),
