@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     from rfstage.load import MeasuredLoad, SeriesLoad
     from rfstage.pulse import angle_from_ratio, pulse_coefficients
     from rfstage.stage import Stage
+    from rfstage.steady import SteadyState, settle
 
 _HOME = {
     "Branch": "ladder",
@@ -29,12 +30,13 @@ _HOME = {
     "RfstageError": "errors",
     "SeriesLoad": "load",
     "SingleNetwork": "designs.single",
-    "Stage": "stage",
+    "Stage": "stage", "SteadyState": "steady",
     "angle_from_ratio": "pulse",
     "design": "designs.design",
     "load_job": "files.job",
     "load_stage": "files.stage",
     "pulse_coefficients": "pulse",
+    "settle": "steady",
     "single_network": "designs.single",
 }
 __all__ = [
@@ -47,11 +49,13 @@ __all__ = [
     "SeriesLoad",
     "SingleNetwork",
     "Stage",
+    "SteadyState",
     "angle_from_ratio",
     "design",
     "load_job",
     "load_stage",
     "pulse_coefficients",
+    "settle",
     "single_network",
 ]
 

@@ -97,8 +97,8 @@ def _linear(theta: NDArray[np.float64], highest_order: int) -> NDArray[np.float6
     for here, first_two in ((small, _by_series), (~small, _in_closed_form)):
         out[:2, here] = first_two(t[here])[: highest_order + 1]
     if highest_order >= 2:
-        common = 16 / math.pi * np.sin(t / 2) * np.cos(t / 2) ** 3
-        cosine = np.cos(t)
+        cosine, half = np.cos(t), np.cos(t / 2)
+        common = 16 / math.pi * np.sin(t / 2) * half * half * half
         before, now = np.zeros_like(t), np.ones_like(t)
         for n in range(2, highest_order + 1):
             np.multiply(common / (n * (n * n - 1.0)), now, out=out[n])

@@ -14,7 +14,7 @@ from __future__ import annotations
 
 import cmath
 import math
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 from typing import Any
 
@@ -28,8 +28,8 @@ from rfstage.stage import Stage
 from rfstage.steady import SteadyState, settle, settle_many
 
 PHASES = 24  # of each circle of standing-wave ratio
-TOGETHER = 40  # orders: up to here a batch from the middle is fastest, beyond it a chain from point to point
-CHUNK = 20  # points solved between two reports of progress
+TOGETHER = 64  # orders: up to here a batch from the middle is fastest, beyond it a chain from point to point
+CHUNK = 10  # points solved between two reports of progress
 LOAD = "load"
 _UNITS = {"capacitor": "F", "coil": "H", "resistor": "ohm"}
 _BRANCH_UNITS = {"q": "", "series_resistance": "ohm", "lead_inductance": "H", "self_capacitance": "F"}
@@ -204,21 +204,33 @@ def sweep(
 
 
 def _solve(stages: Sequence[Stage], progress: Callable[[int, int], None] | None) -> tuple[SteadyState, ...]:
+    """Solve all stages with the orders that the hardest of three probes needs: together, or as a chain."""
     middle = len(stages) // 2
-    probes = [settle(stages[k]) for k in sorted({0, middle, len(stages) - 1})]
-    orders = max(probe.orders_solved for probe in probes)
-    start = settle_many([stages[middle]], orders=orders)[0]
+    orders = max(settle(stages[k]).orders_solved for k in sorted({0, middle, len(stages) - 1}))
     points: list[SteadyState] = []
-    for chunk in _chunks(stages, CHUNK if orders <= TOGETHER else 1):
-        points += settle_many(chunk, orders=orders, start=start if orders <= TOGETHER or not points else points[-1])
-        if progress is not None:
-            progress(len(points), len(stages))
+    if orders <= TOGETHER:
+        start = settle_many([stages[middle]], orders=orders)[0]
+        for first in range(0, len(stages), CHUNK):
+            points += settle_many(stages[first : first + CHUNK], orders=orders, start=points[-1] if points else start)
+            _tell(progress, points, stages)
+        return tuple(points)
+    for stage in stages:
+        points += settle_many([stage], orders=orders, start=_predicted(points))
+        _tell(progress, points, stages)
     return tuple(points)
 
 
-def _chunks(stages: Sequence[Stage], size: int) -> Iterator[Sequence[Stage]]:
-    for first in range(0, len(stages), size):
-        yield stages[first : first + size]
+def _tell(progress: Callable[[int, int], None] | None, points: Sequence[SteadyState], stages: Sequence[Stage]) -> None:
+    if progress is not None:
+        progress(len(points), len(stages))
+
+
+def _predicted(points: Sequence[SteadyState]) -> SteadyState | None:
+    """Return a guess for the next point of a chain: the last, moved on by as much as it moved before."""
+    if len(points) < 2:
+        return points[-1] if points else None
+    last, before = points[-1].device_voltage, points[-2].device_voltage
+    return replace(points[-1], device_voltage=2 * last - before)
 
 
 def _extreme(values: Sequence[float], figures: Sequence[float], *, sign: int = 1) -> Extreme | None:

@@ -3,6 +3,9 @@
 from __future__ import annotations
 
 import os
+
+os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # before numpy loads: small matrices, two cores
+
 import subprocess
 import sys
 from pathlib import Path
