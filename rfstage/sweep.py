@@ -206,31 +206,26 @@ def sweep(
 def _solve(stages: Sequence[Stage], progress: Callable[[int, int], None] | None) -> tuple[SteadyState, ...]:
     """Solve all stages with the orders that the hardest of three probes needs: together, or as a chain."""
     middle = len(stages) // 2
-    orders = max(settle(stages[k]).orders_solved for k in sorted({0, middle, len(stages) - 1}))
+    probe, orders = None, 0
+    for k in sorted({middle, len(stages) - 1, 0}, reverse=True):
+        probe = settle(stages[k], start=probe)
+        orders = max(orders, probe.orders_solved)
+    together = CHUNK if orders <= TOGETHER else 1
     points: list[SteadyState] = []
-    if orders <= TOGETHER:
-        start = settle_many([stages[middle]], orders=orders)[0]
-        for first in range(0, len(stages), CHUNK):
-            points += settle_many(stages[first : first + CHUNK], orders=orders, start=points[-1] if points else start)
-            _tell(progress, points, stages)
-        return tuple(points)
-    for stage in stages:
-        points += settle_many([stage], orders=orders, start=_predicted(points))
-        _tell(progress, points, stages)
+    for first in range(0, len(stages), together):
+        points += settle_many(stages[first : first + together], orders=orders,
+                              start=_predicted(points, together) if points else probe)
+        if progress is not None:
+            progress(len(points), len(stages))
     return tuple(points)
 
 
-def _tell(progress: Callable[[int, int], None] | None, points: Sequence[SteadyState], stages: Sequence[Stage]) -> None:
-    if progress is not None:
-        progress(len(points), len(stages))
-
-
-def _predicted(points: Sequence[SteadyState]) -> SteadyState | None:
-    """Return a guess for the next point of a chain: the last, moved on by as much as it moved before."""
+def _predicted(points: Sequence[SteadyState], together: int) -> SteadyState:
+    """Return a guess for the next ``together`` points: the last, moved on to their middle as it moved before."""
     if len(points) < 2:
-        return points[-1] if points else None
+        return points[-1]
     last, before = points[-1].device_voltage, points[-2].device_voltage
-    return replace(points[-1], device_voltage=2 * last - before)
+    return replace(points[-1], device_voltage=last + (together + 1) / 2 * (last - before))
 
 
 def _extreme(values: Sequence[float], figures: Sequence[float], *, sign: int = 1) -> Extreme | None:
