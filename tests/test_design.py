@@ -8,7 +8,7 @@ from collections.abc import Iterator
 
 import numpy as np
 import pytest
-from hypothesis import HealthCheck, given, settings
+from hypothesis import HealthCheck, example, given, settings
 from hypothesis import strategies as st
 from reference_circuits import load_volts, loaded_q_by_energy, seen_impedance
 
@@ -468,6 +468,44 @@ def test_any_sane_job_ends_in_a_sound_design_or_in_an_error_for_people(job):
 
 @settings(max_examples=200, deadline=None, suppress_health_check=list(HealthCheck))
 @given(job=absurd)
+@example(job={"carrier": 2.45e7, "power": 10428.7, "conduction_angle": 1.2e-7, "supply": 351.0})
+@example(
+    job={
+        "carrier": 9e6,
+        "power": 1e-4,
+        "conduction_angle": 360.0,
+        "supply": 9.025618324258871e-4,
+        "minimum_voltage": 9.025618324249846e-4,
+        "load": 339273.1 + 0j,
+    }
+)
+@example(
+    job={
+        "carrier": 1408439735.39,
+        "power": 1.8367e-8,
+        "conduction_angle": 360.0,
+        "supply": 0.18305725779630,
+        "minimum_voltage": 0.0,
+        "coil_q": LOSSLESS,
+        "capacitor_q": LOSSLESS,
+        "choke_q": LOSSLESS,
+        "load": 450.78570942150054 + 36016.49450241337j,
+        "choke": 0.0271,
+        "family": "fet",
+    }
+)
+@example(
+    job={
+        "carrier": 24208.4,
+        "power": 1.4e-11,
+        "conduction_angle": 172.58,
+        "supply": 6517.35,
+        "coil_q": LOSSLESS,
+        "capacitor_q": LOSSLESS,
+        "output_capacitance": 1.22e-15,
+        "network": "l-high-pass",
+    }
+)
 def test_any_absurd_job_ends_in_a_sound_design_or_in_an_error_for_people(job):
     try:
         d = designed(**job)

@@ -212,6 +212,23 @@ def test_output_capacitance_beyond_the_shunt_arm_turns_an_l_round_and_stays_a_fi
     assert abs(seen_impedance((*feed, *parts), 50, 14e6)[0] / 600 - 1) < 1e-9
 
 
+@pytest.mark.parametrize("wanted", [1 - 1j, 1 + 1j])
+def test_search_that_meets_a_part_of_nothing_on_its_way_ends_in_an_answer_or_a_refusal(wanted):
+    # steps of exactly half the start lead it there with parts of Q 1
+    try:
+        parts = solved(request_for("l-high-pass", coil_q=1, capacitor_q=1), wanted, 2, 7e6)
+    except ImpossibleError:
+        return
+    assert abs(seen_impedance(parts, 2, 7e6)[0] / wanted - 1) < 1e-9
+
+
+def test_l_behind_a_capacitance_of_extreme_q_is_exact_at_the_device_and_not_only_behind_it():
+    # 5 megohm beside 48 pF: what is a part in 1e12 behind the capacitance is one in 1e9 before it
+    feed = (output_capacitance(47.7e-12),)
+    parts = solved(request_for("l-high-pass"), 5.05e6, 50, 5.7e6, feed)
+    assert abs(complex(Ladder((*feed, *parts)).impedance(5.7e6, 50 + 0j)) / 5.05e6 - 1) < 1e-9
+
+
 # --- pi networks -----------------------------------------------------------------------------------------
 
 # SOURCE: the design relations by virtual resistance, recomputed and verified by the input impedance of the

@@ -212,6 +212,13 @@ def test_drive_from_a_transfer_factor_reaches_the_peak_and_conducts_for_the_angl
     )
 
 
+def test_drive_of_a_vanishing_angle_keeps_its_digits():
+    # 1 - cos of 1e-9 rad is 5e-19, which one minus a cosine of 16 digits would call nothing
+    bias, amplitude, _ = drive(half_angle=1e-9, peak_current=2.0, transfer_factor=4.0)
+    assert amplitude == pytest.approx(0.5 / 5e-19, rel=1e-12)
+    assert bias == pytest.approx(0.7 - amplitude, rel=1e-12)
+
+
 def test_drive_from_a_bias_alone_has_the_amplitude_of_the_angle():
     # at 120 deg the cosine is one half: 0.7 V threshold above -0.3 V bias takes an amplitude of 2 V
     assert drive(bias=-0.3)[:2] == (-0.3, pytest.approx(2.0, rel=1e-12))

@@ -48,7 +48,9 @@ def test_a_narrow_pipe_cuts_no_digit(run):
         for width in (120, 60)
     )
     figures = re.compile(r"−?\d+(?:\.\d+)?")
-    assert sorted(figures.findall(wide)) == sorted(figures.findall(narrow))
+    # a wide page shows two columns more; every figure of the narrow one stands whole in it
+    assert len(figures.findall(narrow)) > 100
+    assert set(figures.findall(narrow)) <= set(figures.findall(wide))
     assert "…" not in narrow
 
 

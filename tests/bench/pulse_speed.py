@@ -65,7 +65,7 @@ def main() -> None:
     for round_number in range(ROUNDS):
         some = angles[round_number * SAMPLED : (round_number + 1) * SAMPLED]
         quadrature.append(seconds(lambda some=some: by_quadrature(some)) * ANGLES / SAMPLED)
-        for _ in range(3):
+        for _ in range(8):
             textbook.append(seconds(lambda: by_the_textbook(angles)))
             ours.append(seconds(lambda: pulse_coefficients(angles, highest_order=ORDERS - 1)))
     own = statistics.median(ours)
