@@ -214,7 +214,7 @@ class Ladder:
         Arguments as `impedance`; arrays as described at `Walk`, for 1 A peak from the device.
         """
         values = self._blocks(frequency, load, self._everything, keep=True)
-        states = tuple(BranchState(*values[k: k + 2]) for k in range(3, len(values), 2))
+        states = tuple(BranchState(*values[k : k + 2]) for k in range(3, len(values), 2))
         return Walk(values[0], values[1], values[2], states)
 
     def chain(self, frequency: ArrayLike) -> tuple[Any, Any, Any, Any]:
@@ -308,12 +308,14 @@ def _sample_shape(branches: Sequence[Branch]) -> tuple[int, ...]:
 
 
 def _flat_samples(branch: Branch, shape: tuple[int, ...]) -> Branch:
-    arrays: dict[str, Any] = {name: np.broadcast_to(a, shape).reshape(-1) for name in _SAMPLED
-              if isinstance(a := getattr(branch, name), np.ndarray)}
+    arrays: dict[str, Any] = {
+        name: np.broadcast_to(a, shape).reshape(-1)
+        for name in _SAMPLED
+        if isinstance(a := getattr(branch, name), np.ndarray)
+    }
     return replace(branch, **arrays) if arrays else branch
 
 
 def _take(branch: Branch, part: slice) -> Branch:
     arrays: dict[str, Any] = {name: a[part] for name in _SAMPLED if isinstance(a := getattr(branch, name), np.ndarray)}
     return replace(branch, **arrays) if arrays else branch
-

@@ -68,8 +68,8 @@ def pulse_coefficients(half_angle: ArrayLike, *, highest_order: int, exponent: f
 
     References
     ----------
-    The reduced-cosine coefficients are in every text on power amplifiers; the Gegenbauer form used for
-    orders from 2 follows by writing the bracket as ``−sin²θ d/dθ (sin nθ/sin θ)``.
+    The reduced-cosine coefficients are in every text on power amplifiers; the bracket of the printed form is
+    ``−sin²θ d/dθ (sin nθ/sin θ)``, a Gegenbauer polynomial, whose recurrence is the one used from order 2 on.
 
     Examples
     --------
@@ -91,33 +91,32 @@ def pulse_coefficients(half_angle: ArrayLike, *, highest_order: int, exponent: f
 
 
 def _linear(theta: NDArray[np.float64], highest_order: int) -> NDArray[np.float64]:
+    """Evaluate closed forms for a0 and a1, then (n + 2) a_{n+1} = 2 n cos θ a_n − (n − 2) a_{n−1} from a2 on."""
     t = theta.reshape(-1)
     out = np.empty((highest_order + 1, t.size))  # an order a row: every pass below runs through memory in a line
+    sine_half, cosine_half = np.sin(t / 2), np.cos(t / 2)
+    sine, cosine = 2 * sine_half * cosine_half, 1 - 2 * sine_half * sine_half
     small = t < 1
-    for here, first_two in ((small, _by_series), (~small, _in_closed_form)):
-        out[:2, here] = first_two(t[here])[: highest_order + 1]
+    scale = 2 * math.pi * np.where(small, 1.0, sine_half * sine_half)
+    first_two = (sine - t * cosine, t - sine * cosine)[: highest_order + 1]
+    series = _by_series(t[small], sine_half[small])
+    for order, numerator in enumerate(first_two):
+        np.divide(numerator, scale, out=out[order])
+        out[order, small] = series[order]
     if highest_order >= 2:
-        cosine, half = np.cos(t), np.cos(t / 2)
-        common = 16 / math.pi * np.sin(t / 2) * half * half * half
-        before, now = np.zeros_like(t), np.ones_like(t)
-        for n in range(2, highest_order + 1):
-            np.multiply(common / (n * (n * n - 1.0)), now, out=out[n])
-            m = n - 2
-            before, now = now, (2 * (m + 2) / (m + 1)) * (cosine * now) - ((m + 3) / (m + 1)) * before
+        out[2] = (8 / (3 * math.pi)) * sine_half * cosine_half * cosine_half * cosine_half
+    for n in range(2, highest_order):
+        np.multiply(cosine, out[n], out=out[n + 1])
+        out[n + 1] *= 2 * n / (n + 2)
+        out[n + 1] -= ((n - 2) / (n + 2)) * out[n - 1]
     return np.moveaxis(out.reshape(highest_order + 1, *theta.shape), 0, -1)
 
 
-def _by_series(t: NDArray[np.float64]) -> NDArray[np.float64]:
+def _by_series(t: NDArray[np.float64], sine_half: NDArray[np.float64]) -> tuple[NDArray[np.float64], ...]:
     """Return a0 and a1 below one radian: sin t − t cos t = t³/3 · S(t²), 2t − sin 2t = (2t)³/6 · T(4t²)."""
-    sinc = np.sin(t / 2) / (t / 2)
+    sinc = 2 * sine_half / t
     scale = 2 * t / (3 * math.pi * sinc**2)
-    return np.stack([scale * _odd_series(t * t), 2 * scale * _cubic_series(4 * t * t)])
-
-
-def _in_closed_form(t: NDArray[np.float64]) -> NDArray[np.float64]:
-    """Return a0 and a1 from one radian up."""
-    scale = 2 * math.pi * np.sin(t / 2) ** 2
-    return np.stack([(np.sin(t) - t * np.cos(t)) / scale, (t - np.sin(2 * t) / 2) / scale])
+    return scale * _odd_series(t * t), 2 * scale * _cubic_series(4 * t * t)
 
 
 def _odd_series(square: NDArray[np.float64]) -> NDArray[np.float64]:

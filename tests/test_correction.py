@@ -29,8 +29,14 @@ def random_pi_jobs(count, seed=20):
         if not 0.5 <= power <= 1500:
             continue
         count -= 1
-        yield Job(carrier=carrier, power=power, conduction_angle=float(rng.uniform(90, 180)), supply=supply,
-                  family=family, loaded_q=float(rng.uniform(12, 18)) if family == "tube" else None)
+        yield Job(
+            carrier=carrier,
+            power=power,
+            conduction_angle=float(rng.uniform(90, 180)),
+            supply=supply,
+            family=family,
+            loaded_q=float(rng.uniform(12, 18)) if family == "tube" else None,
+        )
 
 
 def test_the_settled_power_is_the_asked_one():

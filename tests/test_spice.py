@@ -17,7 +17,9 @@ from rfstage.ladder import Branch
 from rfstage.load import SeriesLoad
 from rfstage.steady import settle
 
-ngspice = pytest.mark.skipif(shutil.which("ngspice") is None, reason="ngspice, a general-purpose simulator, is not here")
+ngspice = pytest.mark.skipif(
+    shutil.which("ngspice") is None, reason="ngspice, a general-purpose simulator, is not here"
+)
 
 
 def with_constant_losses(stage):
@@ -37,24 +39,64 @@ def with_constant_losses(stage):
 def stages():
     """Six stages of varied family, network, law and load."""
     small = design(Job(carrier=7.1e6, power=10.0, conduction_angle=120.0, supply=13.8), textbook=True).stage
-    fet = design(Job(carrier=14.2e6, power=60.0, conduction_angle=140.0, supply=50.0, family="fet", loaded_q=9.0,
-                     load=40 + 15j), textbook=True).stage
-    fet = replace(fet, device=replace(fet.device, exponent=2.0, transfer_factor=fet.device.transfer_factor / 3,
-                                      junction_capacitance=JunctionCapacitance(at_zero=600e-12, potential=0.8, grading=0.4)))
-    tube = design(Job(carrier=3.6e6, power=300.0, conduction_angle=150.0, supply=1500.0, family="tube", exponent=1.5,
-                      output_capacitance=12e-12), textbook=True).stage
-    triode = replace(tube, device=replace(tube.device, amplification_factor=60.0),
-                     drive=replace(tube.drive, bias=tube.drive.bias - 1500 / 60, amplitude=tube.drive.amplitude + 22))
-    coil_first = design(Job(carrier=10.1e6, power=5.0, conduction_angle=110.0, supply=12.0, network="l",
-                            output_capacitance=900e-12), textbook=True).stage
-    stray = design(Job(carrier=28e6, power=25.0, conduction_angle=180.0, supply=28.0, load=70 - 30j,
-                       output_capacitance=60e-12), textbook=True).stage
-    stray = replace(stray, branches=tuple(
-        replace(b, lead_inductance=3e-9) if b.kind == "capacitor" and b.place == "shunt"
-        else replace(b, self_capacitance=1.5e-12) if b.kind == "coil" else b for b in stray.branches))
+    fet = design(
+        Job(carrier=14.2e6, power=60.0, conduction_angle=140.0, supply=50.0, family="fet", loaded_q=9.0, load=40 + 15j),
+        textbook=True,
+    ).stage
+    fet = replace(
+        fet,
+        device=replace(
+            fet.device,
+            exponent=2.0,
+            transfer_factor=fet.device.transfer_factor / 3,
+            junction_capacitance=JunctionCapacitance(at_zero=600e-12, potential=0.8, grading=0.4),
+        ),
+    )
+    tube = design(
+        Job(
+            carrier=3.6e6,
+            power=300.0,
+            conduction_angle=150.0,
+            supply=1500.0,
+            family="tube",
+            exponent=1.5,
+            output_capacitance=12e-12,
+        ),
+        textbook=True,
+    ).stage
+    triode = replace(
+        tube,
+        device=replace(tube.device, amplification_factor=60.0),
+        drive=replace(tube.drive, bias=tube.drive.bias - 1500 / 60, amplitude=tube.drive.amplitude + 22),
+    )
+    coil_first = design(
+        Job(carrier=10.1e6, power=5.0, conduction_angle=110.0, supply=12.0, network="l", output_capacitance=900e-12),
+        textbook=True,
+    ).stage
+    stray = design(
+        Job(carrier=28e6, power=25.0, conduction_angle=180.0, supply=28.0, load=70 - 30j, output_capacitance=60e-12),
+        textbook=True,
+    ).stage
+    stray = replace(
+        stray,
+        branches=tuple(
+            replace(b, lead_inductance=3e-9)
+            if b.kind == "capacitor" and b.place == "shunt"
+            else replace(b, self_capacitance=1.5e-12)
+            if b.kind == "coil"
+            else b
+            for b in stray.branches
+        ),
+    )
     overdriven = replace(small, drive=replace(small.drive, amplitude=1.6 * small.drive.amplitude))
-    return {"bipolar pi": small, "square-law FET with a junction": fet, "triode": triode, "coil first": coil_first,
-            "strays": stray, "overdriven": overdriven}
+    return {
+        "bipolar pi": small,
+        "square-law FET with a junction": fet,
+        "triode": triode,
+        "coil first": coil_first,
+        "strays": stray,
+        "overdriven": overdriven,
+    }
 
 
 STAGES = {name: with_constant_losses(stage) for name, stage in stages().items()}
@@ -112,12 +154,26 @@ def test_a_choke_s_rf_loss_does_not_stand_in_the_way_of_direct_current():
 
 
 def test_a_stage_without_a_series_part_still_reaches_its_load():
-    stage = replace(STAGES["bipolar pi"], branches=(Branch("C1", "shunt", "capacitor", 1e-9),), load=SeriesLoad(50 + 0j, 7.1e6))
+    stage = replace(
+        STAGES["bipolar pi"], branches=(Branch("C1", "shunt", "capacitor", 1e-9),), load=SeriesLoad(50 + 0j, 7.1e6)
+    )
     assert "Vthrough out load 0" in spice_text(stage)
 
 
 def test_design_and_settle_write_decks(run, tmp_path):
-    words = ("design", "--carrier", "7.1MHz", "--power", "10W", "--angle", "120", "--supply", "13.8", "--spice", "a.cir")
+    words = (
+        "design",
+        "--carrier",
+        "7.1MHz",
+        "--power",
+        "10W",
+        "--angle",
+        "120",
+        "--supply",
+        "13.8",
+        "--spice",
+        "a.cir",
+    )
     done = run(*words, "--save", "a.toml", "--json")
     assert done.returncode == 0
     assert run("settle", "a.toml", "--spice", "b.cir").returncode == 0

@@ -24,15 +24,27 @@ from rfstage.steady.solve import FAILED, cold_start, solve
 # A textbook class C stage: 10 W from 13.8 V at 120 degrees and 7.1 MHz, 7.5 ohm at the collector, pi of input-side Q 3
 DESIGNED = Stage(
     carrier=7.1e6,
-    device=Device(family="bipolar", transfer_factor=9.166, exponent=1.0, threshold=0.7, threshold_softness=0.01,
-                  knee_voltage=0.184, knee_resistance=0.04, output_capacitance=90e-12,
-                  reverse_conduction=ReverseConduction(conductance=4.6, threshold=0.7, softness=0.03)),
-    drive=Drive(bias=0.2, amplitude=1.0), supply=Supply(voltage=13.8, choke=1.588e-6, choke_q=100.0),
-    branches=(Branch("Cblock", "series", "capacitor", 83e-9, q=1000.0),
-              Branch("C1", "shunt", "capacitor", 8.667e-9, q=1000.0),
-              Branch("L1", "series", "coil", 191.3e-9, q=150.0, q_frequency=7.1e6),
-              Branch("C2", "shunt", "capacitor", 3.538e-9, q=1000.0)),
-    load=SeriesLoad(50 + 0j, 7.1e6))
+    device=Device(
+        family="bipolar",
+        transfer_factor=9.166,
+        exponent=1.0,
+        threshold=0.7,
+        threshold_softness=0.01,
+        knee_voltage=0.184,
+        knee_resistance=0.04,
+        output_capacitance=90e-12,
+        reverse_conduction=ReverseConduction(conductance=4.6, threshold=0.7, softness=0.03),
+    ),
+    drive=Drive(bias=0.2, amplitude=1.0),
+    supply=Supply(voltage=13.8, choke=1.588e-6, choke_q=100.0),
+    branches=(
+        Branch("Cblock", "series", "capacitor", 83e-9, q=1000.0),
+        Branch("C1", "shunt", "capacitor", 8.667e-9, q=1000.0),
+        Branch("L1", "series", "coil", 191.3e-9, q=150.0, q_frequency=7.1e6),
+        Branch("C2", "shunt", "capacitor", 3.538e-9, q=1000.0),
+    ),
+    load=SeriesLoad(50 + 0j, 7.1e6),
+)
 HARD = replace(DESIGNED, device=replace(DESIGNED.device, threshold_softness=0.0))
 ORDINARY = stress.stages(150)
 EXTREME = stress.stages(60, stress.EXTREME)

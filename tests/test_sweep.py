@@ -95,8 +95,11 @@ def test_the_supply_power_of_class_a_stays_and_that_of_class_b_falls_with_the_si
 
 
 def test_the_modulator_sees_supply_voltage_over_current(tower):
-    found = sweep(replace(tower, drive=replace(tower.drive, amplitude=1.4 * tower.drive.amplitude)),
-                  "supply.voltage", np.linspace(40, 3960, 49))
+    found = sweep(
+        replace(tower, drive=replace(tower.drive, amplitude=1.4 * tower.drive.amplitude)),
+        "supply.voltage",
+        np.linspace(40, 3960, 49),
+    )
     said = modulation(found)
     assert said is not None
     now = settle(found.stage)
@@ -184,14 +187,17 @@ def test_the_command_line_writes_csv_and_json(run, tmp_path, tower):
     assert max(map(len, page.splitlines())) <= 80
 
 
-@pytest.mark.parametrize(("words", "said"), [
-    (("--of", "C7", "--from", "1", "--to", "2"), "did you mean"),
-    (("--of", "C1", "--from", "1V", "--to", "2V"), "wanted a capacitance"),
-    (("--of", "C1", "--from", "-1pF", "--to", "2pF"), "above 0 F"),
-    (("--of", "load", "--from", "0.5", "--to", "2"), "allowed 1 to 100"),
-    (("--of", "C1", "--from", "1pF", "--to", "2pF", "--points", "1"), "allowed 2 to"),
-    (("--of", "C1", "--from", "1pF"), "--to"),
-])
+@pytest.mark.parametrize(
+    ("words", "said"),
+    [
+        (("--of", "C7", "--from", "1", "--to", "2"), "did you mean"),
+        (("--of", "C1", "--from", "1V", "--to", "2V"), "wanted a capacitance"),
+        (("--of", "C1", "--from", "-1pF", "--to", "2pF"), "above 0 F"),
+        (("--of", "load", "--from", "0.5", "--to", "2"), "allowed 1 to 100"),
+        (("--of", "C1", "--from", "1pF", "--to", "2pF", "--points", "1"), "allowed 2 to"),
+        (("--of", "C1", "--from", "1pF"), "--to"),
+    ],
+)
 def test_bad_sweeps_are_one_clear_line(run, tmp_path, tower, words, said):
     from rfstage.files.stage import stage_text
 

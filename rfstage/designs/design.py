@@ -99,7 +99,7 @@ def design(job: Job, textbook: bool = False) -> Design:
     >>> job = Job(carrier=7.1e6, power=10.0, conduction_angle=120.0, supply=13.8)
     >>> book, real = design(job, textbook=True), design(job)
     >>> round(book.point.load_resistance, 2), round(real.point.load_resistance, 2)
-    (7.43, 6.88)
+    (7.43, 7.08)
     >>> round(real.settled.output_power, 1), [p.branch.name for p in real.tank.parts]
     (10.0, ['Lchoke', 'Cblock', 'C1', 'L1', 'C2'])
     """

@@ -40,12 +40,19 @@ def with_losses(tank: Sequence[Branch], *, coil_q: float, capacitor_q: float, ca
     given = {"coil": coil_q, "capacitor": capacitor_q}
     return tuple(
         branch if math.isinf(given[branch.kind]) else replace(branch, q=given[branch.kind], q_frequency=carrier)
-        for branch in tank)
+        for branch in tank
+    )
 
 
 def close(
-    feed: Sequence[Branch], tank: Sequence[Branch], *, wanted: complex, load: complex, carrier: float,
-    asked_loaded_q: float | None = None, fixed: int = 0,
+    feed: Sequence[Branch],
+    tank: Sequence[Branch],
+    *,
+    wanted: complex,
+    load: complex,
+    carrier: float,
+    asked_loaded_q: float | None = None,
+    fixed: int = 0,
 ) -> tuple[Branch, ...]:
     """Return the tank with values that meet the wanted impedance to 1e-12 relative.
 

@@ -65,11 +65,14 @@ def l_network(wanted: complex, load: complex, *, carrier: float, high_pass: bool
                 return _parts(reactance, susceptance, carrier, first_shunt=form is _shunt_first)
     name, other = ("l-high-pass", "l") if high_pass else ("l", "l-high-pass")
     if abs(wanted - load) <= 1e-12 * abs(load):
-        raise ImpossibleError(f"network {name}: the load already is the wanted {exact_complex(wanted)} ohm, "
-                              "so an L has nothing to do; ask for network pi, which also filters")
+        raise ImpossibleError(
+            f"network {name}: the load already is the wanted {exact_complex(wanted)} ohm, "
+            "so an L has nothing to do; ask for network pi, which also filters"
+        )
     raise ImpossibleError(
         f"network {name}: no such L turns the load of {exact_complex(load)} ohm into "
-        f"{_rounded(wanted)} ohm at the device; try {other} or pi")
+        f"{_rounded(wanted)} ohm at the device; try {other} or pi"
+    )
 
 
 def _rounded(z: complex) -> str:
@@ -103,8 +106,12 @@ def _series_first(wanted: complex, load: complex) -> list[tuple[float, float]]:
 
 
 def _parts(reactance: float, susceptance: float, carrier: float, *, first_shunt: bool) -> tuple[Branch, ...]:
-    series = (coil("L1", "series", reactance, carrier) if reactance > 0
-              else capacitor("C1", "series", -reactance, carrier))
-    shunt = (capacitor("C1", "shunt", 1 / susceptance, carrier) if susceptance > 0
-             else coil("L1", "shunt", -1 / susceptance, carrier))
+    series = (
+        coil("L1", "series", reactance, carrier) if reactance > 0 else capacitor("C1", "series", -reactance, carrier)
+    )
+    shunt = (
+        capacitor("C1", "shunt", 1 / susceptance, carrier)
+        if susceptance > 0
+        else coil("L1", "shunt", -1 / susceptance, carrier)
+    )
     return (shunt, series) if first_shunt else (series, shunt)

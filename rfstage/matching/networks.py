@@ -31,8 +31,15 @@ class Request:
     input_q: float | None = None
 
 
-def solve_network(request: Request, *, feed: Sequence[Branch], wanted: complex, load: complex,
-                  carrier: float, near: Sequence[Branch] = ()) -> tuple[Branch, ...]:
+def solve_network(
+    request: Request,
+    *,
+    feed: Sequence[Branch],
+    wanted: complex,
+    load: complex,
+    carrier: float,
+    near: Sequence[Branch] = (),
+) -> tuple[Branch, ...]:
     """Return the network's parts, exact with their losses.
 
     Parameters
@@ -60,20 +67,27 @@ def solve_network(request: Request, *, feed: Sequence[Branch], wanted: complex, 
     if not target.real > 0:
         raise ImpossibleError(
             f"the choke's loss alone is more than the {exact_complex(_figures(wanted))} ohm asked at the device; "
-            "raise supply.choke or supply.choke_q")
+            "raise supply.choke or supply.choke_q"
+        )
     try:
         if request.network == "pi":
             return _solve_pi(request, feed, wanted, target, load, carrier, near)
         return _solve_l(request, feed, wanted, target, load, carrier)
     except ConvergenceError as error:
         raise ImpossibleError(
-            f"network {request.network}: with a coil Q of {request.coil_q:.6g} and a capacitor Q of "
-            f"{request.capacitor_q:.6g} no parts show {exact_complex(_figures(wanted))} ohm to the device ({error}); "
-            "raise tank.coil_q and tank.capacitor_q, or lower the loaded Q") from None
+            f"network {request.network}: with {_quality('coils', request.coil_q)} and "
+            f"{_quality('capacitors', request.capacitor_q)} no parts show {exact_complex(_figures(wanted))} ohm to the device ({error}); "
+            "raise tank.coil_q and tank.capacitor_q, or lower the loaded Q"
+        ) from None
 
 
-def _solve_l(request: Request, feed: Sequence[Branch], wanted: complex, target: complex, load: complex,
-             carrier: float) -> tuple[Branch, ...]:
+def _quality(parts: str, q: float) -> str:
+    return f"lossless {parts}" if math.isinf(q) else f"{parts} of Q {q:.6g}"
+
+
+def _solve_l(
+    request: Request, feed: Sequence[Branch], wanted: complex, target: complex, load: complex, carrier: float
+) -> tuple[Branch, ...]:
     high_pass = request.network == "l-high-pass"
     if request.loaded_q is not None or request.input_q is not None:
         asked = request.loaded_q if request.loaded_q is not None else request.input_q
@@ -81,7 +95,8 @@ def _solve_l(request: Request, feed: Sequence[Branch], wanted: complex, target: 
         key = "loaded_q" if request.loaded_q is not None else "input_q"
         raise ImpossibleError(
             f"tank.{key}: got {asked:.6g} for network {request.network}, whose Q follows from the resistances: "
-            f"{q:.3g} here; leave the Q out, or ask for network pi")
+            f"{q:.3g} here; leave the Q out, or ask for network pi"
+        )
     try:
         tank = l_network(target, load, carrier=carrier, high_pass=high_pass)
     except ImpossibleError:
@@ -89,8 +104,10 @@ def _solve_l(request: Request, feed: Sequence[Branch], wanted: complex, target: 
         if capacitance and not high_pass:
             room = _room_for_output_capacitance(wanted, load, carrier)
             if room is not None and room < capacitance:
-                raise ImpossibleError(_too_much_capacitance(capacitance, wanted, load, carrier, request.coil_q)
-                                      + f"; an L leaves room for {show(room, 'F')}") from None
+                raise ImpossibleError(
+                    _too_much_capacitance(capacitance, wanted, load, carrier, request.coil_q)
+                    + f"; an L leaves room for {show(room, 'F')}"
+                ) from None
         raise
     lossy = with_losses(tank, coil_q=request.coil_q, capacitor_q=request.capacitor_q, carrier=carrier)
     parts = close(feed, lossy, wanted=wanted, load=load, carrier=carrier)
@@ -99,8 +116,15 @@ def _solve_l(request: Request, feed: Sequence[Branch], wanted: complex, target: 
     return parts
 
 
-def _solve_pi(request: Request, feed: Sequence[Branch], wanted: complex, target: complex, load: complex,
-              carrier: float, near: Sequence[Branch]) -> tuple[Branch, ...]:
+def _solve_pi(
+    request: Request,
+    feed: Sequence[Branch],
+    wanted: complex,
+    target: complex,
+    load: complex,
+    carrier: float,
+    near: Sequence[Branch],
+) -> tuple[Branch, ...]:
     omega = 2 * math.pi * carrier
     capacitance = _device_capacitance(feed)
     resistance = 1 / (1 / wanted).real
@@ -136,10 +160,12 @@ def _solve_pi(request: Request, feed: Sequence[Branch], wanted: complex, target:
             raise ImpossibleError(
                 f"network pi: the output capacitor comes out at nothing, from the losses or from a blocking capacitor "
                 f"with too much reactance; a loaded Q above {least:.3g} by some margin, or a larger tank.blocking, "
-                "helps")
+                "helps"
+            )
         raise ImpossibleError(
             f"network pi: the load's own capacitance is more than the output capacitor this Q leaves; a loaded Q "
-            f"above about {least:.3g} leaves room")
+            f"above about {least:.3g} leaves room"
+        )
     return parts
 
 
@@ -161,10 +187,12 @@ def _too_much_capacitance(capacitance: float, wanted: complex, load: complex, ca
     fits = least_loaded_q(wanted, load, least_input_q=1.05 * taken)
     reactance = show(1 / (2 * math.pi * carrier * capacitance), "ohm")
     better = f", with coils of far higher Q than {coil_q:.4g}" if fits > coil_q / 3 else ""
-    return (f"device.output_capacitance: {show(capacitance, 'F')} has {reactance} reactance at "
-            f"{exact_text(carrier, 'Hz')}, an input-side Q of {taken:.3g} by itself against "
-            f"{exact_complex(_figures(wanted))} ohm, which is more than this Q leaves; a pi of loaded Q {fits:.3g} or "
-            f"more would take it in{better}")
+    return (
+        f"device.output_capacitance: {show(capacitance, 'F')} has {reactance} reactance at "
+        f"{exact_text(carrier, 'Hz')}, an input-side Q of {taken:.3g} by itself against "
+        f"{exact_complex(_figures(wanted))} ohm, which is more than this Q leaves; a pi of loaded Q {fits:.3g} or "
+        f"more would take it in{better}"
+    )
 
 
 def _figures(z: complex) -> complex:
@@ -206,9 +234,17 @@ def tank_efficiency(branches: Sequence[Branch], load: complex, carrier: float) -
     return float(abs(h) ** 2 * (1 / load).real / z.real)
 
 
-def describe(network: str, feed: Sequence[Branch], tank: Sequence[Branch], *, load: Load, carrier: float,
-             current: float | None, terminations: tuple[tuple[int, float], ...],
-             trough_dip: float | None) -> Tank:
+def describe(
+    network: str,
+    feed: Sequence[Branch],
+    tank: Sequence[Branch],
+    *,
+    load: Load,
+    carrier: float,
+    current: float | None,
+    terminations: tuple[tuple[int, float], ...],
+    trough_dip: float | None,
+) -> Tank:
     """Return the `Tank` for a peak fundamental ``current`` [A] of the device, or without stresses."""
     branches = (*feed, *tank)
     at_carrier = complex(load.impedance(carrier))
@@ -219,13 +255,20 @@ def describe(network: str, feed: Sequence[Branch], tank: Sequence[Branch], *, lo
             parts.append(PartStress(branch, None, None, None))
             continue
         amperes = abs(complex(state.current)) * current
-        parts.append(PartStress(branch, amperes * abs(branch.impedance(carrier)), amperes / math.sqrt(2),
-                                float(state.loss) * current**2))
+        parts.append(
+            PartStress(
+                branch, amperes * abs(branch.impedance(carrier)), amperes / math.sqrt(2), float(state.loss) * current**2
+            )
+        )
     z = complex(walk.impedance)
     return Tank(
-        network=network, parts=tuple(parts), impedance=z,
+        network=network,
+        parts=tuple(parts),
+        impedance=z,
         loaded_q=loaded_q(feed, tank, at_carrier, carrier),
         input_q=input_side_q(feed, tank, 1 / (1 / z).real, carrier),
         bandwidth=bandwidth(branches, load, carrier),
         efficiency=tank_efficiency(branches, at_carrier, carrier),
-        terminations=terminations, trough_dip=trough_dip)
+        terminations=terminations,
+        trough_dip=trough_dip,
+    )

@@ -88,7 +88,8 @@ def pi_network(
             least = math.sqrt(r1 / r2 - 1)
             raise ImpossibleError(
                 f"tank.input_q: {input_q:.6g} is too low for a pi from {r1:.4g} ohm at the device to "
-                f"{exact_complex(load)} ohm; it must be above {least:.4g}")
+                f"{exact_complex(load)} ohm; it must be above {least:.4g}"
+            )
         q1, q2 = input_q, math.sqrt(r2 / virtual - 1)
     else:
         assert loaded_q is not None
@@ -96,7 +97,8 @@ def pi_network(
         if loaded_q <= least:
             raise ImpossibleError(
                 f"tank.loaded_q: {loaded_q:.6g} is too low for a pi from {r1:.4g} ohm at the device to "
-                f"{exact_complex(load)} ohm; it must be above {least:.4g}")
+                f"{exact_complex(load)} ohm; it must be above {least:.4g}"
+            )
         virtual = virtual_resistance(r1, r2, loaded_q=loaded_q)
         q1, q2 = math.sqrt(max(r1 / virtual - 1, 0.0)), math.sqrt(max(r2 / virtual - 1, 0.0))
     omega = 2 * math.pi * carrier

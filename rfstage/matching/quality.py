@@ -16,10 +16,12 @@ from rfstage.ladder import Branch, Ladder
 from rfstage.load import Load
 
 # From the carrier downwards and upwards, relative to it, close together near it
-_BOTH_WAYS = np.array([
-    1 - np.append(0, np.geomspace(1e-5, 0.9995, 500)),
-    1 + np.append(0, np.geomspace(1e-5, 30.0, 500)),
-])
+_BOTH_WAYS = np.array(
+    [
+        1 - np.append(0, np.geomspace(1e-5, 0.9995, 500)),
+        1 + np.append(0, np.geomspace(1e-5, 30.0, 500)),
+    ]
+)
 
 
 def impedance_and_loaded_q(
@@ -89,6 +91,6 @@ def strongest_resonance_below(branches: Sequence[Branch], load: Load, carrier: f
         if peaks.size == 0:
             return None
         best = int(peaks[np.argmax(level[peaks])])
-        low, at, high = (float(f) for f in frequencies[best - 1: best + 2])
+        low, at, high = (float(f) for f in frequencies[best - 1 : best + 2])
     reference = abs(complex(ladder.transimpedance(carrier, load)))
     return at, 20 * math.log10(float(level[best]) / reference)

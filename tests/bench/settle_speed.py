@@ -50,10 +50,14 @@ def accurate(stage: Stage, exact: SteadyState, current: float, phasors: np.ndarr
     """Return whether a transient's figures are within the loose accuracy."""
     powers = np.abs(phasors) ** 2 / 2 * (1 / stage.load.impedance(stage.carrier * np.arange(1, 8))).real
     levels = 10 * np.log10(powers / powers[0])
-    harmonics = all(abs(levels[h.order - 1] - h.level) < 0.1
-                    for h in exact.harmonics[:6] if h.level is not None and h.level > -80)
-    return bool(abs(current / exact.dc_current - 1) < 2e-3
-                and abs(10 * math.log10(powers[0] / exact.output_power)) < 0.02 and harmonics)
+    harmonics = all(
+        abs(levels[h.order - 1] - h.level) < 0.1 for h in exact.harmonics[:6] if h.level is not None and h.level > -80
+    )
+    return bool(
+        abs(current / exact.dc_current - 1) < 2e-3
+        and abs(10 * math.log10(powers[0] / exact.output_power)) < 0.02
+        and harmonics
+    )
 
 
 def transient_seconds(stage: Stage, exact: SteadyState) -> float | None:

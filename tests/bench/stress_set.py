@@ -45,16 +45,22 @@ def run(name: str, stages: list[Stage], orders: int | None) -> None:
 
 def _accuracy(states: list[SteadyState]) -> None:
     balance = np.abs([s.balance_error for s in states])
-    print(f"  balance     max {balance.max():.1e}, 99 % below {np.percentile(balance, 99):.1e}; "
-          f"residual max {max(s.residual for s in states):.1e}")
+    print(
+        f"  balance     max {balance.max():.1e}, 99 % below {np.percentile(balance, 99):.1e}; "
+        f"residual max {max(s.residual for s in states):.1e}"
+    )
     swing = [s.minimum_voltage / s.stage.supply.voltage for s in states]
-    print(f"  reach a tenth of the supply {np.mean(np.less(swing, 0.1)):.0%}, "
-          f"swing below zero {np.mean(np.less(swing, 0)):.0%}")
+    print(
+        f"  reach a tenth of the supply {np.mean(np.less(swing, 0.1)):.0%}, "
+        f"swing below zero {np.mean(np.less(swing, 0)):.0%}"
+    )
 
 
 def _spread(values: list[float] | list[int]) -> str:
-    return (f"median {np.median(values):.3g}, 95 % below {np.percentile(values, 95):.3g}, "
-            f"max {max(values):.3g}, mean {np.mean(values):.3g}")
+    return (
+        f"median {np.median(values):.3g}, 95 % below {np.percentile(values, 95):.3g}, "
+        f"max {max(values):.3g}, mean {np.mean(values):.3g}"
+    )
 
 
 def main() -> None:
