@@ -190,8 +190,8 @@ def about_tank_loss(efficiency: float, loaded_q: float) -> list[Caution]:
     return [
         Caution(
             "tank loss",
-            f"the tank keeps {100 * (1 - efficiency):.0f} % of the device's power at a loaded Q of {loaded_q:.3g}: coils "
-            "of higher Q, or a lower loaded Q where harmonics and output capacitance allow it.",
+            f"the tank keeps {100 * (1 - efficiency):.0f} % of the device's power at a loaded Q of {loaded_q:.3g}: "
+            "coils of higher Q, or a lower loaded Q where harmonics and output capacitance allow it.",
         )
     ]
 

@@ -490,7 +490,7 @@ def test_q_named_for_output_capacitance_works_whatever_the_resistances(wanted, l
 
 @pytest.mark.parametrize("network", ["l", "pi"])
 def test_coil_losses_that_leave_no_network_are_refused_with_a_way_out(network):
-    with pytest.raises(ImpossibleError, match=rf"network {network}: with a coil Q of 1\.1 .* tank\.coil_q"):
+    with pytest.raises(ImpossibleError, match=rf"network {network}: with coils of Q 1\.1 .* tank\.coil_q"):
         solved(request_for(network, coil_q=1.1, capacitor_q=142), 434, 1.1, 7e6, (output_capacitance(120e-12),))
 
 

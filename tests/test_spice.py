@@ -106,7 +106,20 @@ def simulated(stage, steps, folder):
     """Return direct current [A] and load phasors of orders 1 to 7 [V] over the last ten periods."""
     run = Run(default_run(stage).periods, steps)
     wanted = "v(load) i(vsupply)"
-    control = f".control\nrun\nset wr_singlescale\nset numdgt=15\nlinearize {wanted}\nwrdata out.txt {wanted}\nquit\n.endc\n.end\n"
+    control = "\n".join(
+        (
+            ".control",
+            "run",
+            "set wr_singlescale",
+            "set numdgt=15",
+            f"linearize {wanted}",
+            f"wrdata out.txt {wanted}",
+            "quit",
+            ".endc",
+            ".end",
+            "",
+        )
+    )
     (folder / "out.txt").unlink(missing_ok=True)
     (folder / "deck.cir").write_text(spice_text(stage, run).replace(".end\n", control), encoding="ascii")
     subprocess.run(["ngspice", "-b", "deck.cir"], cwd=folder, capture_output=True, check=True, timeout=280)
@@ -120,7 +133,7 @@ def simulated(stage, steps, folder):
 @ngspice
 @pytest.mark.parametrize("name", STAGES)
 def test_ngspice_finds_the_same_steady_state(name, tmp_path):
-    # SOURCE: transient runs of ngspice at two step sizes, extrapolated (the trapezoidal rule's error is of second order)
+    # SOURCE: transient runs of ngspice at two step sizes, extrapolated (the trapezoidal rule is of second order)
     stage = STAGES[name]
     # leads of a few nanohenry ring within a twentieth of the period: their levels want finer steps
     coarse, fine = (simulated(stage, steps, tmp_path) for steps in ((800, 1600) if name == "strays" else (300, 600)))

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-
 from typing import TYPE_CHECKING
 
 from rfstage.cli.words import Parser, add_field_options, given, output, read_all

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-
 from typing import TYPE_CHECKING
 
 from rfstage.cli.words import Parser, output, read_all

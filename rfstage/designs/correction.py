@@ -116,8 +116,8 @@ def _judge(settings: Settings, book: Built, state: SteadyState) -> None:
     efficiency = state.efficiency or 0.0
     if efficiency < book.point.overall_efficiency - EFFICIENCY_LOST:
         raise ImpossibleError(
-            f"in steady state network {settings.request.network} gives {exact_text(job.power, 'W')} at an efficiency of "
-            f"{100 * efficiency:.0f} % where the textbook has {100 * book.point.overall_efficiency:.0f} %"
+            f"in steady state network {settings.request.network} gives {exact_text(job.power, 'W')} at an efficiency "
+            f"of {100 * efficiency:.0f} % where the textbook has {100 * book.point.overall_efficiency:.0f} %"
         )
 
 

@@ -130,7 +130,8 @@ def with_settled(made: Design, state: SteadyState | None = None) -> Design:
     Returns
     -------
     Design
-        Line levels and what the ratings are held against are then the worse of textbook and settled. Where no steady state is reached a
+        Line levels and what the ratings are held against are then the worse of textbook and settled.
+        Where no steady state is reached a
         textbook design comes back as it was, with a caution that says so.
     """
     from rfstage.steady import settle

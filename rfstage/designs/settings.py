@@ -1,7 +1,8 @@
 """A job with its defaults filled in, and the record of what was assumed.
 
 All defaults are common practice, no source: reactances of a choke ten times what it stands across, of a
-blocking capacitor a tenth of the load resistance and of the input capacitor's reactance, loaded Q 10, coil Q 150, capacitor Q 1000.
+blocking capacitor a tenth of the load resistance and of the input capacitor's reactance, loaded Q 10, coil Q 150,
+capacitor Q 1000.
 """
 
 from __future__ import annotations

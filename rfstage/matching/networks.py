@@ -76,8 +76,8 @@ def solve_network(
     except ConvergenceError as error:
         raise ImpossibleError(
             f"network {request.network}: with {_quality('coils', request.coil_q)} and "
-            f"{_quality('capacitors', request.capacitor_q)} no parts show {exact_complex(_figures(wanted))} ohm to the device ({error}); "
-            "raise tank.coil_q and tank.capacitor_q, or lower the loaded Q"
+            f"{_quality('capacitors', request.capacitor_q)} no parts show {exact_complex(_figures(wanted))} ohm to "
+            f"the device ({error}); raise tank.coil_q and tank.capacitor_q, or lower the loaded Q"
         ) from None
 
 

@@ -125,8 +125,8 @@ def _compared(design: Design, look: Look) -> list[Text]:
         change = 100 * (point.load_resistance / design.book_resistance - 1)
         lines += note(
             look,
-            f"The book alone would have {show(design.book_resistance, 'ohm', 4)}; corrected by {change:+.1f} %, so that "
-            "the steady state gives the power asked.".replace("-", "−"),
+            f"The book alone would have {show(design.book_resistance, 'ohm', 4)}; corrected by {change:+.1f} %, so "
+            "that the steady state gives the power asked.".replace("-", "−"),
             style="dim",
         )
     return lines

@@ -5,11 +5,12 @@ from __future__ import annotations
 from rich.text import Text
 
 from rfstage.quantity import show
-from rfstage.report.page import Cell, Look, columns, heading, note
+from rfstage.report.page import NO_BREAK, Cell, Look, columns, heading, note, pairs
 from rfstage.sweep import Extreme, Sweep, fitted_value, modulation
 
 ROWS = 24  # of the table; a longer sweep is thinned for the page, never for JSON or CSV
 BAR = 16
+STRAIGHT = 0.1  # of the carrier's voltage: a departure that is heard (common practice, no source)
 
 
 def sweep_page(swept: Sweep, look: Look) -> list[Text]:
@@ -135,23 +136,20 @@ def _modulation(swept: Sweep, look: Look) -> list[Text]:
     found = modulation(swept)
     if found is None:
         return []
-    peaks = ", ".join(f"{name} {show(volts, 'V')}" for name, volts in found.branch_peaks.items())
-    straight = (
-        ""
-        if found.nonlinearity < 0.1
-        else (" The output does not follow the supply: drive harder, or modulate the drive as well.")
-    )
-    return (
-        heading(look, "Modulated through the supply")
-        + note(
-            look,
-            (
-                f"At a depth of {100 * found.depth:.0f} % about {show(found.carrier_supply, 'V')}: the modulator sees "
-                f"{show(found.modulator_load, 'ohm')} and gives {show(found.audio_power, 'W')} of audio; output at the envelope's "
-                f"crest {show(found.envelope_power, 'W')}; greatest departure from a straight line "
-                f"{100 * found.nonlinearity:.1f} % of the carrier; mean device heat {show(found.mean_dissipation, 'W')}; peak at the "
-                f"device {show(found.peak_voltage, 'V')}; peaks of the parts: {peaks}.{straight}"
-            ),
-        )
-        + note(look, ("Class C suits this, and does not suit signals that come in through the drive."), style="dim")
+    items = [
+        ("depth", f"{100 * found.depth:.0f} % about {show(found.carrier_supply, 'V')}"),
+        ("modulator load", show(found.modulator_load, "ohm")),
+        ("audio power", show(found.audio_power, "W")),
+        ("output at the crest", show(found.envelope_power, "W")),
+        ("departure from a line", f"{100 * found.nonlinearity:.1f} % of the carrier"),
+        ("mean device heat", show(found.mean_dissipation, "W")),
+        ("peak at the device", show(found.peak_voltage, "V")),
+    ]
+    peaks = ", ".join(f"{name}{NO_BREAK}{show(volts, 'V')}" for name, volts in found.branch_peaks.items())
+    lines = heading(look, "Modulated through the supply") + pairs(look, items)
+    lines += note(look, f"Peaks across the parts at the crest: {peaks}.")
+    if found.nonlinearity >= STRAIGHT:
+        lines += note(look, "The output does not follow the supply: drive harder, or modulate the drive as well.")
+    return lines + note(
+        look, "Class C suits this, and does not suit signals that come in through the drive.", style="dim"
     )

@@ -93,7 +93,8 @@ def main() -> None:
             settle_many([with_value(stage, tuned, point)], orders=orders)
         cold = (time.process_time() - begin) / len(along[::5])
         units.append(used / cold)
-        line = f"  {name:<32} {1000 * alone:6.1f} ms a solve; 101-point curve {units[-1]:3.0f} cold solves of {orders} orders"
+        line = f"  {name:<32} {1000 * alone:6.1f} ms a solve"
+        line += f"; 101-point curve {units[-1]:3.0f} cold solves of {orders} orders"
         if have:
             transient = transient_seconds(stage, settle(stage, orders=128))
             if transient is None:
