@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import math
 import re
+from collections.abc import Sequence
 
 from rfstage.errors import RfstageError
 
@@ -269,3 +270,20 @@ def show_complex(value: complex, digits: int = 3) -> str:
     places = min(places, 12)
     sign = "−" if value.imag < 0 else "+"
     return f"{value.real:.{places}f} {sign} j{abs(value.imag):.{places}f} Ω".replace("-", "−")
+
+
+def show_orders(orders: Sequence[int]) -> str:
+    """Write rising harmonic orders for a reader, runs drawn together.
+
+    Examples
+    --------
+    >>> show_orders([2, 4, 5, 6, 9])
+    '2, 4–6, 9'
+    """
+    runs: list[list[int]] = []
+    for n in orders:
+        if runs and n == runs[-1][-1] + 1:
+            runs[-1].append(n)
+        else:
+            runs.append([n])
+    return ", ".join(str(run[0]) if len(run) == 1 else f"{run[0]}–{run[-1]}" for run in runs)

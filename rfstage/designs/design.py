@@ -29,7 +29,7 @@ from rfstage.matching.networks import Tank, describe
 from rfstage.matching.quality import strongest_resonance_below
 from rfstage.operating import DriveVoltages, OperatingPoint, Rating, ratings
 from rfstage.pulse import operating_class, pulse_coefficients
-from rfstage.quantity import show
+from rfstage.quantity import show, show_orders
 from rfstage.stage import Stage
 
 if TYPE_CHECKING:
@@ -264,7 +264,7 @@ def _cautions(
     found += about_low_resistance(point.load_resistance, _input_capacitance(tank), job.carrier)
     found += about_resonance(strongest_resonance_below(ladder.branches, settings.load, job.carrier))
     if continued:
-        orders = ", ".join(str(n) for n in continued)
+        orders = show_orders(continued)
         found.append(
             Caution(
                 "load file",
@@ -275,7 +275,7 @@ def _cautions(
             )
         )
     if any(h.strays_decide for h in levels):
-        orders = ", ".join(str(h.order) for h in levels if h.strays_decide)
+        orders = show_orders([h.order for h in levels if h.strays_decide])
         found.append(
             Caution(
                 "strays",

@@ -204,7 +204,7 @@ def _comments(design: Design) -> list[str]:
         f"carrier {exact_text(job.carrier, 'Hz')}, {exact_text(job.power, 'W')} at the load, conduction angle "
         f"{exact_text(job.conduction_angle, 'deg')}, supply {exact_text(job.supply, 'V')}",
         f"device's load resistance {design.point.load_resistance:.6g} ohm, designed to the {design.designed_to} power",
-        f"load {exact_complex(design.settings.load_impedance)} ohm at the carrier; every harmonic is exactly on the grid",
+        f"load {exact_complex(design.settings.load_impedance)} ohm at the carrier; harmonics lie exactly on the grid",
     ]
     for part in design.tank.parts:
         branch = part.branch

@@ -7,6 +7,7 @@ cut in a pipe, and a page reads the same with and without colour.
 from __future__ import annotations
 
 import os
+import re
 import shutil
 import sys
 import textwrap
@@ -18,6 +19,7 @@ from rich.console import Console
 from rich.text import Text
 
 PIPE_WIDTH = 100
+_FIGURE = re.compile(r"(?<=\d) (?=(?:[fpnuµmkMGT]?(?:Hz|V|A|W|Ω|ohm|F|H|S)|dB|dBc|%|deg)\b)| (?=%)")
 NO_BREAK = "\u00a0"  # keeps a figure with its label where a note wraps
 _ASCII = (
     ("µ", "u"),
@@ -94,9 +96,9 @@ def columns(look: Look, rows: Sequence[Sequence[Cell]], *, indent: int = 2, gap:
 
 
 def note(look: Look, words: str, *, style: str = "", indent: int = 2, hanging: int = 0) -> list[Text]:
-    """Return a paragraph wrapped to the page."""
+    """Return a paragraph wrapped to the page, no figure parted from its unit."""
     wrapped = textwrap.wrap(
-        look.text(words),
+        _FIGURE.sub(NO_BREAK, look.text(words)),
         width=max(30, min(look.width, 110)),
         initial_indent=" " * indent,
         subsequent_indent=" " * (indent + hanging),
