@@ -46,6 +46,7 @@ class Job:
     exponent: float | None = None
     threshold: float | None = None
     transfer_factor: float | None = None
+    amplification_factor: float | None = None
     max_voltage: float | None = None
     max_current: float | None = None
     max_dissipation: float | None = None
@@ -53,6 +54,7 @@ class Job:
     input_capacitance: float | None = None
     power_gain: float | None = None
     bias: float | None = None
+    amplitude: float | None = None
     grid_current: float | None = None
     load: complex | MeasuredLoad | None = None
     load_file: str | None = None

@@ -128,6 +128,17 @@ JOB_FIELDS: tuple[Field, ...] = (
         "--transfer-factor",
         "K in A/V^exponent: current = K (control voltage - threshold)^exponent",
     ),
+    Field(
+        "device.amplification_factor",
+        "amplification_factor",
+        "real",
+        "",
+        1,
+        1e4,
+        True,
+        "--amplification-factor",
+        "triode: amplification factor mu",
+    ),
     Field("device.max_voltage", "max_voltage", "real", "V", 0, 1e6, True, "--max-voltage", "rating: peak voltage"),
     Field("device.max_current", "max_current", "real", "A", 0, 1e6, True, "--max-current", "rating: peak current"),
     Field(
@@ -175,6 +186,17 @@ JOB_FIELDS: tuple[Field, ...] = (
         "bipolar: power gain, for the drive power",
     ),
     Field("drive.bias", "bias", "real", "V", -1e5, 1e5, False, "--bias", "bias of the control electrode"),
+    Field(
+        "drive.amplitude",
+        "amplitude",
+        "real",
+        "V",
+        0,
+        1e5,
+        True,
+        "--amplitude",
+        "peak drive voltage, instead of the transfer factor",
+    ),
     Field(
         "drive.grid_current",
         "grid_current",
@@ -269,6 +291,12 @@ def conflicts(values: dict[str, object]) -> list[str]:
         )
     if values.get("loaded_q") is not None and values.get("input_q") is not None:
         found.append("tank.input_q: got both a loaded Q and an input-side Q; give one of them")
+    family = values.get("family")
+    if values.get("amplification_factor") is not None and family != "tube":
+        found.append(
+            f"device.amplification_factor: got one for a device of family {family or 'bipolar'}; it belongs to a triode "
+            "(device.family tube)"
+        )
     if isinstance(values.get("limit"), str):
         try:
             limit_named(str(values["limit"]))

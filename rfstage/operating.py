@@ -21,6 +21,8 @@ from dataclasses import dataclass
 from rfstage.errors import ImpossibleError
 from rfstage.quantity import exact_text
 
+AGREEMENT = 0.005  # of the drive: within it values that each fix the drive are taken to agree
+
 
 @dataclass(frozen=True, slots=True)
 class OperatingPoint:
@@ -182,6 +184,8 @@ def drive_voltages(
     threshold: float | None,
     transfer_factor: float | None,
     bias: float | None,
+    amplitude: float | None = None,
+    anode_feedback: tuple[float, float] = (0.0, 0.0),
 ) -> tuple[float | None, float | None, float | None]:
     """Return bias, amplitude and unbiased amplitude [V] that give the angle.
 
@@ -195,42 +199,67 @@ def drive_voltages(
         Control voltage where current starts [V].
     transfer_factor : float or None
         K [A/V^exponent] of ``i = K (v − threshold)^exponent``.
-    bias : float or None
-        A bias that is given [V]; with no transfer factor it fixes the amplitude.
+    bias, amplitude : float or None
+        Given bias and peak drive [V]; with no transfer factor one of them fixes the other.
+    anode_feedback : tuple of float
+        For a triode: direct anode voltage and swing, both over the amplification factor [V]. The first aids the
+        control voltage, the second works against the drive.
 
     Raises
     ------
     ImpossibleError
-        If bias and transfer factor contradict the angle, or the bias can't give it.
+        If what is given contradicts the angle or itself, or a triode's swing over mu exceeds the drive.
     """
     cosine = math.cos(half_angle)
     if abs(cosine) < 1e-15:
         cosine = 0.0
-    unbiased = threshold / cosine if threshold is not None and threshold * cosine > 0 else None
+    lifted, opposed = anode_feedback
     degrees = math.degrees(2 * half_angle)
-    if threshold is None:
-        return bias, None, None
-    if transfer_factor is not None:
-        amplitude = (peak_current / transfer_factor) ** (1 / exponent) / (2 * math.sin(half_angle / 2) ** 2)  # 1 − cos
-        wanted = threshold - amplitude * cosine
-        if bias is not None and abs(bias - wanted) > 0.005 * amplitude:
-            raise ImpossibleError(
-                f"drive.bias: with this transfer factor {degrees:.4g} deg and the power ask for a bias of "
-                f"{wanted:.4g} V; got {exact_text(bias, 'V')} (leave out the bias or the transfer factor)"
-            )
-        return wanted, amplitude, unbiased
-    if bias is None:
-        return None, None, unbiased
-    if (threshold - bias) * cosine <= 0:
-        side = "below" if cosine > 0 else "above"
+    if amplitude is not None and amplitude <= opposed:
         raise ImpossibleError(
-            f"drive.bias: {degrees:.4g} deg needs a bias {side} the threshold of {exact_text(threshold, 'V')}"
-            f"; got {exact_text(bias, 'V')}"
-            if cosine
-            else f"drive.bias: at 180 deg the bias equals the threshold, so it does not fix the drive; got "
-            f"{exact_text(bias, 'V')} (give the transfer factor instead)"
+            f"drive.amplitude: got {exact_text(amplitude, 'V')}; the swing over the amplification factor, "
+            f"{opposed:.4g} V, is more than that, so the tube never conducts at the trough: drive harder, or give a "
+            "tube of higher amplification factor"
         )
-    return bias, (threshold - bias) / cosine, unbiased
+    if threshold is None:
+        return bias, amplitude, None
+    start = threshold - lifted
+    unbiased = start / cosine + opposed if start * cosine > 0 else None
+    ways: list[tuple[str, float]] = []  # what is given, and the drive it makes effective
+    if transfer_factor is not None:
+        share = 2 * math.sin(half_angle / 2) ** 2  # 1 − cos, with its digits at small angles
+        ways.append(("device.transfer_factor", (peak_current / transfer_factor) ** (1 / exponent) / share))
+    if amplitude is not None:
+        ways.append(("drive.amplitude", amplitude - opposed))
+    if bias is not None and not (ways and cosine == 0):
+        if (start - bias) * cosine <= 0:
+            raise ImpossibleError(_bias_refused(degrees, cosine, start, bias))
+        ways.append(("drive.bias", (start - bias) / cosine))
+    if not ways:
+        return None, None, unbiased
+    name, effective = ways[0]
+    for other, demanded in ways[1:]:
+        if abs(demanded - effective) > AGREEMENT * effective:
+            got = bias if other == "drive.bias" else amplitude
+            raise ImpossibleError(
+                f"{other}: {name}, {degrees:.4g} deg and the power ask for a bias of {start - effective * cosine:.4g} V "
+                f"and a drive of {effective + opposed:.4g} V peak; got {exact_text(got or 0.0, 'V')} (leave one of them out)"
+            )
+    if name == "drive.bias":
+        return bias, effective + opposed, unbiased
+    return start - effective * cosine, effective + opposed, unbiased
+
+
+def _bias_refused(degrees: float, cosine: float, start: float, bias: float) -> str:
+    if cosine == 0:
+        return (
+            "drive.bias: at 180 deg the bias equals the threshold, so it does not fix the drive; got "
+            f"{exact_text(bias, 'V')} (give the transfer factor or the drive's amplitude instead)"
+        )
+    side = "below" if cosine > 0 else "above"
+    return (
+        f"drive.bias: {degrees:.4g} deg needs a bias {side} the threshold of {start:.6g} V; got {exact_text(bias, 'V')}"
+    )
 
 
 def drive_power(

@@ -135,3 +135,42 @@ def test_a_textbook_design_without_a_steady_state_says_so(monkeypatch):
     made = with_settled(design(JOB, textbook=True))
     assert made.settled is None
     assert made.cautions[0].topic == "steady state"
+
+
+TRIODE = Job(
+    carrier=3.6e6,
+    power=300.0,
+    conduction_angle=140.0,
+    supply=1500.0,
+    family="tube",
+    threshold=-20.0,
+    amplification_factor=40.0,
+    amplitude=90.0,
+)
+
+
+def test_a_triode_s_drive_makes_up_for_its_anode_swing():
+    made = design(TRIODE)
+    point = made.point
+    # SOURCE: control voltage of a triode, v_g + v_a/mu against the cut-off (common practice, no source)
+    effective = 90 - point.swing / 40
+    assert made.drive.bias == pytest.approx(-20 - point.electrode_voltage_dc / 40 - effective * np.cos(np.radians(70)))
+    assert made.settled is not None
+    assert made.settled.conduction_angle_deg == pytest.approx(
+        140.0, abs=0.5
+    )  # the settled swing is not quite the book's
+
+
+def test_a_triode_whose_swing_over_mu_exceeds_the_drive_is_refused():
+    with pytest.raises(ImpossibleError, match="the swing over the amplification factor, 33 V, is more than that"):
+        design(replace(TRIODE, amplitude=20.0))
+
+
+def test_an_amplification_factor_belongs_to_a_tube():
+    with pytest.raises(RfstageError, match="belongs to a triode"):
+        replace(TRIODE, family="fet")
+
+
+def test_a_drive_that_contradicts_the_transfer_factor_is_refused_with_the_right_one():
+    with pytest.raises(ImpossibleError, match=r"drive.amplitude: .* a drive of 206.2 V peak; got 90 V"):
+        design(replace(TRIODE, transfer_factor=0.01))

@@ -333,7 +333,7 @@ def test_a_load_that_does_not_reach_the_carrier_says_its_reach(tmp_path):
 def test_a_measured_load_names_the_harmonics_it_was_continued_at(examples):
     made = design(load_job(examples / "gallery.toml"))
     assert made.continued == (5, 6, 7, 8, 9, 10)
-    assert any("orders 5–10," in caution.text for caution in made.cautions if caution.topic == "load file")
+    assert any("orders 5–10;" in caution.text for caution in made.cautions if caution.topic == "load file")
 
 
 def test_nothing_is_written_when_one_of_several_files_can_not_be(tmp_path):

@@ -258,7 +258,7 @@ def test_bias_at_half_a_cycle_fixes_no_drive_and_is_refused_asking_for_the_trans
 
 def test_bias_that_contradicts_the_transfer_factor_is_refused_with_the_right_one():
     # amplitude (2 A / 4 A/V) / (1 - 0.5) = 1 V; bias 0.7 - 0.5 = 0.2 V
-    with pytest.raises(ImpossibleError, match=r"ask for a bias of 0\.2 V; got 600 mV"):
+    with pytest.raises(ImpossibleError, match=r"ask for a bias of 0\.2 V and a drive of 1 V peak; got 600 mV"):
         drive(transfer_factor=4.0, bias=0.6)
 
 

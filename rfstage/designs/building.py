@@ -49,6 +49,8 @@ def _drive(settings: Settings, point: OperatingPoint) -> DriveVoltages:
         threshold=settings.threshold,
         transfer_factor=job.transfer_factor,
         bias=job.bias,
+        amplitude=job.amplitude,
+        anode_feedback=_anode_feedback(settings, point),
     )
     power = drive_power(
         settings.family,
@@ -61,6 +63,12 @@ def _drive(settings: Settings, point: OperatingPoint) -> DriveVoltages:
         grid_current=job.grid_current,
     )
     return DriveVoltages(bias, amplitude, unbiased, power)
+
+
+def _anode_feedback(settings: Settings, point: OperatingPoint) -> tuple[float, float]:
+    """Return direct anode voltage and swing over the amplification factor [V]; zeros without one."""
+    mu = settings.job.amplification_factor
+    return (0.0, 0.0) if mu is None else (point.electrode_voltage_dc / mu, point.swing / mu)
 
 
 def _stage(
@@ -76,11 +84,13 @@ def _stage(
         threshold = settings.threshold
     else:
         stand_ins["device.threshold"] = threshold
+    lifted, opposed = _anode_feedback(settings, point)
     amplitude, bias = drive.amplitude, drive.bias
-    if amplitude is None or bias is None:
-        amplitude = above / peak_share
-        bias = threshold - amplitude * cosine
-    peak_above = amplitude * peak_share
+    if amplitude is None:
+        amplitude = above / peak_share + opposed
+    if bias is None or drive.amplitude is None:
+        bias = threshold - lifted - (amplitude - opposed) * cosine
+    peak_above = (amplitude - opposed) * peak_share
     transfer = job.transfer_factor
     if transfer is None:
         transfer = point.peak_current / peak_above**settings.exponent
@@ -94,6 +104,7 @@ def _stage(
         threshold_softness=_rounded(SOFTNESS * peak_above),
         knee_voltage=_rounded(knee_voltage),
         knee_resistance=_rounded(knee_resistance),
+        amplification_factor=job.amplification_factor,
         output_capacitance=settings.output_capacitance,
         reverse_conduction=_reverse(settings.family, point),
         max_voltage=job.max_voltage,

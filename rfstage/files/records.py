@@ -175,6 +175,15 @@ def settled_record(state: SteadyState) -> dict[str, Any]:
     return {
         **_meters(state),
         "dc_power_w": state.dc_power,
+        "devices": [
+            {
+                "dc_current_a": d.dc_current,
+                "dissipation_w": d.dissipation,
+                "peak_voltage_v": d.peak_voltage,
+                "peak_current_a": d.peak_current,
+            }
+            for d in state.devices
+        ],
         "choke_loss_w": state.choke_loss,
         "branch_losses_w": dict(state.branch_losses),
         "branch_stresses": [

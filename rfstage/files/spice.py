@@ -10,6 +10,7 @@ import math
 from dataclasses import dataclass
 
 from rfstage.device import Device
+from rfstage.errors import ImpossibleError
 from rfstage.ladder import Branch
 from rfstage.load import MeasuredLoad
 from rfstage.quantity import exact_complex, exact_text
@@ -60,7 +61,14 @@ def spice_text(stage: Stage, run: Run | None = None) -> str:
     -------
     str
         Start-up with the device off, a transient analysis, and a Fourier analysis of the load voltage.
+
+    Raises
+    ------
+    ImpossibleError
+        For a pair of devices.
     """
+    if stage.device.pair is not None:
+        raise ImpossibleError("a SPICE deck holds one device, and this stage has a pair; leave the deck out")
     run = run or default_run(stage)
     period = 1 / stage.carrier
     begin, end = (run.periods - run.measured) * period, run.periods * period

@@ -14,7 +14,9 @@ The Jacobian is exact. With G_n the coefficients of the sampled slope di/dv, and
 
     dI_k/da_l = G_{k−l} + G_{k+l}            dI_k/db_l = j (G_{k−l} − G_{k+l})
 
-so that it is a Toeplitz and a Hankel array, both only views of one row of numbers. A passive ladder and a
+so that it is a Toeplitz and a Hankel array, both only views of one row of numbers. The unknowns of a pair are its
+two modes, each with its own Z; a mode's current depends on its own voltage by the mean of the two devices' slopes,
+and on the other mode's by half their difference. A passive ladder and a
 current that rises with the voltage make the problem monotone: there is one solution, and any way to it is right.
 """
 
@@ -28,6 +30,7 @@ from numpy.typing import NDArray
 
 from rfstage.devicelaw import Array, junction_charge
 from rfstage.steady.circuit import Circuit
+from rfstage.steady.modes import EVEN, ODD, each, modes
 from rfstage.steady.network import Complex
 
 TOLERANCE = 1e-11  # of the supply voltage, or of the current's response where that is less
@@ -49,7 +52,8 @@ PATIENT = Effort(60, 12)
 class Point:
     """A trial: unknowns and scaled residual [V] (S, N + 1), merit and goal [-] (S,), sampled slopes (S, M).
 
-    ``merit`` is the residual's length over the supply voltage, and the solution has ``merit <= goal``.
+    Pairs have modes and devices as the second axis. ``merit`` is the residual's length over the supply voltage, and
+    the solution has ``merit <= goal``.
     """
 
     unknowns: Complex
@@ -75,7 +79,7 @@ class Point:
 
 @dataclass(frozen=True, slots=True)
 class Outcome:
-    """Where Newton ended: unknowns (S, N + 1), merit, whether it converged, and iterations spent (S,)."""
+    """Where Newton ended: unknowns (S, N + 1), of pairs (S, 2, N + 1), merit, convergence and iterations (S,)."""
 
     unknowns: Complex
     merit: Array
@@ -84,9 +88,9 @@ class Outcome:
 
 
 def voltage(circuit: Circuit, unknowns: Complex) -> Array:
-    """Return the device node's voltage [V] over the cycle, shape (S, M)."""
-    half = unknowns / 2
-    half[:, 0] = unknowns[:, 0]
+    """Return the device node's voltage [V] over the cycle, shape (S, M), or of both devices (S, 2, M)."""
+    half = (each(unknowns) if circuit.paired else unknowns) / 2
+    half[..., 0] *= 2
     wave: Array = np.fft.irfft(half, circuit.samples, norm="forward")
     wave += circuit.supply
     return wave
@@ -94,7 +98,7 @@ def voltage(circuit: Circuit, unknowns: Complex) -> Array:
 
 def spectrum(wave: Array, orders: int) -> Complex:
     """Return twice the Fourier coefficients 0 … orders: peak phasors, and twice the mean."""
-    coefficients: Complex = np.fft.rfft(wave, norm="forward")[:, :orders + 1] * 2
+    coefficients: Complex = np.fft.rfft(wave, norm="forward")[..., :orders + 1] * 2
     return coefficients
 
 
@@ -108,43 +112,58 @@ def evaluate(circuit: Circuit, unknowns: Complex) -> Point:
     if circuit.law.parts.charge:
         charge, capacitance = junction_charge(circuit.law, volts)
         drawn += 1j * circuit.omega * spectrum(charge, n)
-    residual = circuit.impedance * drawn
-    supply = circuit.supply[:, 0]
+    residual = circuit.impedance * (modes(drawn) if circuit.paired else drawn)
+    supply = circuit.supply.reshape(-1)
     goal = TOLERANCE * np.minimum(1, _length(residual) / supply)
     residual += circuit.scale * unknowns
     return Point(unknowns, residual, _length(residual) / supply, goal, conductance, capacitance)
 
 
 def _length(phasors: Complex) -> Array:
-    length: Array = np.sqrt(np.vecdot(phasors, phasors).real)
+    flat = phasors.reshape(phasors.shape[0], -1)
+    length: Array = np.sqrt(np.vecdot(flat, flat).real)
     return length
 
 
 def jacobian(circuit: Circuit, point: Point) -> Array:
     """Return d residual/d unknowns [-], shape (S, 2N + 2, 2N + 2), exact for the sampled law.
 
-    Rows and columns are real and imaginary part of order 0, then of order 1, and so on.
+    Rows and columns are real and imaginary part of order 0, then of order 1, and so on; of a pair first those of
+    the even mode, then those of the odd, shape (S, 4N + 4, 4N + 4).
     """
     n = circuit.orders
-    z = circuit.impedance[:, :, np.newaxis]
+    z = circuit.impedance[..., np.newaxis]
     over_a, over_b = _slopes(point.conductance, n)
-    over_a *= z
-    over_b *= z
     if point.capacitance is not None:
         charge_a, charge_b = _slopes(point.capacitance, n)
-        reactive = z * (1j * circuit.omega[:, :, np.newaxis])
-        over_a += reactive * charge_a
-        over_b += reactive * charge_b
-    # the columns of b are j times over_b: its real part is −imag, its imaginary part real
-    j = np.empty((z.shape[0], 2 * n + 2, 2 * n + 2))
+        rate = 1j * circuit.omega[..., np.newaxis]
+        over_a += rate * charge_a
+        over_b += rate * charge_b
+    stages, size = z.shape[0], 2 * circuit.scale[0].size
+    j = np.empty((stages, size, size))
+    if circuit.paired:
+        over_a, over_b = modes(over_a), modes(over_b)
+        blocks = j.reshape(stages, 2, 2 * n + 2, 2, 2 * n + 2)
+        for row in (EVEN, ODD):
+            for column in (EVEN, ODD):
+                mixed = row ^ column
+                _fill(blocks[:, row, :, column], z[:, row] * over_a[:, mixed], z[:, row] * over_b[:, mixed])
+    else:
+        over_a *= z
+        over_b *= z
+        _fill(j, over_a, over_b)
+    diagonals, scale = j.reshape(stages, -1)[:, ::size + 1], circuit.scale.reshape(stages, -1)
+    diagonals[:, ::2] += scale
+    diagonals[:, 1::2] += scale
+    return j
+
+
+def _fill(j: Array, over_a: Complex, over_b: Complex) -> None:
+    """Write the real form; the columns of b are j times over_b: its real part is −imag, its imaginary part real."""
     j[:, ::2, ::2] = over_a.real
     j[:, 1::2, ::2] = over_a.imag
     np.negative(over_b.imag, out=j[:, ::2, 1::2])
     j[:, 1::2, 1::2] = over_b.real
-    diagonals = j.reshape(z.shape[0], -1)[:, ::2 * n + 3]
-    diagonals[:, ::2] += circuit.scale
-    diagonals[:, 1::2] += circuit.scale
-    return j
 
 
 def _slopes(wave: Array, n: int) -> tuple[Complex, Complex]:
@@ -152,16 +171,17 @@ def _slopes(wave: Array, n: int) -> tuple[Complex, Complex]:
 
     Rows k and columns l from 0 to n. Row 0 is of twice the mean, as in `spectrum`.
     """
-    g = np.fft.rfft(wave, norm="forward")
-    stages = wave.shape[0]
+    g = np.fft.rfft(wave.reshape(-1, wave.shape[-1]), norm="forward")
+    stages = g.shape[0]
     row = np.empty((stages, 3 * n + 1), dtype=np.complex128)  # G_{−n} … G_{2n}; G_{−n} is the conjugate of G_n
     row[:, n:] = g[:, :2 * n + 1]
     np.conjugate(g[:, n:0:-1], out=row[:, :n])
     step = row.itemsize
     shape, along = (stages, n + 1, n + 1), row.strides[0]
+    wanted = (*wave.shape[:-1], n + 1, n + 1)
     toeplitz = np.ndarray(shape, row.dtype, row, n * step, (along, step, -step))  # G_{k−l}
     hankel = np.ndarray(shape, row.dtype, row, n * step, (along, step, step))  # G_{k+l}
-    return toeplitz + hankel, toeplitz - hankel
+    return (toeplitz + hankel).reshape(wanted), (toeplitz - hankel).reshape(wanted)
 
 
 def newton(circuit: Circuit, start: Complex, *, effort: Effort = QUICK) -> Outcome:
@@ -206,7 +226,7 @@ def _record(out: Outcome, rows: NDArray[np.int64], point: Point, which: Any, spe
 
 def _step(circuit: Circuit, point: Point) -> Complex:
     matrix = jacobian(circuit, point)
-    wanted = point.residual.view(np.float64)
+    wanted = point.residual.view(np.float64).reshape(matrix.shape[:2])
     steps = np.full_like(wanted, np.nan)
     try:
         np.negative(np.linalg.solve(matrix, wanted[:, :, np.newaxis])[:, :, 0], out=steps)
@@ -214,7 +234,7 @@ def _step(circuit: Circuit, point: Point) -> Complex:
         for row, one in enumerate(matrix):
             if np.linalg.cond(one) < 1e15:
                 steps[row] = -np.linalg.solve(one, wanted[row])
-    return steps.view(np.complex128)
+    return steps.view(np.complex128).reshape(point.residual.shape)
 
 
 def _search(circuit: Circuit, point: Point, step: Complex, trial: Point, halvings: int) -> NDArray[np.int64]:

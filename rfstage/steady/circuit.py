@@ -36,6 +36,9 @@ NEARLY_DC = 1e-6  # of the carrier: where a ladder shows whether it conducts dir
 class Circuit:
     """Stages of one order number N as arrays with a stage axis S in front, M samples a cycle.
 
+    Pairs have an axis of two behind that of the stages: devices a and b for drive and law, modes even and odd
+    (`rfstage.steady.modes`) for impedance and scale; and supply, bias and ω one of length one.
+
     ``supply`` [V] (S, 1); ``bias`` and ``amplitude`` of the drive [V] (S, 1); ``law`` the devices;
     ``driven`` the same under drive; ``impedance`` scaled [ohm] (S, N + 1), that of dc halved since a mean
     counts once where a peak counts twice; ``scale`` of each equation [-] (S, N + 1); ``resistance`` |Z_1| [ohm]
@@ -57,22 +60,33 @@ class Circuit:
     @classmethod
     def of(cls, stages: Sequence[Stage], ladders: Sequence[Network], orders: int) -> Circuit:
         """Build the arrays of stages that passed `check`, from the first orders of their ladders, in order."""
-        law = Law.of([stage.device for stage in stages])
-        hard = bool((law.softness == 0).any())
-        least = orders * (SAMPLES_PER_ORDER_HARD if hard else SAMPLES_PER_ORDER)
-        samples = 1 << (least - 1).bit_length()
         impedance = np.empty((len(stages), orders + 1), dtype=np.complex128)
         impedance[:, 0] = [stage.supply.choke_resistance for stage in stages]
         np.concatenate([ladder.impedance[:, :orders] for ladder in ladders], out=impedance[:, 1:])
-        size = np.abs(impedance)
-        scale = size[:, 1:2] / (size[:, 1:2] + size)
+        law = Law.of([stage.device for stage in stages])
+        supply, bias, amplitude, carrier = sources(stages)
+        return cls.assembled(law, supply, bias, amplitude, carrier, impedance, np.abs(impedance[:, 1]))
+
+    @classmethod
+    def assembled(cls, law: Law, supply: Array, bias: Array, amplitude: Array, carrier: Array,
+                  impedance: NDArray[np.complex128], resistance: Array) -> Circuit:
+        """Build the arrays from devices, sources as columns, and impedances [ohm] still to be scaled."""
+        orders = impedance.shape[-1] - 1
+        hard = bool((law.softness == 0).any())
+        least = orders * (SAMPLES_PER_ORDER_HARD if hard else SAMPLES_PER_ORDER)
+        samples = 1 << (least - 1).bit_length()
+        reference = resistance.reshape(supply.shape)
+        scale = reference / (reference + np.abs(impedance))
         scaled = impedance * scale
-        scaled[:, 0] /= 2
-        supply, bias, amplitude, carrier = np.array(
-            [(s.supply.voltage, s.drive.bias, s.drive.amplitude, s.carrier) for s in stages]).T[:, :, np.newaxis]
+        scaled[..., 0] /= 2
         driven = DrivenLaw.at(law, bias + amplitude * _cosine(samples))
         omega = 2 * math.pi * carrier * np.arange(orders + 1)
-        return cls(orders, samples, supply, bias, amplitude, law, driven, scaled, scale, size[:, 1], omega)
+        return cls(orders, samples, supply, bias, amplitude, law, driven, scaled, scale, resistance, omega)
+
+    @property
+    def paired(self) -> bool:
+        """Whether the stages are pairs of devices."""
+        return self.impedance.ndim == 3
 
     def take(self, rows: Any) -> Circuit:
         """Return the chosen rows."""
@@ -91,6 +105,13 @@ class Circuit:
     def _with_law(self, law: Law) -> Circuit:
         control = self.bias + self.amplitude * _cosine(self.samples)
         return replace(self, law=law, driven=DrivenLaw.at(law, control))
+
+
+def sources(stages: Sequence[Stage]) -> tuple[Array, Array, Array, Array]:
+    """Return supply, bias and drive amplitude [V] and carrier [Hz], each of shape (S, 1)."""
+    rows = [(s.supply.voltage, s.drive.bias, s.drive.amplitude, s.carrier) for s in stages]
+    supply, bias, amplitude, carrier = np.array(rows).T[:, :, np.newaxis]
+    return supply, bias, amplitude, carrier
 
 
 def _cosine(samples: int) -> Array:

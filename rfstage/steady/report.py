@@ -1,20 +1,30 @@
-"""What solutions mean: currents, powers, losses by walking the ladder, stresses, harmonics."""
+"""What solutions mean: currents, powers, losses by walking the ladder, stresses, harmonics.
+
+::
+
+    Cycle      the solution's waves and phasors
+    Account    what they come to in the stage's circuit, by `account` here or `rfstage.steady.pair`
+    states     the steady states made of both
+"""
 
 from __future__ import annotations
 
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
 from rfstage.devicelaw import Array, junction_charge
+from rfstage.ladder import Branch
 from rfstage.stage import Stage
 from rfstage.steady.balance import spectrum, voltage
 from rfstage.steady.circuit import Circuit
+from rfstage.steady.modes import each
 from rfstage.steady.network import Complex, Network
 from rfstage.steady.solve import Solution
-from rfstage.steady.state import BranchStress, HarmonicLevel, OrdersChange, SteadyState, Waveform
+from rfstage.steady.state import BranchStress, DeviceShare, HarmonicLevel, OrdersChange, SteadyState, Waveform
 
 LISTED = 10  # harmonics listed at least; beyond, up to half of the orders solved
 ABSENT = 1e-12  # of the fundamental: the accuracy of the balance; a weaker harmonic is not there
@@ -26,7 +36,8 @@ COUNTED = 1e-8  # of the carrier's power: harmonics below −80 dBc do not decid
 class Cycle:
     """Solutions over the cycle: samples of voltage [V] and current [A], shape (S, M), and phasors.
 
-    ``node`` [V], ``device`` and ``charging`` current [A], shape (S, N + 1), entry 0 the mean.
+    ``node`` [V], ``device`` and ``charging`` current [A], shape (S, N + 1), entry 0 the mean. All of them have an
+    axis of two behind the stages where those are pairs.
     """
 
     volts: Array
@@ -41,23 +52,33 @@ class Cycle:
         n, unknowns = circuit.orders, solution.unknowns
         volts = voltage(circuit, unknowns)
         amperes = circuit.driven.current(volts)[0]
-        node = unknowns.copy()
-        node[:, :1] += circuit.supply
+        node = each(unknowns) if circuit.paired else unknowns.copy()
+        node[..., :1] += circuit.supply
         device = spectrum(amperes, n)
-        device[:, 0] /= 2
+        device[..., 0] /= 2
         charging = np.zeros_like(device)
         if circuit.law.parts.charge:
             charging = 1j * circuit.omega * spectrum(junction_charge(circuit.law, volts)[0], n)
-        idle = np.abs(amperes).max(axis=1) * circuit.resistance < NO_CURRENT * circuit.supply[:, 0]
+        most = np.abs(amperes).reshape(len(amperes), -1).max(axis=1)
+        idle = most * circuit.resistance < NO_CURRENT * circuit.supply.reshape(-1)
         if idle.any():
             volts[idle] = circuit.supply[idle]
             for current in (amperes, device, charging):
                 current[idle] = 0
             node[idle] = 0
-            node[idle, 0] = circuit.supply[idle, 0]
+            node[idle, ..., :1] = circuit.supply[idle]
         return cls(volts, amperes, node, device, charging)
 
-    def take(self, rows: Sequence[int]) -> Cycle:
+    @property
+    def orders(self) -> int:
+        """Orders solved."""
+        return int(self.node.shape[-1]) - 1
+
+    def of_device(self, which: int) -> Cycle:
+        """Return one device of every pair."""
+        return self.take((slice(None), which))
+
+    def take(self, rows: Any) -> Cycle:
         """Return the chosen rows."""
         return Cycle(self.volts[rows], self.amperes[rows], self.node[rows], self.device[rows], self.charging[rows])
 
@@ -70,10 +91,10 @@ class Figures:
     load_powers: Array
 
     @classmethod
-    def of(cls, cycle: Cycle, ladder: Network) -> Figures:
-        """Return those of one stage."""
-        drawn = (cycle.device + cycle.charging)[0, 1:LISTED + 1]
-        return cls(float(cycle.device[0, 0].real), ladder.gain[0, :drawn.size] * np.abs(drawn)**2)
+    def of(cls, dc_current: complex, drawn: Complex, ladder: Network) -> Figures:
+        """Return those of one stage, from dc current and the phasors drawn from its ladder [A], shape (N + 1,)."""
+        first = drawn[1:LISTED + 1]
+        return cls(dc_current.real, ladder.gain[0, :first.size] * np.abs(first)**2)
 
     def change_from(self, before: Figures) -> OrdersChange:
         """Return what moved since ``before``."""
@@ -87,50 +108,86 @@ class Figures:
                             float(moved[1:].max(initial=0.0)))
 
 
-def report(stages: Sequence[Stage], ladder: Network, cycle: Cycle, solution: Solution, *,
-           change: OrdersChange | None = None) -> list[SteadyState]:
-    """Return the steady states of stages of one build; all arguments are of the same rows."""
-    orders, samples = ladder.frequencies.size, cycle.volts.shape[1]
-    supply = np.array([stage.supply.voltage for stage in stages])
-    dc_current = cycle.device[:, 0].real
+@dataclass(frozen=True, slots=True)
+class Account:
+    """What solutions come to, a row for each stage.
+
+    ``dc_current`` [A], ``dissipation`` and ``charge_power`` [W], ``minimum_voltage`` and ``peak_voltage`` [V] and
+    ``peak_current`` [A] (S,); ``load_powers`` [W] (S, N); ``generated`` device current that the load can feel [A]
+    (S, N + 1); ``losses`` [W], ``peaks`` [V] and ``rms`` [A] of the branches (B, S); ``devices`` of each stage.
+    """
+
+    dc_current: Array
+    dissipation: Array
+    charge_power: Array
+    minimum_voltage: Array
+    peak_voltage: Array
+    peak_current: Array
+    load_powers: Array
+    generated: Complex
+    losses: Array
+    peaks: Array
+    rms: Array
+    devices: Sequence[tuple[DeviceShare, ...]]
+
+
+def account(stages: Sequence[Stage], ladder: Network, cycle: Cycle) -> Account:
+    """Return the account of stages of one build, each with one device or devices at one node."""
     into_ladder = -(cycle.device + cycle.charging)[:, 1:]
     squared = (into_ladder * into_ladder.conj()).real
-    load_powers = ladder.gain * squared
     losses, peaks, rms = _stresses(stages, ladder, cycle, into_ladder, squared)
-    dissipation = (cycle.volts * cycle.amperes).mean(axis=1)
-    charge_power = (cycle.node[:, 1:] * cycle.charging[:, 1:].conj()).real.sum(axis=1) / 2
-    found = dissipation + charge_power + load_powers.sum(axis=1) + losses.sum(axis=0)
-    levels = _levels(load_powers, cycle.device)
+    return Account(
+        cycle.device[:, 0].real, (cycle.volts * cycle.amperes).mean(axis=-1), charge_power(cycle),
+        cycle.volts.min(axis=-1), cycle.volts.max(axis=-1), cycle.amperes.max(axis=-1), ladder.gain * squared,
+        cycle.device, losses, peaks, rms, [()] * len(stages))
+
+
+def charge_power(cycle: Cycle) -> Array:
+    """Return the power of the junction charge [W], of each device."""
+    power: Array = (cycle.node[..., 1:] * cycle.charging[..., 1:].conj()).real.sum(axis=-1) / 2
+    return power
+
+
+def states(stages: Sequence[Stage], ladder: Network, first: Cycle, found: Account, solution: Solution,
+           change: OrdersChange | None) -> list[SteadyState]:
+    """Return the steady states of stages of one build; all arguments are of the same rows.
+
+    ``ladder`` has the branches, ``first`` is the cycle of the one device or of a pair's first.
+    """
+    orders, samples = ladder.frequencies.size, first.volts.shape[1]
+    supply = np.array([stage.supply.voltage for stage in stages])
+    spent = found.dissipation + found.charge_power + found.load_powers.sum(axis=1) + found.losses.sum(axis=0)
+    levels = _levels(found.load_powers, found.generated)
     phase = 360 / samples * np.arange(samples)
-    for shared in (phase, cycle.volts, cycle.amperes, cycle.node, cycle.device):
+    for shared in (phase, first.volts, first.amperes, first.node, first.device):
         shared.flags.writeable = False
-    extremes = zip(cycle.volts.min(axis=1).tolist(), cycle.volts.max(axis=1).tolist(),
-                   cycle.amperes.max(axis=1).tolist(), strict=True)
     names = [branch.name for branch in ladder.branches]
     frequencies = ladder.frequencies.tolist()
-    states = []
-    for row, (stage, (lowest, highest, most)) in enumerate(zip(stages, extremes, strict=True)):
-        branches = tuple(map(BranchStress, names, losses[:, row].tolist(), peaks[:, row].tolist(),
-                             rms[:, row].tolist()))
-        powers = load_powers[row].tolist()
+    listed = []
+    for row, stage in enumerate(stages):
+        branches = tuple(map(BranchStress, names, found.losses[:, row].tolist(), found.peaks[:, row].tolist(),
+                             found.rms[:, row].tolist()))
+        powers = found.load_powers[row].tolist()
         fed = len(stage.feed)
-        current = float(dc_current[row])
+        current = float(found.dc_current[row])
         power = float(supply[row]) * current
-        states.append(SteadyState(
-            stage=stage, device_voltage=cycle.node[row], device_current=cycle.device[row],
+        listed.append(SteadyState(
+            stage=stage, device_voltage=first.node[row], device_current=first.device[row],
             dc_current=current, dc_power=power, output_power=powers[0],
             efficiency=powers[0] / power if power > 0 else None,
-            dissipation=float(dissipation[row]), charge_power=float(charge_power[row]),
+            dissipation=float(found.dissipation[row]), charge_power=float(found.charge_power[row]),
             branches=branches, choke_loss=branches[fed - 1].loss,
             branch_losses={branch.name: branch.loss for branch in branches[fed:]},
-            minimum_voltage=lowest, peak_voltage=highest, peak_current=most,
-            conduction_angle_deg=conduction_angle_deg(stage, cycle.node[row], samples),
+            minimum_voltage=float(found.minimum_voltage[row]), peak_voltage=float(found.peak_voltage[row]),
+            peak_current=float(found.peak_current[row]),
+            conduction_angle_deg=conduction_angle_deg(stage, first.node[row], samples),
             harmonics=tuple(map(HarmonicLevel, range(2, orders + 1), frequencies[1:], powers[1:], levels[row])),
-            waveform=Waveform(phase, cycle.volts[row], cycle.amperes[row]), orders_solved=orders,
-            balance_error=(power - float(found[row])) / power if power > 0 else 0.0,
+            waveform=Waveform(phase, first.volts[row], first.amperes[row]), orders_solved=orders,
+            balance_error=(power - float(spent[row])) / power if power > 0 else 0.0,
             residual=float(solution.merit[row]), change_from_half_the_orders=change,
-            iterations=int(solution.iterations[row]), method=solution.methods[row]))
-    return states
+            iterations=int(solution.iterations[row]), method=solution.methods[row],
+            devices=found.devices[row]))
+    return listed
 
 
 def _stresses(stages: Sequence[Stage], ladder: Network, cycle: Cycle, into_ladder: Complex,
@@ -138,24 +195,40 @@ def _stresses(stages: Sequence[Stage], ladder: Network, cycle: Cycle, into_ladde
     """Return loss [W], peak voltage [V] and rms current [A] of every branch, shape (B, S)."""
     currents = ladder.currents * into_ladder
     losses = (ladder.losses * squared).sum(axis=2)
-    squares = (currents * currents.conj()).real.sum(axis=2) / 2
-    half = np.zeros((*currents.shape[:2], currents.shape[2] + 1), dtype=np.complex128)
-    np.multiply(ladder.branch_impedances(), currents / 2, out=half[:, :, 1:])
-    held = cycle.node[:, 0]
-    for row, branch in enumerate(ladder.branches):
+    mean = cycle.node[:, 0].real
+    volts = dc_across(ladder.branches, mean)
+    amperes = np.zeros_like(volts)
+    choke = len(stages[0].feed) - 1
+    volts[choke] = mean - [stage.supply.voltage for stage in stages]
+    amperes[choke] = cycle.device[:, 0].real
+    losses[choke] += amperes[choke]**2 * [stage.supply.choke_resistance for stage in stages]
+    return losses, *borne(currents, ladder.branch_impedances(), volts, amperes)
+
+
+def dc_across(branches: Sequence[Branch], held: Array) -> Array:
+    """Return the direct voltage across every branch [V] (B, S), of what is held at the first (S,)."""
+    volts = np.zeros((len(branches), held.size))
+    for row, branch in enumerate(branches):
         blocks = branch.place == "series" and branch.kind == "capacitor"
         if blocks or branch.place == "shunt":
-            half[row, :, 0] = held
+            volts[row] = held
         if blocks:
             held = np.zeros_like(held)
-    choke = len(stages[0].feed) - 1
-    half[choke, :, 0] = cycle.node[:, 0] - [stage.supply.voltage for stage in stages]
-    dc_square = cycle.device[:, 0].real**2
-    squares[choke] += dc_square
-    losses[choke] += dc_square * [stage.supply.choke_resistance for stage in stages]
-    samples = 1 << (8 * into_ladder.shape[1] - 1).bit_length()
+    return volts
+
+
+def borne(currents: Complex, impedances: Complex, volts: Array, amperes: Array) -> tuple[Array, Array]:
+    """Return peak voltage [V] and rms current [A] of branches (B, S).
+
+    From their phasors [A], impedances [ohm] (B, S, N), direct voltage [V] and direct current [A] (B, S).
+    """
+    orders = currents.shape[2]
+    half = np.empty((*currents.shape[:2], orders + 1), dtype=np.complex128)
+    np.multiply(impedances, currents / 2, out=half[:, :, 1:])
+    half[:, :, 0] = volts
+    samples = 1 << (8 * orders - 1).bit_length()
     peaks = np.abs(np.fft.irfft(half, samples, norm="forward")).max(axis=2)
-    return losses, peaks, np.sqrt(squares)
+    return peaks, np.sqrt(amperes**2 + (currents * currents.conj()).real.sum(axis=2) / 2)
 
 
 def _levels(load_powers: Array, device: Complex) -> list[list[float | None]]:

@@ -9,8 +9,10 @@ import numpy as np
 from rfstage.errors import ConvergenceError, OutOfRangeError
 from rfstage.stage import Stage
 from rfstage.steady.circuit import Circuit, check
-from rfstage.steady.network import Complex, network, networks
-from rfstage.steady.report import Cycle, Figures, report
+from rfstage.steady.network import Complex
+from rfstage.steady.pair import Pairs
+from rfstage.steady.report import Figures
+from rfstage.steady.single import Singles, System
 from rfstage.steady.solve import FAILED, solve
 from rfstage.steady.state import SteadyState
 
@@ -73,31 +75,31 @@ def settle(stage: Stage, *, orders: int | None = None, start: SteadyState | None
     check(stage)
     if orders is None:
         levels = _doubled(FIRST_CHOSEN, MOST_CHOSEN)
-        ladder = network(stage, levels[1])
+        system = _system([stage], levels[1])
     else:
         _check_orders(orders)
         levels = [*_levels(orders // 2), orders]
-        ladder = network(stage, orders)
+        system = _system([stage], orders)
     before: Figures | None = None
     unknowns: Complex | None = None
     for level in levels:
-        if ladder.frequencies.size < level:
-            ladder = network(stage, level)
-        circuit = Circuit.of([stage], [ladder], level)
-        solution = solve(circuit, _start(circuit, unknowns, start))
+        if system.orders < level:
+            system = _system([stage], level)
+        circuit = system.circuit(level)
+        solution = solve(circuit, _start(system, circuit, unknowns, start))
         if FAILED in solution.methods:
             if level == levels[-1]:
                 raise _not_reached("the steady state", float(solution.merit[0]))
             before = unknowns = None
             continue
         unknowns = solution.unknowns
-        cycle = Cycle.of(circuit, solution)
-        figures = Figures.of(cycle, ladder)
+        cycle = system.cycle(circuit, solution)
+        figures = system.figures(cycle)
         change = None if before is None else figures.change_from(before)
         if orders is None and change is not None and change.settled:
             break
         before = figures
-    return report([stage], ladder.first(circuit.orders), cycle, solution, change=change)[0]
+    return system.states(cycle, solution, change)[0]
 
 
 def settle_many(stages: Sequence[Stage], *, orders: int, start: SteadyState | None = None) -> tuple[SteadyState, ...]:
@@ -144,12 +146,15 @@ def settle_many(stages: Sequence[Stage], *, orders: int, start: SteadyState | No
     _check_orders(orders)
     for stage in stages:
         check(stage)
-    at_once = max(1, BLOCK // (2 * orders + 2)**2)
     found: dict[int, SteadyState] = {}
     # a hard corner wants more samples: kept apart, so that no stage's figures depend on its neighbours
-    hard = [stage.device.threshold_softness == 0 for stage in stages]
-    for kind in (False, True):
-        places = [place for place, is_hard in enumerate(hard) if is_hard is kind]
+    # a balanced pair is one device and an unlike one two: apart as well
+    kinds = [(stage.device.threshold_softness == 0, stage.device.imbalance > 0, stage.device.pair or "")
+             for stage in stages]
+    for kind in sorted(set(kinds)):
+        _, unlike, _ = kind
+        at_once = max(1, BLOCK // ((4 if unlike else 2) * (orders + 1))**2)
+        places = [place for place, its in enumerate(kinds) if its == kind]
         for first in range(0, len(places), at_once):
             block = places[first:first + at_once]
             states = _settle_block([stages[place] for place in block], block, orders, start)
@@ -159,20 +164,20 @@ def settle_many(stages: Sequence[Stage], *, orders: int, start: SteadyState | No
 
 def _settle_block(stages: Sequence[Stage], places: Sequence[int], orders: int,
                   start: SteadyState | None) -> list[SteadyState]:
-    ladders = networks(stages, orders)
+    system = _system(stages, orders)
     unknowns: Complex | None = None
     for level in _levels(orders):
-        circuit = Circuit.of(stages, [ladder for ladder, _ in ladders], level)
-        solution = solve(circuit, _start(circuit, unknowns, start))
+        circuit = system.circuit(level)
+        solution = solve(circuit, _start(system, circuit, unknowns, start))
         unknowns = solution.unknowns
     if FAILED in solution.methods:
         row = solution.methods.index(FAILED)
         raise _not_reached(f"the steady state of stage {places[row] + 1}", float(solution.merit[row]))
-    cycle = Cycle.of(circuit, solution)
-    states: list[SteadyState] = []
-    for ladder, rows in ladders:
-        states += report([stages[row] for row in rows], ladder, cycle.take(rows), solution.take(rows))
-    return states
+    return system.states(system.cycle(circuit, solution), solution, None)
+
+
+def _system(stages: Sequence[Stage], orders: int) -> System:
+    return Singles.of(stages, orders) if stages[0].device.pair is None else Pairs.of(stages, orders)
 
 
 def _doubled(first: int, last: int) -> list[int]:
@@ -196,15 +201,17 @@ def _not_reached(what: str, residual: float) -> ConvergenceError:
         "below 0.1 % of the supply, or a part lossless?)")
 
 
-def _start(circuit: Circuit, unknowns: Complex | None, known: SteadyState | None) -> Complex | None:
+def _start(system: System, circuit: Circuit, unknowns: Complex | None, known: SteadyState | None) -> Complex | None:
     """Return the first guess: from fewer orders, else from a known solution, else None."""
-    if unknowns is None and known is None:
-        return None
-    guess = np.zeros_like(circuit.impedance)
     if unknowns is not None:
-        guess[:, :unknowns.shape[1]] = unknowns
-    elif known is not None:
-        shared = min(guess.shape[1], known.device_voltage.size)
-        guess[:, :shared] = known.device_voltage[:shared]
-        guess[:, :1] -= circuit.supply
-    return guess
+        guess = np.zeros_like(circuit.impedance)
+        guess[..., :unknowns.shape[-1]] = unknowns
+        return guess
+    if known is None:
+        return None
+    supply = circuit.supply.reshape(-1, 1)
+    deviation = np.zeros((supply.size, circuit.orders + 1), dtype=np.complex128)
+    shared = min(circuit.orders + 1, known.device_voltage.size)
+    deviation[:, :shared] = known.device_voltage[:shared]
+    deviation[:, :1] -= supply
+    return system.guess(deviation)

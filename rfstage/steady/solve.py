@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from rfstage.devicelaw import Array
 from rfstage.steady.balance import PATIENT, QUICK, Effort, Outcome, newton, spectrum
 from rfstage.steady.circuit import Circuit
+from rfstage.steady.modes import modes
 from rfstage.steady.network import Complex
 
 DIRECT, SOFTENED, STEPPED, FAILED = "direct", "softened knee", "drive steps", "failed"
@@ -27,7 +28,7 @@ SWING_OF_START = 0.9  # of the supply: the most that the start's fundamental may
 
 @dataclass(frozen=True, slots=True)
 class Solution:
-    """Unknowns (S, N + 1) [V], merit and iterations (S,), and by which way each stage was solved."""
+    """Unknowns (S, N + 1) [V], of pairs (S, 2, N + 1), merit and iterations (S,), and each stage's way."""
 
     unknowns: Complex
     merit: Array
@@ -56,9 +57,12 @@ def cold_start(circuit: Circuit) -> Complex:
     """Return the first guess: the supply, and the fundamental of the unsaturated current, clipped."""
     guess = np.zeros_like(circuit.impedance)
     flat = circuit.driven.flat_current(np.broadcast_to(circuit.supply, circuit.driven.overdrive.shape))
-    swing = -circuit.impedance[:, 1] / circuit.scale[:, 1] * spectrum(flat, 1)[:, 1]
-    most = SWING_OF_START * circuit.supply[:, 0]
-    guess[:, 1] = swing * most / np.maximum(np.abs(swing), most)
+    drawn = spectrum(flat, 1)
+    if circuit.paired:
+        drawn = modes(drawn)
+    swing = -circuit.impedance[..., 1] / circuit.scale[..., 1] * drawn[..., 1]
+    most = SWING_OF_START * circuit.supply[..., 0]
+    guess[..., 1] = swing * most / np.maximum(np.abs(swing), most)
     return guess
 
 

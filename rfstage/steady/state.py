@@ -41,6 +41,16 @@ class BranchStress:
     rms_current: float
 
 
+@dataclass(frozen=True, slots=True)
+class DeviceShare:
+    """One device of a pair: direct current [A], heat [W], peak electrode voltage [V], peak device current [A]."""
+
+    dc_current: float
+    dissipation: float
+    peak_voltage: float
+    peak_current: float
+
+
 @dataclass(frozen=True, slots=True, eq=False)
 class Waveform:
     """One cycle, from the drive's crest: phase [deg], electrode voltage [V], device current [A], shape (M,).
@@ -76,6 +86,9 @@ class OrdersChange:
 class SteadyState:
     """The steady state of one stage; SI units, phasors are peak values.
 
+    Of a pair, currents, powers and losses are those of both devices, extremes those of the one that goes further;
+    phasors of the device, conduction angle and waveform are the first device's.
+
     Attributes
     ----------
     stage : Stage
@@ -94,7 +107,9 @@ class SteadyState:
     charge_power : float
         Power of the lossless junction charge [W]: zero but for the sampling, so a free check on it.
     branches : tuple of BranchStress
-        Every branch from device to load, output capacitance and choke among them.
+        Every branch from device to load, output capacitance and choke among them. A push-pull pair has two of
+        these: losses are of both, voltage and current of the one that bears more; voltages of the other branches
+        are from one side to the other.
     choke_loss : float
         Direct current and RF [W].
     branch_losses : dict
@@ -117,6 +132,8 @@ class SteadyState:
         None where half the orders were not solved.
     iterations, method : int, str
         What it took at the last order number.
+    devices : tuple of DeviceShare
+        Both devices of a pair, empty for a single device.
     """
 
     stage: Stage = field(repr=False)
@@ -143,6 +160,7 @@ class SteadyState:
     change_from_half_the_orders: OrdersChange | None
     iterations: int
     method: str
+    devices: tuple[DeviceShare, ...] = ()
 
     @property
     def has_output(self) -> bool:
