@@ -294,8 +294,8 @@ def conflicts(values: dict[str, object]) -> list[str]:
     family = values.get("family")
     if values.get("amplification_factor") is not None and family != "tube":
         found.append(
-            f"device.amplification_factor: got one for a device of family {family or 'bipolar'}; it belongs to a triode "
-            "(device.family tube)"
+            f"device.amplification_factor: got one for a device of family {family or 'bipolar'}; it belongs to a "
+            "triode (device.family tube)"
         )
     if isinstance(values.get("limit"), str):
         try:

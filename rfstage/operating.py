@@ -242,8 +242,9 @@ def drive_voltages(
         if abs(demanded - effective) > AGREEMENT * effective:
             got = bias if other == "drive.bias" else amplitude
             raise ImpossibleError(
-                f"{other}: {name}, {degrees:.4g} deg and the power ask for a bias of {start - effective * cosine:.4g} V "
-                f"and a drive of {effective + opposed:.4g} V peak; got {exact_text(got or 0.0, 'V')} (leave one of them out)"
+                f"{other}: {name}, {degrees:.4g} deg and the power ask for a bias of {start - effective * cosine:.4g} "
+                f"V and a drive of {effective + opposed:.4g} V peak; got {exact_text(got or 0.0, 'V')} "
+                "(leave one of them out)"
             )
     if name == "drive.bias":
         return bias, effective + opposed, unbiased
