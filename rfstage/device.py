@@ -101,13 +101,23 @@ class Device:
         _need("exponent", self.exponent, "from 1 to 3", holds=1 <= self.exponent <= 3)
         _need("threshold", self.threshold, "finite", holds=True)
         _need("threshold_softness", self.threshold_softness, "0 V or more", holds=self.threshold_softness >= 0)
-        _need("knee_voltage", self.knee_voltage, "above 0 V", holds=self.knee_voltage > 0,
-              hint="0.5 % of the supply will do; no device saturates at zero volts")
+        _need(
+            "knee_voltage",
+            self.knee_voltage,
+            "above 0 V",
+            holds=self.knee_voltage > 0,
+            hint="0.5 % of the supply will do; no device saturates at zero volts",
+        )
         _need("knee_resistance", self.knee_resistance, "0 ohm or more", holds=self.knee_resistance >= 0)
         _need("output_capacitance", self.output_capacitance, "0 F or more", holds=self.output_capacitance >= 0)
         if self.amplification_factor is not None:
-            _need("amplification_factor", self.amplification_factor, "above 0",
-                  holds=self.amplification_factor > 0, hint="leave it out for none")
+            _need(
+                "amplification_factor",
+                self.amplification_factor,
+                "above 0",
+                holds=self.amplification_factor > 0,
+                hint="leave it out for none",
+            )
         if self.pair is None:
             _need("imbalance", self.imbalance, "0 where there is no pair", holds=self.imbalance == 0)
         elif self.pair not in PAIRS:

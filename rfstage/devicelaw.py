@@ -82,17 +82,30 @@ class Law:
         rows = []
         for d in devices:
             diode, junction = d.reverse_conduction, d.junction_capacitance
-            rows.append((
-                d.transfer_factor, d.exponent, d.threshold, d.threshold_softness, d.knee_voltage, d.knee_resistance,
-                1 / d.amplification_factor if d.amplification_factor is not None else 0.0, d.family != "fet",
-                *((diode.conductance, diode.threshold, diode.softness) if diode else (0.0, 0.0, 0.0)),
-                *((junction.at_zero, junction.potential, junction.grading) if junction else (0.0, 1.0, 0.0))))
+            rows.append(
+                (
+                    d.transfer_factor,
+                    d.exponent,
+                    d.threshold,
+                    d.threshold_softness,
+                    d.knee_voltage,
+                    d.knee_resistance,
+                    1 / d.amplification_factor if d.amplification_factor is not None else 0.0,
+                    d.family != "fet",
+                    *((diode.conductance, diode.threshold, diode.softness) if diode else (0.0, 0.0, 0.0)),
+                    *((junction.at_zero, junction.potential, junction.grading) if junction else (0.0, 1.0, 0.0)),
+                )
+            )
         columns: list[Any] = list(np.array(rows, dtype=np.float64).T[:, :, np.newaxis])
-        mu, one_way, reverse, charge = (columns[_COLUMNS.index(name)] != 0 for name in (
-            "inverse_mu", "one_way", "reverse_conductance", "junction_at_zero"))
+        mu, one_way, reverse, charge = (
+            columns[_COLUMNS.index(name)] != 0
+            for name in ("inverse_mu", "one_way", "reverse_conductance", "junction_at_zero")
+        )
         columns[_COLUMNS.index("one_way")] = one_way
-        return cls(Parts(bool(mu.any()), bool(one_way.any()), not one_way.all(), bool(reverse.any()),
-                         bool(charge.any())), *columns)
+        return cls(
+            Parts(bool(mu.any()), bool(one_way.any()), not one_way.all(), bool(reverse.any()), bool(charge.any())),
+            *columns,
+        )
 
     def take(self, rows: Any) -> Law:
         """Return the law of the chosen rows."""
@@ -100,9 +113,13 @@ class Law:
 
     def softened(self, factor: float) -> Law:
         """Return the same device with a knee and a reverse junction ``factor`` times as soft."""
-        return replace(self, knee_voltage=self.knee_voltage * factor, knee_resistance=self.knee_resistance * factor,
-                       reverse_conductance=self.reverse_conductance / factor,
-                       reverse_softness=self.reverse_softness * factor)
+        return replace(
+            self,
+            knee_voltage=self.knee_voltage * factor,
+            knee_resistance=self.knee_resistance * factor,
+            reverse_conductance=self.reverse_conductance / factor,
+            reverse_softness=self.reverse_softness * factor,
+        )
 
 
 _COLUMNS = tuple(Law.__slots__)[1:]
@@ -226,8 +243,7 @@ def current(device: Device, *, control: ArrayLike, voltage: ArrayLike) -> tuple[
     >>> [round(float(i), 3) + 0.0 for i in amperes]
     [0.0, 4.0, 3.046]
     """
-    controls, volts = np.broadcast_arrays(np.asarray(control, dtype=np.float64),
-                                          np.asarray(voltage, dtype=np.float64))
+    controls, volts = np.broadcast_arrays(np.asarray(control, dtype=np.float64), np.asarray(voltage, dtype=np.float64))
     driven = DrivenLaw.at(Law.of([device]), controls.reshape(1, -1))
     amperes, siemens = driven.current(volts.reshape(1, -1))
     return amperes.reshape(volts.shape), siemens.reshape(volts.shape)

@@ -213,8 +213,9 @@ def _solve(stages: Sequence[Stage], progress: Callable[[int, int], None] | None)
     together = CHUNK if orders <= TOGETHER else 1
     points: list[SteadyState] = []
     for first in range(0, len(stages), together):
-        points += settle_many(stages[first : first + together], orders=orders,
-                              start=_predicted(points, together) if points else probe)
+        points += settle_many(
+            stages[first : first + together], orders=orders, start=_predicted(points, together) if points else probe
+        )
         if progress is not None:
             progress(len(points), len(stages))
     return tuple(points)

@@ -66,8 +66,14 @@ class Point:
     def take(self, rows: Any) -> Point:
         """Return the chosen rows."""
         capacitance = None if self.capacitance is None else self.capacitance[rows]
-        return Point(self.unknowns[rows], self.residual[rows], self.merit[rows], self.goal[rows],
-                     self.conductance[rows], capacitance)
+        return Point(
+            self.unknowns[rows],
+            self.residual[rows],
+            self.merit[rows],
+            self.goal[rows],
+            self.conductance[rows],
+            capacitance,
+        )
 
     def put(self, rows: Any, other: Point) -> None:
         """Overwrite the chosen rows."""
@@ -98,7 +104,7 @@ def voltage(circuit: Circuit, unknowns: Complex) -> Array:
 
 def spectrum(wave: Array, orders: int) -> Complex:
     """Return twice the Fourier coefficients 0 … orders: peak phasors, and twice the mean."""
-    coefficients: Complex = np.fft.rfft(wave, norm="forward")[..., :orders + 1] * 2
+    coefficients: Complex = np.fft.rfft(wave, norm="forward")[..., : orders + 1] * 2
     return coefficients
 
 
@@ -152,7 +158,7 @@ def jacobian(circuit: Circuit, point: Point) -> Array:
         over_a *= z
         over_b *= z
         _fill(j, over_a, over_b)
-    diagonals, scale = j.reshape(stages, -1)[:, ::size + 1], circuit.scale.reshape(stages, -1)
+    diagonals, scale = j.reshape(stages, -1)[:, :: size + 1], circuit.scale.reshape(stages, -1)
     diagonals[:, ::2] += scale
     diagonals[:, 1::2] += scale
     return j
@@ -174,7 +180,7 @@ def _slopes(wave: Array, n: int) -> tuple[Complex, Complex]:
     g = np.fft.rfft(wave.reshape(-1, wave.shape[-1]), norm="forward")
     stages = g.shape[0]
     row = np.empty((stages, 3 * n + 1), dtype=np.complex128)  # G_{−n} … G_{2n}; G_{−n} is the conjugate of G_n
-    row[:, n:] = g[:, :2 * n + 1]
+    row[:, n:] = g[:, : 2 * n + 1]
     np.conjugate(g[:, n:0:-1], out=row[:, :n])
     step = row.itemsize
     shape, along = (stages, n + 1, n + 1), row.strides[0]
@@ -190,8 +196,12 @@ def newton(circuit: Circuit, start: Complex, *, effort: Effort = QUICK) -> Outco
     A step is halved until the merit falls, for those stages only where it does not. A stage whose
     merit can't be lowered, or that uses up its iterations, comes back with ``converged`` False.
     """
-    out = Outcome(start.copy(), np.full(start.shape[0], np.inf), np.zeros(start.shape[0], dtype=np.bool_),
-                  np.zeros(start.shape[0], dtype=np.int64))
+    out = Outcome(
+        start.copy(),
+        np.full(start.shape[0], np.inf),
+        np.zeros(start.shape[0], dtype=np.bool_),
+        np.zeros(start.shape[0], dtype=np.int64),
+    )
     rows = np.arange(start.shape[0])
     point = evaluate(circuit, start)
     for spent in range(effort.iterations + 1):

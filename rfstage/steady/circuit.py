@@ -21,6 +21,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from rfstage.device import PUSH_PULL
 from rfstage.devicelaw import Array, DrivenLaw, Law
 from rfstage.errors import ImpossibleError, OutOfRangeError
 from rfstage.ladder import Ladder
@@ -68,8 +69,16 @@ class Circuit:
         return cls.assembled(law, supply, bias, amplitude, carrier, impedance, np.abs(impedance[:, 1]))
 
     @classmethod
-    def assembled(cls, law: Law, supply: Array, bias: Array, amplitude: Array, carrier: Array,
-                  impedance: NDArray[np.complex128], resistance: Array) -> Circuit:
+    def assembled(
+        cls,
+        law: Law,
+        supply: Array,
+        bias: Array,
+        amplitude: Array,
+        carrier: Array,
+        impedance: NDArray[np.complex128],
+        resistance: Array,
+    ) -> Circuit:
         """Build the arrays from devices, sources as columns, and impedances [ohm] still to be scaled."""
         orders = impedance.shape[-1] - 1
         hard = bool((law.softness == 0).any())
@@ -90,9 +99,19 @@ class Circuit:
 
     def take(self, rows: Any) -> Circuit:
         """Return the chosen rows."""
-        return Circuit(self.orders, self.samples, self.supply[rows], self.bias[rows], self.amplitude[rows],
-                       self.law.take(rows), self.driven.take(rows), self.impedance[rows], self.scale[rows],
-                       self.resistance[rows], self.omega[rows])
+        return Circuit(
+            self.orders,
+            self.samples,
+            self.supply[rows],
+            self.bias[rows],
+            self.amplitude[rows],
+            self.law.take(rows),
+            self.driven.take(rows),
+            self.impedance[rows],
+            self.scale[rows],
+            self.resistance[rows],
+            self.omega[rows],
+        )
 
     def softened(self, factor: float) -> Circuit:
         """Return the same stages with knees and reverse junctions ``factor`` times as soft."""
@@ -127,25 +146,40 @@ def check(stage: Stage) -> None:
     OutOfRangeError
         If the carrier, supply or choke is not above 0, or its resistance or the drive amplitude is below 0.
     ImpossibleError
-        If nothing keeps the supply's direct current out of the ladder.
+        If nothing keeps the supply's direct current out of the ladder, or that of unlike devices out of what stands
+        between them.
     """
     supply, drive = stage.supply, stage.drive
-    for name, value, unit in (("carrier", stage.carrier, "Hz"), ("supply voltage", supply.voltage, "V"),
-                              ("choke", supply.choke, "H")):
+    for name, value, unit in (
+        ("carrier", stage.carrier, "Hz"),
+        ("supply voltage", supply.voltage, "V"),
+        ("choke", supply.choke, "H"),
+    ):
         if not (value > 0 and math.isfinite(value)):
             raise OutOfRangeError(name, value, f"above 0 {unit}")
-    for name, value, unit in (("choke_resistance", supply.choke_resistance, "ohm"),
-                              ("drive amplitude", drive.amplitude, "V")):
+    for name, value, unit in (
+        ("choke_resistance", supply.choke_resistance, "ohm"),
+        ("drive amplitude", drive.amplitude, "V"),
+    ):
         if not (value >= 0 and math.isfinite(value)):
             raise OutOfRangeError(name, value, f"0 {unit} or more")
     if not math.isfinite(drive.bias):
         raise OutOfRangeError("drive bias", drive.bias, "finite")
-    if _blocked(stage):
+    push_pull = stage.device.pair == PUSH_PULL
+    level = push_pull and (stage.device.imbalance == 0 or supply.choke_resistance == 0)  # no dc between the outputs
+    if level or _blocked(stage):
         return
     low = Ladder(stage.branches).impedance(np.array([NEARLY_DC * stage.carrier]), stage.load)[0]
     if not -low.imag > abs(low.real):
-        raise ImpossibleError("the supply's direct current would flow through the ladder: put a blocking capacitor "
-                              "in series before the first coil to ground and before the load")
+        if push_pull:
+            raise ImpossibleError(
+                "direct current of the unlike devices would flow between them through the branches: "
+                "put a blocking capacitor in series first"
+            )
+        raise ImpossibleError(
+            "the supply's direct current would flow through the ladder: put a blocking capacitor "
+            "in series before the first coil to ground and before the load"
+        )
 
 
 def _blocked(stage: Stage) -> bool:

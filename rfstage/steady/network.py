@@ -66,7 +66,8 @@ class Network:
         if not usable.all():
             raise ImpossibleError(
                 f"the ladder has no finite impedance at order {int(np.argmin(usable.all(axis=0))) + 1} of the carrier "
-                "(is a lossless trap tuned exactly there? give its parts a Q)")
+                "(is a lossless trap tuned exactly there? give its parts a Q)"
+            )
         squared = (walk.transimpedance * np.conj(walk.transimpedance)).real
         gain = np.broadcast_to(squared / 2 * (1 / walk.load_impedance).real, shape)
         currents = np.array([np.broadcast_to(state.current, shape) for state in walk.branches])
@@ -77,8 +78,14 @@ class Network:
         """Return the first orders only."""
         if orders == self.frequencies.size:
             return self
-        return Network(self.frequencies[:orders], self.impedance[:, :orders], self.gain[:, :orders], self.branches,
-                       self.currents[:, :, :orders], self.losses[:, :, :orders])
+        return Network(
+            self.frequencies[:orders],
+            self.impedance[:, :orders],
+            self.gain[:, :orders],
+            self.branches,
+            self.currents[:, :, :orders],
+            self.losses[:, :, :orders],
+        )
 
     def branch_impedances(self) -> Complex:
         """Return the impedance of every branch [ohm], shape (B, S, N)."""

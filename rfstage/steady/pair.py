@@ -68,6 +68,7 @@ def both(device: Device) -> tuple[Device, Device]:
     >>> [one.transfer_factor for one in both(fet)]
     [2.1, 1.9]
     """
+
     def of(share: float) -> Device:
         return replace(device, pair=None, imbalance=0.0, transfer_factor=device.transfer_factor * share)
 
@@ -94,21 +95,47 @@ def feed_alone(stage: Stage) -> Stage:
 def _halved(branch: Branch) -> Branch:
     """Return a branch of half the impedance."""
     resistance = branch.series_resistance
-    return replace(branch, value=branch.value * 2 if branch.kind == "capacitor" else branch.value / 2,
-                   series_resistance=None if resistance is None else resistance / 2,
-                   lead_inductance=branch.lead_inductance / 2, self_capacitance=branch.self_capacitance * 2)
+    return replace(
+        branch,
+        value=branch.value * 2 if branch.kind == "capacitor" else branch.value / 2,
+        series_resistance=None if resistance is None else resistance / 2,
+        lead_inductance=branch.lead_inductance / 2,
+        self_capacitance=branch.self_capacitance * 2,
+    )
 
 
 @dataclass(frozen=True, slots=True)
 class Pairs:
-    """Stages that are all push-pull or all parallel, and all balanced or none; ``ladders`` with their rows."""
+    """Stages that are all push-pull or all parallel, and all balanced or none; ``ladders`` with their rows.
+
+    Examples
+    --------
+    >>> from rfstage.load import SeriesLoad
+    >>> from rfstage.stage import Drive, Supply
+    >>> fet = Device(family="fet", transfer_factor=2.0, exponent=1.0, threshold=3.0, threshold_softness=0.02,
+    ...              knee_voltage=0.2, knee_resistance=0.1, output_capacitance=2.5e-9, pair="push-pull")
+    >>> parts = (Branch("L1", "series", "coil", 686e-9), Branch("C2", "shunt", "capacitor", 991e-12))
+    >>> stage = Stage(carrier=7.1e6, device=fet, drive=Drive(bias=3.0, amplitude=2.0), branches=parts,
+    ...               supply=Supply(voltage=28.0, choke=2e-6), load=SeriesLoad(50 + 0j, 7.1e6))
+    >>> Pairs.of([stage], 16).circuit(16).impedance.shape
+    (1, 17)
+    >>> unlike = replace(stage, device=replace(fet, imbalance=0.1))
+    >>> Pairs.of([unlike], 16).circuit(16).impedance.shape
+    (1, 2, 17)
+    """
 
     stages: Sequence[Stage]
     ladders: Sequence[tuple[PairNetwork, list[int]]]
 
     @classmethod
     def of(cls, stages: Sequence[Stage], orders: int) -> Pairs:
-        """Walk the ladders of both modes."""
+        """Walk the ladders of both modes.
+
+        Raises
+        ------
+        ImpossibleError
+            If a mode's impedance is not finite at some order.
+        """
         if stages[0].device.pair != PUSH_PULL:
             shared = networks([shared_node(stage) for stage in stages], orders)
             return cls(stages, [(PairNetwork(even, None), rows) for even, rows in shared])

@@ -57,17 +57,32 @@ def pair_account(stages: Sequence[Stage], network: PairNetwork, cycle: Cycle) ->
     """Return the account of pairs of one build; all arguments are of the same rows."""
     current, heat = cycle.device[:, :, 0].real, (cycle.volts * cycle.amperes).mean(axis=-1)
     volts, amperes = cycle.volts.max(axis=-1), cycle.amperes.max(axis=-1)
-    devices = [tuple(map(DeviceShare, *columns)) for columns in zip(
-        current.tolist(), heat.tolist(), volts.tolist(), amperes.tolist(), strict=True)]
+    devices = [
+        tuple(map(DeviceShare, *columns))
+        for columns in zip(current.tolist(), heat.tolist(), volts.tolist(), amperes.tolist(), strict=True)
+    ]
     if network.odd is None:
-        at_node = Cycle(cycle.volts[:, 0], cycle.amperes.sum(axis=1), cycle.node[:, 0], cycle.device.sum(axis=1),
-                        cycle.charging.sum(axis=1))
+        at_node = Cycle(
+            cycle.volts[:, 0],
+            cycle.amperes.sum(axis=1),
+            cycle.node[:, 0],
+            cycle.device.sum(axis=1),
+            cycle.charging.sum(axis=1),
+        )
         return replace(account(stages, network.even, at_node), peak_current=amperes.max(axis=1), devices=devices)
-    powers = network.odd.gain * np.abs(drawn_by_load(network, cycle)[:, 1:])**2
+    powers = network.odd.gain * np.abs(drawn_by_load(network, cycle)[:, 1:]) ** 2
     return Account(
-        current.sum(axis=1), heat.sum(axis=1), charge_power(cycle).sum(axis=1), cycle.volts.min(axis=(1, 2)),
-        volts.max(axis=1), amperes.max(axis=1), powers, modes(cycle.device)[:, ODD],
-        *_stresses(stages, network.even, network.odd, cycle), devices)
+        current.sum(axis=1),
+        heat.sum(axis=1),
+        charge_power(cycle).sum(axis=1),
+        cycle.volts.min(axis=(1, 2)),
+        volts.max(axis=1),
+        amperes.max(axis=1),
+        powers,
+        modes(cycle.device)[:, ODD],
+        *_stresses(stages, network.even, network.odd, cycle),
+        devices,
+    )
 
 
 def _stresses(stages: Sequence[Stage], even: Network, odd: Network, cycle: Cycle) -> tuple[Array, Array, Array]:
@@ -75,8 +90,8 @@ def _stresses(stages: Sequence[Stage], even: Network, odd: Network, cycle: Cycle
     into = -modes(cycle.device + cycle.charging)[:, :, 1:]
     fed = len(even.branches)
     # a sum and a difference of modes, squared: the mixed terms of both devices cancel
-    losses = 2 * (odd.losses * np.abs(into[:, ODD])**2).sum(axis=2)
-    losses[:fed] += 2 * (even.losses * np.abs(into[:, EVEN])**2).sum(axis=2)
+    losses = 2 * (odd.losses * np.abs(into[:, ODD]) ** 2).sum(axis=2)
+    losses[:fed] += 2 * (even.losses * np.abs(into[:, EVEN]) ** 2).sum(axis=2)
     mean, drawn = cycle.node[:, :, 0].real.T, cycle.device[:, :, 0].real.T
     losses[fed - 1] += (drawn**2).sum(axis=0) * [stage.supply.choke_resistance for stage in stages]
     opposed, common = odd.currents * into[:, ODD], even.currents * into[:, EVEN]

@@ -93,8 +93,8 @@ class Figures:
     @classmethod
     def of(cls, dc_current: complex, drawn: Complex, ladder: Network) -> Figures:
         """Return those of one stage, from dc current and the phasors drawn from its ladder [A], shape (N + 1,)."""
-        first = drawn[1:LISTED + 1]
-        return cls(dc_current.real, ladder.gain[0, :first.size] * np.abs(first)**2)
+        first = drawn[1 : LISTED + 1]
+        return cls(float(dc_current.real), ladder.gain[0, : first.size] * np.abs(first) ** 2)
 
     def change_from(self, before: Figures) -> OrdersChange:
         """Return what moved since ``before``."""
@@ -104,8 +104,9 @@ class Figures:
             return OrdersChange(0.0, 0.0, 0.0)
         counted = (new > COUNTED * new[0]) & (old > 0)
         moved = np.abs(10 * np.log10(new[counted] / old[counted]))
-        return OrdersChange(abs(1 - before.dc_current / self.dc_current), float(moved[0]),
-                            float(moved[1:].max(initial=0.0)))
+        return OrdersChange(
+            abs(1 - before.dc_current / self.dc_current), float(moved[0]), float(moved[1:].max(initial=0.0))
+        )
 
 
 @dataclass(frozen=True, slots=True)
@@ -137,9 +138,19 @@ def account(stages: Sequence[Stage], ladder: Network, cycle: Cycle) -> Account:
     squared = (into_ladder * into_ladder.conj()).real
     losses, peaks, rms = _stresses(stages, ladder, cycle, into_ladder, squared)
     return Account(
-        cycle.device[:, 0].real, (cycle.volts * cycle.amperes).mean(axis=-1), charge_power(cycle),
-        cycle.volts.min(axis=-1), cycle.volts.max(axis=-1), cycle.amperes.max(axis=-1), ladder.gain * squared,
-        cycle.device, losses, peaks, rms, [()] * len(stages))
+        cycle.device[:, 0].real,
+        (cycle.volts * cycle.amperes).mean(axis=-1),
+        charge_power(cycle),
+        cycle.volts.min(axis=-1),
+        cycle.volts.max(axis=-1),
+        cycle.amperes.max(axis=-1),
+        ladder.gain * squared,
+        cycle.device,
+        losses,
+        peaks,
+        rms,
+        [()] * len(stages),
+    )
 
 
 def charge_power(cycle: Cycle) -> Array:
@@ -148,8 +159,14 @@ def charge_power(cycle: Cycle) -> Array:
     return power
 
 
-def states(stages: Sequence[Stage], ladder: Network, first: Cycle, found: Account, solution: Solution,
-           change: OrdersChange | None) -> list[SteadyState]:
+def states(
+    stages: Sequence[Stage],
+    ladder: Network,
+    first: Cycle,
+    found: Account,
+    solution: Solution,
+    change: OrdersChange | None,
+) -> list[SteadyState]:
     """Return the steady states of stages of one build; all arguments are of the same rows.
 
     ``ladder`` has the branches, ``first`` is the cycle of the one device or of a pair's first.
@@ -165,33 +182,54 @@ def states(stages: Sequence[Stage], ladder: Network, first: Cycle, found: Accoun
     frequencies = ladder.frequencies.tolist()
     listed = []
     for row, stage in enumerate(stages):
-        branches = tuple(map(BranchStress, names, found.losses[:, row].tolist(), found.peaks[:, row].tolist(),
-                             found.rms[:, row].tolist()))
+        branches = tuple(
+            map(
+                BranchStress,
+                names,
+                found.losses[:, row].tolist(),
+                found.peaks[:, row].tolist(),
+                found.rms[:, row].tolist(),
+            )
+        )
         powers = found.load_powers[row].tolist()
         fed = len(stage.feed)
         current = float(found.dc_current[row])
         power = float(supply[row]) * current
-        listed.append(SteadyState(
-            stage=stage, device_voltage=first.node[row], device_current=first.device[row],
-            dc_current=current, dc_power=power, output_power=powers[0],
-            efficiency=powers[0] / power if power > 0 else None,
-            dissipation=float(found.dissipation[row]), charge_power=float(found.charge_power[row]),
-            branches=branches, choke_loss=branches[fed - 1].loss,
-            branch_losses={branch.name: branch.loss for branch in branches[fed:]},
-            minimum_voltage=float(found.minimum_voltage[row]), peak_voltage=float(found.peak_voltage[row]),
-            peak_current=float(found.peak_current[row]),
-            conduction_angle_deg=conduction_angle_deg(stage, first.node[row], samples),
-            harmonics=tuple(map(HarmonicLevel, range(2, orders + 1), frequencies[1:], powers[1:], levels[row])),
-            waveform=Waveform(phase, first.volts[row], first.amperes[row]), orders_solved=orders,
-            balance_error=(power - float(spent[row])) / power if power > 0 else 0.0,
-            residual=float(solution.merit[row]), change_from_half_the_orders=change,
-            iterations=int(solution.iterations[row]), method=solution.methods[row],
-            devices=found.devices[row]))
+        listed.append(
+            SteadyState(
+                stage=stage,
+                device_voltage=first.node[row],
+                device_current=first.device[row],
+                dc_current=current,
+                dc_power=power,
+                output_power=powers[0],
+                efficiency=powers[0] / power if power > 0 else None,
+                dissipation=float(found.dissipation[row]),
+                charge_power=float(found.charge_power[row]),
+                branches=branches,
+                choke_loss=branches[fed - 1].loss,
+                branch_losses={branch.name: branch.loss for branch in branches[fed:]},
+                minimum_voltage=float(found.minimum_voltage[row]),
+                peak_voltage=float(found.peak_voltage[row]),
+                peak_current=float(found.peak_current[row]),
+                conduction_angle_deg=conduction_angle_deg(stage, first.node[row], samples),
+                harmonics=tuple(map(HarmonicLevel, range(2, orders + 1), frequencies[1:], powers[1:], levels[row])),
+                waveform=Waveform(phase, first.volts[row], first.amperes[row]),
+                orders_solved=orders,
+                balance_error=(power - float(spent[row])) / power if power > 0 else 0.0,
+                residual=float(solution.merit[row]),
+                change_from_half_the_orders=change,
+                iterations=int(solution.iterations[row]),
+                method=solution.methods[row],
+                devices=found.devices[row],
+            )
+        )
     return listed
 
 
-def _stresses(stages: Sequence[Stage], ladder: Network, cycle: Cycle, into_ladder: Complex,
-              squared: Array) -> tuple[Array, Array, Array]:
+def _stresses(
+    stages: Sequence[Stage], ladder: Network, cycle: Cycle, into_ladder: Complex, squared: Array
+) -> tuple[Array, Array, Array]:
     """Return loss [W], peak voltage [V] and rms current [A] of every branch, shape (B, S)."""
     currents = ladder.currents * into_ladder
     losses = (ladder.losses * squared).sum(axis=2)
@@ -201,7 +239,7 @@ def _stresses(stages: Sequence[Stage], ladder: Network, cycle: Cycle, into_ladde
     choke = len(stages[0].feed) - 1
     volts[choke] = mean - [stage.supply.voltage for stage in stages]
     amperes[choke] = cycle.device[:, 0].real
-    losses[choke] += amperes[choke]**2 * [stage.supply.choke_resistance for stage in stages]
+    losses[choke] += amperes[choke] ** 2 * [stage.supply.choke_resistance for stage in stages]
     return losses, *borne(currents, ladder.branch_impedances(), volts, amperes)
 
 
@@ -235,13 +273,15 @@ def _levels(load_powers: Array, device: Complex) -> list[list[float | None]]:
     """Return the harmonics' levels against the carrier [dBc], as many as are listed, None where there is none."""
     orders = load_powers.shape[1]
     listed = min(orders, max(LISTED, orders // 2))
-    size = np.abs(device[:, 1:listed + 1])
+    size = np.abs(device[:, 1 : listed + 1])
     powers = load_powers[:, :listed]
     there = (size > ABSENT * size[:, :1]) & (powers > 0) & (powers[:, :1] > 0)
     ratio = np.divide(powers, powers[:, :1], out=np.ones_like(powers), where=there)
     levels = 10 * np.log10(ratio)
-    return [[level if present else None for level, present in zip(row[1:], known[1:], strict=True)]
-            for row, known in zip(levels.tolist(), there.tolist(), strict=True)]
+    return [
+        [level if present else None for level, present in zip(row[1:], known[1:], strict=True)]
+        for row, known in zip(levels.tolist(), there.tolist(), strict=True)
+    ]
 
 
 def conduction_angle_deg(stage: Stage, node: Complex, samples: int) -> float:

@@ -149,21 +149,23 @@ def settle_many(stages: Sequence[Stage], *, orders: int, start: SteadyState | No
     found: dict[int, SteadyState] = {}
     # a hard corner wants more samples: kept apart, so that no stage's figures depend on its neighbours
     # a balanced pair is one device and an unlike one two: apart as well
-    kinds = [(stage.device.threshold_softness == 0, stage.device.imbalance > 0, stage.device.pair or "")
-             for stage in stages]
+    kinds = [
+        (stage.device.threshold_softness == 0, stage.device.imbalance > 0, stage.device.pair or "") for stage in stages
+    ]
     for kind in sorted(set(kinds)):
         _, unlike, _ = kind
-        at_once = max(1, BLOCK // ((4 if unlike else 2) * (orders + 1))**2)
+        at_once = max(1, BLOCK // ((4 if unlike else 2) * (orders + 1)) ** 2)
         places = [place for place, its in enumerate(kinds) if its == kind]
         for first in range(0, len(places), at_once):
-            block = places[first:first + at_once]
+            block = places[first : first + at_once]
             states = _settle_block([stages[place] for place in block], block, orders, start)
             found.update(zip(block, states, strict=True))
     return tuple(found[place] for place in range(len(stages)))
 
 
-def _settle_block(stages: Sequence[Stage], places: Sequence[int], orders: int,
-                  start: SteadyState | None) -> list[SteadyState]:
+def _settle_block(
+    stages: Sequence[Stage], places: Sequence[int], orders: int, start: SteadyState | None
+) -> list[SteadyState]:
     system = _system(stages, orders)
     unknowns: Complex | None = None
     for level in _levels(orders):
@@ -198,14 +200,15 @@ def _check_orders(orders: int) -> None:
 def _not_reached(what: str, residual: float) -> ConvergenceError:
     return ConvergenceError(
         f"{what} was not reached: a residual of {residual:.2g} of the supply voltage is left (is the knee voltage far "
-        "below 0.1 % of the supply, or a part lossless?)")
+        "below 0.1 % of the supply, or a part lossless?)"
+    )
 
 
 def _start(system: System, circuit: Circuit, unknowns: Complex | None, known: SteadyState | None) -> Complex | None:
     """Return the first guess: from fewer orders, else from a known solution, else None."""
     if unknowns is not None:
         guess = np.zeros_like(circuit.impedance)
-        guess[..., :unknowns.shape[-1]] = unknowns
+        guess[..., : unknowns.shape[-1]] = unknowns
         return guess
     if known is None:
         return None

@@ -37,8 +37,9 @@ class Solution:
 
     def take(self, rows: Sequence[int]) -> Solution:
         """Return the chosen rows."""
-        return Solution(self.unknowns[rows], self.merit[rows], self.iterations[rows],
-                        tuple(self.methods[row] for row in rows))
+        return Solution(
+            self.unknowns[rows], self.merit[rows], self.iterations[rows], tuple(self.methods[row] for row in rows)
+        )
 
 
 def solve(circuit: Circuit, start: Complex | None = None) -> Solution:

@@ -78,8 +78,9 @@ class OrdersChange:
     @property
     def settled(self) -> bool:
         """Whether more orders would change nothing that matters: 1e-3, 0.01 dB and 0.1 dB."""
-        return (self.dc_current < ORDERS_DC and self.output_power_db < ORDERS_POWER
-                and self.harmonics_db < ORDERS_HARMONICS)
+        return (
+            self.dc_current < ORDERS_DC and self.output_power_db < ORDERS_POWER and self.harmonics_db < ORDERS_HARMONICS
+        )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
