@@ -44,6 +44,7 @@ _PART_UNITS: dict[str, dict[str, str]] = {
         "knee_voltage": "V",
         "knee_resistance": "ohm",
         "amplification_factor": "",
+        "imbalance": "",
         "output_capacitance": "F",
     },
 }
@@ -106,6 +107,8 @@ def paths(stage: Stage) -> dict[str, str]:
         found |= {
             f"{part}.{key}": unit for key, unit in units.items() if getattr(getattr(stage, part), key) is not None
         }
+    if stage.device.pair is None:
+        del found["device.imbalance"]
     return found
 
 
