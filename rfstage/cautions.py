@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from rfstage.quantity import show
 
@@ -18,8 +18,7 @@ LOW_RESISTANCE = 4.0  # ohm
 LEAD = 5e-9  # H, of an input capacitor; its reactance must stay ten times below the capacitor's
 
 
-@dataclass(frozen=True, slots=True)
-class Caution:
+class Caution(NamedTuple):
     """One caution: a topic in a word or two, and the text."""
 
     topic: str

@@ -26,8 +26,7 @@ stored in a junction, grid currents and heating are not modelled.
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -40,8 +39,7 @@ ONE_WAY_SOFTNESS = 0.1  # of the knee: how sharply a one-way device closes near 
 HARD = 1e-200  # V; a hard corner is the limit of the soft one, and |x|/HARD still overflows for no voltage
 
 
-@dataclass(frozen=True, slots=True)
-class Parts:
+class Parts(NamedTuple):
     """What any of a law's devices has; ``one_way`` and ``both_ways`` say whether there are such devices."""
 
     mu: bool
@@ -51,8 +49,7 @@ class Parts:
     charge: bool
 
 
-@dataclass(frozen=True, slots=True)
-class Law:
+class Law(NamedTuple):
     """The parameters of one device or many, as arrays of shape (stages..., 1) that meet samples in time.
 
     Names and units as in the table above; ``inverse_mu`` is 1/μ, and 0 without one; absent junctions have
@@ -113,8 +110,7 @@ class Law:
 
     def softened(self, factor: float) -> Law:
         """Return the same device with a knee and a reverse junction ``factor`` times as soft."""
-        return replace(
-            self,
+        return self._replace(
             knee_voltage=self.knee_voltage * factor,
             knee_resistance=self.knee_resistance * factor,
             reverse_conductance=self.reverse_conductance / factor,
@@ -122,11 +118,10 @@ class Law:
         )
 
 
-_COLUMNS = tuple(Law.__slots__)[1:]
+_COLUMNS = Law._fields[1:]
 
 
-@dataclass(frozen=True, slots=True)
-class DrivenLaw:
+class DrivenLaw(NamedTuple):
     """A law with its control voltage applied, ready to be asked for currents many times.
 
     ``overdrive`` is the control voltage above the threshold [V], shape (stages..., samples). Without a μ the

@@ -7,7 +7,8 @@ matched source resistance stands in parallel with it (with one, every level woul
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import replace
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -22,8 +23,7 @@ ABSENT = 1e-12  # of the fundamental: below it the ideal pulse has no such harmo
 _SAMPLES = 1024  # of one cycle, to find the lowest voltage in
 
 
-@dataclass(frozen=True, slots=True)
-class Harmonic:
+class Harmonic(NamedTuple):
     """One order: frequency [Hz], peak device current [A], power in the load [W], levels [dBc].
 
     ``level`` is in the given load, from the textbook pulse; None where that has no such harmonic.
@@ -129,7 +129,7 @@ def with_settled_levels(
         known = [level for level in (h.line_level, in_line.get(h.order)) if level is not None]
         worse = max(known) if known else None
         margin = None if h.limit is None or worse is None else h.limit - worse
-        found.append(replace(h, settled_level=settled.get(h.order), line_level=worse, margin=margin))
+        found.append(h._replace(settled_level=settled.get(h.order), line_level=worse, margin=margin))
     return tuple(found)
 
 

@@ -16,7 +16,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from rfstage.errors import ImpossibleError
 from rfstage.quantity import exact_text
@@ -24,8 +24,7 @@ from rfstage.quantity import exact_text
 AGREEMENT = 0.005  # of the drive: within it values that each fix the drive are taken to agree
 
 
-@dataclass(frozen=True, slots=True)
-class OperatingPoint:
+class OperatingPoint(NamedTuple):
     """Voltages [V], currents [A], powers [W] and efficiencies [-] of the textbook stage.
 
     ``dc_power`` is what the supply gives, the choke's dc loss included; ``device_rf_power`` is the
@@ -162,8 +161,7 @@ def operating_point_at(
     )
 
 
-@dataclass(frozen=True, slots=True)
-class DriveVoltages:
+class DriveVoltages(NamedTuple):
     """Drive at the control electrode: bias and peak amplitude [V], or None where nothing fixes them.
 
     ``unbiased_amplitude`` gives the conduction angle with no bias at all; it exists only where the
@@ -296,8 +294,7 @@ def drive_power(
     return None
 
 
-@dataclass(frozen=True, slots=True)
-class Rating:
+class Rating(NamedTuple):
     """One rating of the device: what is allowed, what the stage asks, in V, A or W."""
 
     name: str

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from rfstage.cli.words import Parser, add_field_options, given, output
 from rfstage.files.job import read_job
@@ -55,7 +55,6 @@ def run(words: Sequence[str]) -> int:
     check_targets([name for name in (found.touchstone, found.save, found.spice) if name], overwrite=found.overwrite)
 
     from rfstage.designs.design import design, with_settled
-    from rfstage.files.records import design_record
 
     made = with_settled(design(job, textbook=True)) if found.textbook else design(job)
     contents: list[tuple[str | Path, str]] = []
@@ -75,11 +74,16 @@ def run(words: Sequence[str]) -> int:
         contents.append((found.spice, spice_text(made.stage)))
     write_files(contents, overwrite=found.overwrite)
 
+    def record() -> dict[str, Any]:
+        from rfstage.files.records import design_record
+
+        return design_record(made, [str(path) for path, _ in contents])
+
     def page(look: Look) -> list[Text]:
         from rfstage.report.design import summary
 
         return summary(made, look)
 
-    output(found, design_record(made, [str(path) for path, _ in contents]), page)
+    output(found, record, page)
     failed = made.worst is not None and made.worst.margin is not None and made.worst.margin < 0
     return 1 if failed else 0

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from rfstage.cli.words import Parser, add_field_options, given, output, read_all
 from rfstage.errors import InputError
@@ -59,14 +59,18 @@ def run(words: Sequence[str]) -> int:
         values["load"] = read_load(found.load.strip())
 
     from rfstage.designs.single import single_network
-    from rfstage.files.records import match_record
 
     made = single_network(**values)
+
+    def record() -> dict[str, Any]:
+        from rfstage.files.records import match_record
+
+        return match_record(made.tank, made.transfer)
 
     def page(look: Look) -> list[Text]:
         from rfstage.report.small import match_page
 
         return match_page(look, tank=made.tank, load=made.load, transfer=made.transfer)
 
-    output(found, match_record(made.tank, made.transfer), page)
+    output(found, record, page)
     return 0

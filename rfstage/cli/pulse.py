@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from rfstage.cli.words import Parser, output, read_all
 from rfstage.fields import Field
@@ -41,17 +41,23 @@ def run(words: Sequence[str]) -> int:
         {"angle": (_ANGLE, found.angle), "exponent": (_EXPONENT, found.exponent), "orders": (_ORDERS, found.orders)}
     )
 
-    from rfstage.files.records import numbers, pulse_record
     from rfstage.pulse import operating_class, pulse_coefficients
 
     angle, exponent = values["angle"], values["exponent"]
     a = pulse_coefficients(math.radians(angle / 2), highest_order=values["orders"], exponent=exponent)
     letter = operating_class(angle)
 
+    def record() -> dict[str, Any]:
+        from rfstage.files.records import pulse_record
+
+        return pulse_record(angle=angle, exponent=exponent, operating_class=letter, coefficients=a)
+
     def page(look: Look) -> list[Text]:
         from rfstage.report.small import pulse_page
 
-        return pulse_page(look, angle=angle, exponent=exponent, operating_class=letter, coefficients=numbers(a))
+        return pulse_page(
+            look, angle=angle, exponent=exponent, operating_class=letter, coefficients=[float(x) for x in a]
+        )
 
-    output(found, pulse_record(angle=angle, exponent=exponent, operating_class=letter, coefficients=a), page)
+    output(found, record, page)
     return 0

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from rfstage.cli.words import Parser, output
 from rfstage.files.write import check_targets, write_files
@@ -35,7 +35,6 @@ def run(words: Sequence[str]) -> int:
     targets = [found.spice] if found.spice else []
     check_targets(targets, overwrite=found.overwrite)
 
-    from rfstage.files.records import settle_record
     from rfstage.files.stage import load_stage
     from rfstage.steady import settle
 
@@ -46,10 +45,15 @@ def run(words: Sequence[str]) -> int:
 
         write_files([(targets[0], spice_text(stage))], overwrite=found.overwrite)
 
+    def record() -> dict[str, Any]:
+        from rfstage.files.records import settle_record
+
+        return settle_record(state)
+
     def page(look: Look) -> list[Text]:
         from rfstage.report.settled import settled_page
 
         return settled_page(state, look)
 
-    output(found, settle_record(state), page)
+    output(found, record, page)
     return 0

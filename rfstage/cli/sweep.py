@@ -6,7 +6,7 @@ import math
 import sys
 import time
 from collections.abc import Callable, Sequence
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from rfstage.cli.words import Parser, output, read_all
 from rfstage.fields import Field
@@ -48,7 +48,6 @@ def run(words: Sequence[str]) -> int:
 
     import numpy as np
 
-    from rfstage.files.records import sweep_record, sweep_table
     from rfstage.files.stage import load_stage
     from rfstage.sweep import sweep, unit_of
 
@@ -66,14 +65,21 @@ def run(words: Sequence[str]) -> int:
     values = read_all({**ends, "points": (POINTS, found.points)})
     swept = sweep(stage, found.of, list(np.linspace(values["first"], values["last"], values["points"])), _progress())
     if targets:
+        from rfstage.files.records import sweep_table
+
         write_files([(targets[0], sweep_table(swept))], overwrite=found.overwrite)
+
+    def record() -> dict[str, Any]:
+        from rfstage.files.records import sweep_record
+
+        return sweep_record(swept)
 
     def page(look: Look) -> list[Text]:
         from rfstage.report.sweep import sweep_page
 
         return sweep_page(swept, look)
 
-    output(found, sweep_record(swept), page)
+    output(found, record, page)
     return 0
 
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import argparse
 import re
 import sys
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from typing import TYPE_CHECKING, Any, NoReturn
 
 from rfstage.errors import InputError
@@ -14,6 +14,8 @@ from rfstage.quantity import QuantityError
 
 if TYPE_CHECKING:
     from rich.text import Text
+
+    from rfstage.report.page import Look
 
 _MINUS_VALUE = re.compile(r"-(?:\.?\d|[jJ][\d.]|[jJ]$)")
 
@@ -109,14 +111,14 @@ def read_all(texts: dict[str, tuple[Field, str]]) -> dict[str, Any]:
     return values
 
 
-def output(found: argparse.Namespace, record: dict[str, Any], page: Any) -> None:
-    """Print the record as JSON, or the page that ``page(look)`` builds."""
+def output(found: argparse.Namespace, record: Callable[[], dict[str, Any]], page: Callable[[Look], list[Text]]) -> None:
+    """Print what ``record()`` builds as JSON, or what ``page(look)`` builds for a person; only one is built."""
     if found.json:
         from rfstage.files.records import json_text
 
-        print(json_text(record))
+        print(json_text(record()))
         return
     from rfstage.report.page import look_for, print_page
 
-    lines: list[Text] = page(look_for(sys.stdout, plain=found.plain))
+    lines = page(look_for(sys.stdout, plain=found.plain))
     print_page(lines, plain=found.plain)

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from rfstage.designs.settings import Settings
 from rfstage.designs.textbook import Circuit
@@ -16,8 +16,7 @@ SOFTNESS = 0.02  # of the peak control voltage above threshold: a corner real de
 STAND_INS = {"bipolar": (0.7, 0.5), "fet": (3.0, 3.0), "tube": (-40.0, 60.0)}
 
 
-@dataclass(frozen=True, slots=True)
-class Built:
+class Built(NamedTuple):
     """Circuit, operating point, drive and stage of one load resistance; ``stand_ins`` by key."""
 
     circuit: Circuit

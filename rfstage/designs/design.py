@@ -169,7 +169,7 @@ def with_settled(made: Design, state: SteadyState | None = None) -> Design:
         made,
         settled=state,
         harmonics=levels,
-        ratings=tuple(replace(r, value=max(r.value, worst[r.name])) for r in made.ratings),
+        ratings=tuple(r._replace(value=max(r.value, worst[r.name])) for r in made.ratings),
         cautions=(*found, *made.cautions),
     )
 

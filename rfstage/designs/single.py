@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 
@@ -14,8 +14,7 @@ from rfstage.load import MeasuredLoad
 from rfstage.matching.networks import Request, Tank, describe, solve_network, tank_efficiency
 
 
-@dataclass(frozen=True, slots=True)
-class SingleNetwork:
+class SingleNetwork(NamedTuple):
     """A network, the load at the carrier [ohm], and (order, dB) of its harmonic transfer."""
 
     tank: Tank

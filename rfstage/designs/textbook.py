@@ -7,7 +7,7 @@ than the load gets, and R is lower than the lossless one. The loop below is that
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -31,8 +31,7 @@ NEAR = 0.05  # relative change of the load resistance over which the parts found
 _ROUNDS = 60
 
 
-@dataclass(frozen=True, slots=True)
-class Circuit:
+class Circuit(NamedTuple):
     """Supply with its choke, blocking capacitor, and the network, for one load resistance [ohm]."""
 
     supply: Supply

@@ -7,7 +7,7 @@ stands as a resistance across it, so that the supply's direct current does not f
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from rfstage.device import Device
 from rfstage.errors import ImpossibleError
@@ -23,8 +23,7 @@ FEWEST_PERIODS, MOST_PERIODS = 200, 4000
 SLOWEST = 14.0  # time constants that a start-up takes: what is left then is a millionth
 
 
-@dataclass(frozen=True, slots=True)
-class Run:
+class Run(NamedTuple):
     """How a deck runs: periods in all, of which the last are measured, and time steps in each."""
 
     periods: int

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from typing import NamedTuple
 
 from rfstage.errors import ConvergenceError, ImpossibleError
 from rfstage.ladder import Branch, Ladder
@@ -20,8 +20,7 @@ DEFAULT_LOADED_Q = 10.0
 DEFAULT_Q_MARGIN = 2.0
 
 
-@dataclass(frozen=True, slots=True)
-class Request:
+class Request(NamedTuple):
     """What is asked of a network: its name, the parts' Qs [-], and one of two Qs or none."""
 
     network: str
@@ -199,8 +198,7 @@ def _figures(z: complex) -> complex:
     return complex(float(f"{z.real:.4g}"), float(f"{z.imag:.4g}"))
 
 
-@dataclass(frozen=True, slots=True)
-class PartStress:
+class PartStress(NamedTuple):
     """A part with what it carries at the carrier: peak voltage [V], rms current [A], loss [W], or None."""
 
     branch: Branch
@@ -209,8 +207,7 @@ class PartStress:
     loss: float | None
 
 
-@dataclass(frozen=True, slots=True)
-class Tank:
+class Tank(NamedTuple):
     """A network as designed, and what it is like.
 
     ``parts`` run from device to load and hold all that shapes the RF; ``impedance`` [ohm] is what the

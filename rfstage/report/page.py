@@ -12,8 +12,7 @@ import shutil
 import sys
 import textwrap
 from collections.abc import Sequence
-from dataclasses import dataclass
-from typing import IO
+from typing import IO, NamedTuple
 
 from rich.console import Console
 from rich.text import Text
@@ -40,8 +39,7 @@ _ASCII = (
 )
 
 
-@dataclass(frozen=True, slots=True)
-class Look:
+class Look(NamedTuple):
     """How a page is to look: its width in columns, and whether it must be ASCII."""
 
     width: int = PIPE_WIDTH
@@ -60,8 +58,7 @@ class Look:
         return "-" if self.ascii else "─"
 
 
-@dataclass(frozen=True, slots=True)
-class Cell:
+class Cell(NamedTuple):
     """Words in a column, with a style, and whether they stand to the right."""
 
     words: str

@@ -22,8 +22,7 @@ current that rises with the voltage make the problem monotone: there is one solu
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -36,8 +35,7 @@ from rfstage.steady.network import Complex
 TOLERANCE = 1e-11  # of the supply voltage, or of the current's response where that is less
 
 
-@dataclass(frozen=True, slots=True)
-class Effort:
+class Effort(NamedTuple):
     """How long Newton tries: iterations, and halvings of one step."""
 
     iterations: int
@@ -48,8 +46,7 @@ QUICK = Effort(25, 4)  # past these the knee is in the way, and softening it is 
 PATIENT = Effort(60, 12)
 
 
-@dataclass(frozen=True, slots=True)
-class Point:
+class Point(NamedTuple):
     """A trial: unknowns and scaled residual [V] (S, N + 1), merit and goal [-] (S,), sampled slopes (S, M).
 
     Pairs have modes and devices as the second axis. ``merit`` is the residual's length over the supply voltage, and
@@ -83,8 +80,7 @@ class Point:
             self.capacitance[rows] = other.capacitance
 
 
-@dataclass(frozen=True, slots=True)
-class Outcome:
+class Outcome(NamedTuple):
     """Where Newton ended: unknowns (S, N + 1), of pairs (S, 2, N + 1), merit, convergence and iterations (S,)."""
 
     unknowns: Complex

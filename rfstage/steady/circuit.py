@@ -15,8 +15,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -33,8 +32,7 @@ SAMPLES_PER_ORDER_HARD = 32  # the same for a hard threshold corner, whose spect
 NEARLY_DC = 1e-6  # of the carrier: where a ladder shows whether it conducts direct current
 
 
-@dataclass(frozen=True, slots=True)
-class Circuit:
+class Circuit(NamedTuple):
     """Stages of one order number N as arrays with a stage axis S in front, M samples a cycle.
 
     Pairs have an axis of two behind that of the stages: devices a and b for drive and law, modes even and odd
@@ -119,11 +117,11 @@ class Circuit:
 
     def driven_at(self, fraction: float) -> Circuit:
         """Return the same stages with a fraction of the drive amplitude; the bias stays."""
-        return replace(self, amplitude=self.amplitude * fraction)._with_law(self.law)
+        return self._replace(amplitude=self.amplitude * fraction)._with_law(self.law)
 
     def _with_law(self, law: Law) -> Circuit:
         control = self.bias + self.amplitude * _cosine(self.samples)
-        return replace(self, law=law, driven=DrivenLaw.at(law, control))
+        return self._replace(law=law, driven=DrivenLaw.at(law, control))
 
 
 def sources(stages: Sequence[Stage]) -> tuple[Array, Array, Array, Array]:

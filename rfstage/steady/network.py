@@ -11,8 +11,8 @@ There is no evaluator here: `Ladder.walk` gives everything, and this room only l
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
-from typing import Any
+from dataclasses import replace
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -29,8 +29,7 @@ _VALUES = ("value", "q", "series_resistance", "lead_inductance", "self_capacitan
 _TRAITS = ("name", "place", "kind", "q_frequency", "origin")
 
 
-@dataclass(frozen=True, slots=True)
-class Network:
+class Network(NamedTuple):
     """Stages of one build: what 1 A peak from the device does at orders 1 … N, with a stage axis S in front.
 
     ``frequencies`` [Hz] (N,); ``impedance`` at the device [ohm] (S, N); ``gain`` load power over squared peak

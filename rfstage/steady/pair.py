@@ -181,7 +181,7 @@ class Pairs:
         """Return the solved cycle of both devices."""
         if circuit.paired:
             return Cycle.of(circuit, solution)
-        return Cycle.of(self.coupled(circuit.orders), replace(solution, unknowns=self._spread(solution.unknowns)))
+        return Cycle.of(self.coupled(circuit.orders), solution._replace(unknowns=self._spread(solution.unknowns)))
 
     def figures(self, cycle: Cycle) -> Figures:
         """Return those of the first stage."""

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 import numpy as np
 
@@ -16,8 +16,7 @@ from rfstage.steady.report import Account, Cycle, account, borne, charge_power, 
 from rfstage.steady.state import DeviceShare
 
 
-@dataclass(frozen=True, slots=True)
-class PairNetwork:
+class PairNetwork(NamedTuple):
     """Pairs of one build, by the ladders of their modes.
 
     In push-pull ``even`` is one device's feed and ``odd`` its feed with half of what stands between; in parallel
@@ -69,7 +68,7 @@ def pair_account(stages: Sequence[Stage], network: PairNetwork, cycle: Cycle) ->
             cycle.device.sum(axis=1),
             cycle.charging.sum(axis=1),
         )
-        return replace(account(stages, network.even, at_node), peak_current=amperes.max(axis=1), devices=devices)
+        return account(stages, network.even, at_node)._replace(peak_current=amperes.max(axis=1), devices=devices)
     powers = network.odd.gain * np.abs(drawn_by_load(network, cycle)[:, 1:]) ** 2
     return Account(
         current.sum(axis=1),

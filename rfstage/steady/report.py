@@ -11,8 +11,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 
@@ -32,8 +31,7 @@ NO_CURRENT = 1e-12  # of supply over load resistance: the far foot of a threshol
 COUNTED = 1e-8  # of the carrier's power: harmonics below −80 dBc do not decide the orders
 
 
-@dataclass(frozen=True, slots=True)
-class Cycle:
+class Cycle(NamedTuple):
     """Solutions over the cycle: samples of voltage [V] and current [A], shape (S, M), and phasors.
 
     ``node`` [V], ``device`` and ``charging`` current [A], shape (S, N + 1), entry 0 the mean. All of them have an
@@ -83,8 +81,7 @@ class Cycle:
         return Cycle(self.volts[rows], self.amperes[rows], self.node[rows], self.device[rows], self.charging[rows])
 
 
-@dataclass(frozen=True, slots=True)
-class Figures:
+class Figures(NamedTuple):
     """What decides whether the orders suffice: dc current [A] and load powers of the first orders [W]."""
 
     dc_current: float
@@ -109,8 +106,7 @@ class Figures:
         )
 
 
-@dataclass(frozen=True, slots=True)
-class Account:
+class Account(NamedTuple):
     """What solutions come to, a row for each stage.
 
     ``dc_current`` [A], ``dissipation`` and ``charge_power`` [W], ``minimum_voltage`` and ``peak_voltage`` [V] and

@@ -10,7 +10,6 @@ from rfstage.errors import ConvergenceError, OutOfRangeError
 from rfstage.stage import Stage
 from rfstage.steady.circuit import Circuit, check
 from rfstage.steady.network import Complex
-from rfstage.steady.pair import Pairs
 from rfstage.steady.report import Figures
 from rfstage.steady.single import Singles, System
 from rfstage.steady.solve import FAILED, solve
@@ -179,7 +178,12 @@ def _settle_block(
 
 
 def _system(stages: Sequence[Stage], orders: int) -> System:
-    return Singles.of(stages, orders) if stages[0].device.pair is None else Pairs.of(stages, orders)
+    if stages[0].device.pair is None:
+        return Singles.of(stages, orders)
+
+    from rfstage.steady.pair import Pairs  # three rooms that most runs do without
+
+    return Pairs.of(stages, orders)
 
 
 def _doubled(first: int, last: int) -> list[int]:

@@ -8,8 +8,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
-from typing import Protocol
+from typing import NamedTuple, Protocol
 
 from rfstage.stage import Stage
 from rfstage.steady.circuit import Circuit
@@ -42,8 +41,7 @@ class System(Protocol):
         """Return the steady states, in the stages' order."""
 
 
-@dataclass(frozen=True, slots=True)
-class Singles:
+class Singles(NamedTuple):
     """Stages with one device each; ``ladders`` with the rows they hold."""
 
     stages: Sequence[Stage]

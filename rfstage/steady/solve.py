@@ -8,7 +8,7 @@ needs this gets it by itself; the others of the batch do not notice.
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -26,8 +26,7 @@ LEAST_RATIO = 1.02
 SWING_OF_START = 0.9  # of the supply: the most that the start's fundamental may have
 
 
-@dataclass(frozen=True, slots=True)
-class Solution:
+class Solution(NamedTuple):
     """Unknowns (S, N + 1) [V], of pairs (S, 2, N + 1), merit and iterations (S,), and each stage's way."""
 
     unknowns: Complex

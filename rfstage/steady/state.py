@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,8 +15,7 @@ ORDERS_POWER = 0.01  # dB, of the output power
 ORDERS_HARMONICS = 0.1  # dB, of the harmonics that count
 
 
-@dataclass(frozen=True, slots=True)
-class HarmonicLevel:
+class HarmonicLevel(NamedTuple):
     """One order: frequency [Hz], power in the load [W], level against the carrier [dBc].
 
     The level is None where the device's current has no such harmonic, or where there is no carrier.
@@ -27,8 +27,7 @@ class HarmonicLevel:
     level: float | None
 
 
-@dataclass(frozen=True, slots=True)
-class BranchStress:
+class BranchStress(NamedTuple):
     """What one branch bears: loss [W], peak voltage across it [V], rms current through it [A].
 
     All orders and dc together: a blocking capacitor's voltage has the supply in it, a choke's current the
@@ -41,8 +40,7 @@ class BranchStress:
     rms_current: float
 
 
-@dataclass(frozen=True, slots=True)
-class DeviceShare:
+class DeviceShare(NamedTuple):
     """One device of a pair: direct current [A], heat [W], peak electrode voltage [V], peak device current [A]."""
 
     dc_current: float
@@ -51,8 +49,7 @@ class DeviceShare:
     peak_current: float
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class Waveform:
+class Waveform(NamedTuple):
     """One cycle, from the drive's crest: phase [deg], electrode voltage [V], device current [A], shape (M,).
 
     The current is that of the law; what flows into capacitances is not in it.
@@ -63,8 +60,7 @@ class Waveform:
     current: NDArray[np.float64]
 
 
-@dataclass(frozen=True, slots=True)
-class OrdersChange:
+class OrdersChange(NamedTuple):
     """What moved when the orders were last doubled.
 
     ``dc_current`` relative [-], ``output_power_db`` [dB], and the largest move of a harmonic to the tenth above
