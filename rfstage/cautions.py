@@ -26,7 +26,14 @@ class Caution(NamedTuple):
 
 
 def safety(
-    *, family: str, supply: float, dc_current: float, highest_rf: float, power: float, blocked: bool, carrier: float
+    *,
+    family: str,
+    supply: float,
+    dc_current: float,
+    highest_rf: float,
+    power: float,
+    reaches_load: bool,
+    carrier: float,
 ) -> list[Caution]:
     """Return what can hurt someone in a stage of these volts, amperes, watts and hertz."""
     found = []
@@ -61,7 +68,7 @@ def safety(
                 ),
             )
         )
-    if blocked and supply > DC_SHOCK:
+    if reaches_load and supply > DC_SHOCK:
         found.append(
             Caution(
                 "blocking capacitor",
@@ -96,34 +103,38 @@ def safety(
     return found
 
 
-def about_dip(dip: float) -> list[Caution]:
-    """Return what a trough dip [-] says of the textbook's figures."""
+def about_dip(dip: float, *, network: str, corrected: bool) -> list[Caution]:
+    """Return what a trough dip [-] says of the textbook's figures, and what lessens it."""
     if dip <= DIP_CAUTION:
         return []
-    strength = "will not hold" if dip > DIP_STRONG else "is optimistic"
+    strength = "do not hold" if dip > DIP_STRONG else "are optimistic"
+    cure = "a higher input-side Q shorts them" if network == "pi" else "network pi shorts them"
+    held = "; the correction to the settled power makes up for it" if corrected else ""
     return [
         Caution(
             "harmonic terminations",
-            (
-                f"trough dip {dip:.2f}: the network leaves the device's harmonics too much impedance, so the textbook "
-                f"power {strength} and the peak voltage may be far higher; a pi, or a higher input-side Q, shorts them."
-            ),
+            f"trough dip {dip:.2f}: the network leaves the device's harmonics an impedance, so that the textbook's "
+            f"figures {strength}{held}; {cure}.",
         )
     ]
 
 
 def about_settled(
     *,
-    family: str,
     supply: float,
     peak_voltage: float,
     rating: float | None,
+    one_way: bool,
     minimum_voltage: float,
-    orders_settled: bool,
+    moved: tuple[float, float] | None,
     asked_power: float | None,
     output_power: float,
 ) -> list[Caution]:
-    """Return what a steady state (V, W) says of the stage; a peak beyond what the device stands comes first."""
+    """Return what a steady state (V, W) says of the stage; a peak beyond what the device stands comes first.
+
+    ``one_way``: nothing conducts when the voltage falls below zero. ``moved``: how much dc current [-] and output
+    [dB] still moved when the orders were last doubled, or None where they have settled.
+    """
     found = []
     if rating is not None and peak_voltage > rating:
         found.append(
@@ -148,20 +159,20 @@ def about_settled(
                 f"in steady state this stage gives {show(output_power, 'W')} where {show(asked_power, 'W')} is asked.",
             )
         )
-    if minimum_voltage < 0 and family == "tube":
+    if minimum_voltage < 0 and one_way:
         found.append(
             Caution(
-                "negative anode",
-                f"the settled anode voltage falls to {show(minimum_voltage, 'V')}: the law has no current there, "
-                "the tube's grid and screen take it.",
+                "negative voltage",
+                f"the settled output voltage falls to {show(minimum_voltage, 'V')}: the law has no current there; in "
+                "a tube grid and screen take it, in a transistor its junction (reverse_conduction).",
             )
         )
-    if not orders_settled:
+    if moved is not None:
         found.append(
             Caution(
                 "harmonic orders",
-                "even 256 orders do not settle the figures to the last digit shown; the network leaves the device's "
-                "harmonics nowhere to go.",
+                f"the last doubling of the orders still moved the dc current by {100 * moved[0]:.2g} % and the output "
+                f"by {moved[1]:.2g} dB: a narrow pulse, or a network that leaves the device's harmonics nowhere to go.",
             )
         )
     return found

@@ -43,10 +43,17 @@ class Limit(NamedTuple):
         """Return the dB below the carrier's mean power that each harmonic needs.
 
         ``carrier`` in Hz, ``power`` the mean power at the line in W. None where the rule gives no
-        figure, or asks for none at so low a power.
+        figure, or asks for none at so low a power; `silence` tells which.
         """
         needed = self.rule(carrier, power)
         return needed if needed is not None and needed > 0 else None
+
+    def silence(self, carrier: float, power: float) -> str:
+        """Return why the rule gives no suppression for this carrier [Hz] and power [W], or nothing if it does."""
+        needed = self.rule(carrier, power)
+        if needed is None:
+            return "gives no figure here: reduce spurious emission as far as practicable"
+        return "" if needed > 0 else "asks for no reduction at so low a power"
 
 
 def _below(power: float, amount: float) -> float:

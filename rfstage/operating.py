@@ -165,7 +165,8 @@ class DriveVoltages(NamedTuple):
     """Drive at the control electrode: bias and peak amplitude [V], or None where nothing fixes them.
 
     ``unbiased_amplitude`` gives the conduction angle with no bias at all; it exists only where the
-    threshold lies on the far side of zero and the angle is below 180°. ``power`` is in watts.
+    threshold times the cosine of the half angle is above zero. It says nothing of the peak current.
+    ``power`` is in watts.
     """
 
     bias: float | None
@@ -219,46 +220,50 @@ def drive_voltages(
             f"{opposed:.4g} V, is more than that, so the tube never conducts at the trough: drive harder, or give a "
             "tube of higher amplification factor"
         )
-    if threshold is None:
-        return bias, amplitude, None
-    start = threshold - lifted
-    unbiased = start / cosine + opposed if start * cosine > 0 else None
     ways: list[tuple[str, float]] = []  # what is given, and the drive it makes effective
     if transfer_factor is not None:
         share = 2 * math.sin(half_angle / 2) ** 2  # 1 − cos, with its digits at small angles
         ways.append(("device.transfer_factor", (peak_current / transfer_factor) ** (1 / exponent) / share))
     if amplitude is not None:
         ways.append(("drive.amplitude", amplitude - opposed))
-    if bias is not None and not (ways and cosine == 0):
-        if (start - bias) * cosine <= 0:
-            raise ImpossibleError(_bias_refused(degrees, cosine, start, bias))
-        ways.append(("drive.bias", (start - bias) / cosine))
+    if threshold is None:
+        start, unbiased = None, None
+    else:
+        start = threshold - lifted
+        unbiased = start / cosine + opposed if start * cosine > 0 else None
+        if bias is not None:
+            ways += _drive_of_bias(degrees, cosine, start, bias)
     if not ways:
-        return None, None, unbiased
+        return bias, None, unbiased
     name, effective = ways[0]
     for other, demanded in ways[1:]:
         if abs(demanded - effective) > AGREEMENT * effective:
             got = bias if other == "drive.bias" else amplitude
+            wanted = "" if start is None else f"a bias of {start - effective * cosine:.4g} V and "
             raise ImpossibleError(
-                f"{other}: {name}, {degrees:.4g} deg and the power ask for a bias of {start - effective * cosine:.4g} "
-                f"V and a drive of {effective + opposed:.4g} V peak; got {exact_text(got or 0.0, 'V')} "
-                "(leave one of them out)"
+                f"{other}: {name}, {degrees:.4g} deg and the power ask for {wanted}a drive of "
+                f"{effective + opposed:.4g} V peak; got {exact_text(got or 0.0, 'V')} (leave one of them out)"
             )
-    if name == "drive.bias":
-        return bias, effective + opposed, unbiased
-    return start - effective * cosine, effective + opposed, unbiased
+    if bias is None and start is not None:
+        bias = start - effective * cosine
+    return bias, effective + opposed, unbiased
 
 
-def _bias_refused(degrees: float, cosine: float, start: float, bias: float) -> str:
+def _drive_of_bias(degrees: float, cosine: float, start: float, bias: float) -> list[tuple[str, float]]:
+    """Return what a bias makes of the drive [V], nothing at 180° where it says nothing of it."""
     if cosine == 0:
-        return (
-            "drive.bias: at 180 deg the bias equals the threshold, so it does not fix the drive; got "
-            f"{exact_text(bias, 'V')} (give the transfer factor or the drive's amplitude instead)"
+        if abs(bias - start) > AGREEMENT * max(abs(start), abs(bias)):
+            raise ImpossibleError(
+                f"drive.bias: at 180 deg the bias equals the threshold of {start:.6g} V; got {exact_text(bias, 'V')}"
+            )
+        return []
+    if (start - bias) * cosine <= 0:
+        side = "below" if cosine > 0 else "above"
+        raise ImpossibleError(
+            f"drive.bias: {degrees:.4g} deg needs a bias {side} the threshold of {start:.6g} V; "
+            f"got {exact_text(bias, 'V')}"
         )
-    side = "below" if cosine > 0 else "above"
-    return (
-        f"drive.bias: {degrees:.4g} deg needs a bias {side} the threshold of {start:.6g} V; got {exact_text(bias, 'V')}"
-    )
+    return [("drive.bias", (start - bias) / cosine)]
 
 
 def drive_power(

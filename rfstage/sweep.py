@@ -16,7 +16,7 @@ import cmath
 import math
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 
@@ -27,7 +27,7 @@ from rfstage.load import SeriesLoad
 from rfstage.stage import Stage
 from rfstage.steady import SteadyState, settle, settle_many
 
-PHASES = 24  # of each circle of standing-wave ratio
+PHASES = 48  # of each circle of standing-wave ratio
 TOGETHER = 64  # orders: up to here a batch from the middle is fastest, beyond it a chain from point to point
 CHUNK = 10  # points solved between two reports of progress
 LOAD = "load"
@@ -50,8 +50,7 @@ _PART_UNITS: dict[str, dict[str, str]] = {
 }
 
 
-@dataclass(frozen=True, slots=True)
-class Extreme:
+class Extreme(NamedTuple):
     """A turning point inside a sweep: where it is, and the figure there (A, W or a ratio)."""
 
     value: float
@@ -129,7 +128,10 @@ def unit_of(stage: Stage, path: str) -> str:
 def with_value(stage: Stage, path: str, value: float) -> Stage:
     """Return the stage with one value changed; the path is one of `paths`."""
     if path == "carrier":
-        return replace(stage, carrier=value)
+        # the choke stays the coil it is: its resistance goes as the root of the frequency, its reactance as that
+        q = stage.supply.choke_q
+        supply = stage.supply if q is None else replace(stage.supply, choke_q=q * math.sqrt(value / stage.carrier))
+        return replace(stage, carrier=value, supply=supply)
     if path == "load.resistance":
         return replace(stage, load=SeriesLoad(complex(value), stage.carrier))
     head, _, key = path.partition(".")
@@ -191,8 +193,8 @@ def sweep(
         return _load_circles(stage, values, progress)
     stages = [with_value(stage, path, float(value)) for value in values]
     points = _solve(stages, progress)
-    settled = [p for p in points if p.has_output]
-    inside = len(settled) == len(points)
+    alive = [k for k, p in enumerate(points) if p.has_output]
+    places, living = [float(values[k]) for k in alive], [points[k] for k in alive]
     return Sweep(
         stage,
         path,
@@ -200,9 +202,9 @@ def sweep(
         tuple(float(v) for v in values),
         points,
         (),
-        dip=_extreme(values, [-p.dc_current for p in points], sign=-1) if inside else None,
-        efficiency_peak=_extreme(values, [p.efficiency or 0.0 for p in points]) if inside else None,
-        output_peak=_extreme(values, [p.output_power for p in points]) if inside else None,
+        dip=_dip(places, [p.dc_current for p in living]),
+        efficiency_peak=_greatest(places, [p.efficiency or 0.0 for p in living]),
+        output_peak=_greatest(places, [p.output_power for p in living]),
     )
 
 
@@ -232,19 +234,31 @@ def _predicted(points: Sequence[SteadyState], together: int) -> SteadyState:
     return replace(points[-1], device_voltage=last + (together + 1) / 2 * (last - before))
 
 
-def _extreme(values: Sequence[float], figures: Sequence[float], *, sign: int = 1) -> Extreme | None:
-    """Return the greatest figure's place by a parabola through it and its neighbours; None at an edge."""
-    k = int(np.argmax(figures))
-    if k in (0, len(figures) - 1):
+def _greatest(values: Sequence[float], figures: Sequence[float]) -> Extreme | None:
+    """Return the place of the greatest figure; None where it lies at an edge, or nothing has output."""
+    k = int(np.argmax(figures)) if figures else 0
+    return None if k in (0, max(len(figures) - 1, 0)) else _turning(values, figures, k)
+
+
+def _dip(values: Sequence[float], currents: Sequence[float]) -> Extreme | None:
+    """Return the lowest dip between two rises; far off resonance the current may fall below it again."""
+    dips = [k for k in range(1, len(currents) - 1) if currents[k - 1] >= currents[k] < currents[k + 1]]
+    if not dips:
         return None
+    found = _turning(values, [-i for i in currents], min(dips, key=lambda k: currents[k]))
+    return found._replace(figure=-found.figure)
+
+
+def _turning(values: Sequence[float], figures: Sequence[float], k: int) -> Extreme:
+    """Return the top of a parabola through a greatest figure and its neighbours."""
     x, y = np.asarray(values[k - 1 : k + 2], dtype=float), np.asarray(figures[k - 1 : k + 2], dtype=float)
     left, right = (y[1] - y[0]) / (x[1] - x[0]), (y[2] - y[1]) / (x[2] - x[1])
     curvature = (right - left) / (x[2] - x[0])
     if curvature >= 0:
-        return Extreme(float(x[1]), sign * float(y[1]))
+        return Extreme(float(x[1]), float(y[1]))
     slope = left + curvature * (x[1] - x[0])
     shift = -slope / (2 * curvature)
-    return Extreme(float(x[1] + shift), sign * float(y[1] + slope * shift + curvature * shift**2))
+    return Extreme(float(x[1] + shift), float(y[1] + slope * shift + curvature * shift**2))
 
 
 def mismatched(stage: Stage, ratio: float, phase_deg: float) -> Stage:

@@ -251,8 +251,8 @@ def test_bias_on_the_wrong_side_of_the_threshold_is_refused_naming_the_side(half
         drive(half_angle=math.radians(half_angle_deg), bias=bias)
 
 
-def test_bias_at_half_a_cycle_fixes_no_drive_and_is_refused_asking_for_the_transfer_factor():
-    with pytest.raises(ImpossibleError, match=r"at 180 deg the bias equals the threshold.*transfer factor"):
+def test_bias_at_half_a_cycle_is_the_threshold_and_any_other_is_refused():
+    with pytest.raises(ImpossibleError, match=r"at 180 deg the bias equals the threshold of 0.7 V; got 300 mV"):
         drive(half_angle=math.pi / 2, bias=0.3)
 
 

@@ -70,7 +70,7 @@ def run(words: Sequence[str]) -> int:
     def page(look: Look) -> list[Text]:
         from rfstage.report.small import match_page
 
-        return match_page(look, tank=made.tank, load=made.load, transfer=made.transfer)
+        return match_page(look, tank=made.tank, load=made.load, carrier=values["carrier"], transfer=made.transfer)
 
     output(found, record, page)
     return 0

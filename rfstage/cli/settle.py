@@ -35,11 +35,13 @@ def run(words: Sequence[str]) -> int:
     targets = [found.spice] if found.spice else []
     check_targets(targets, overwrite=found.overwrite)
 
+    from rfstage.designs.judging import judged, worst
     from rfstage.files.stage import load_stage
     from rfstage.steady import settle
 
     stage = load_stage(found.stage.strip())
     state = settle(stage)
+    verdicts = judged(state)
     if targets:
         from rfstage.files.spice import spice_text
 
@@ -48,12 +50,13 @@ def run(words: Sequence[str]) -> int:
     def record() -> dict[str, Any]:
         from rfstage.files.records import settle_record
 
-        return settle_record(state)
+        return settle_record(state, verdicts)
 
     def page(look: Look) -> list[Text]:
         from rfstage.report.settled import settled_page
 
-        return settled_page(state, look)
+        return settled_page(state, look, verdicts)
 
     output(found, record, page)
-    return 0
+    least = worst(verdicts)
+    return 1 if least is not None and least.margin is not None and least.margin < 0 else 0

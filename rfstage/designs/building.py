@@ -77,19 +77,22 @@ def _stage(
     job = settings.job
     stand_ins: dict[str, object] = {}
     cosine = math.cos(settings.half_angle)
+    if abs(cosine) < 1e-15:
+        cosine = 0.0  # 180 degrees: no residue of pi in the bias
     peak_share = 2 * math.sin(settings.half_angle / 2) ** 2  # 1 − cos, with its digits at small angles
     threshold, above = STAND_INS[settings.family]
+    lifted, opposed = _anode_feedback(settings, point)
+    effective = above / peak_share if drive.amplitude is None else drive.amplitude - opposed
     if settings.threshold is not None:
         threshold = settings.threshold
     else:
+        if drive.bias is not None:
+            threshold = drive.bias + lifted + effective * cosine
         stand_ins["device.threshold"] = threshold
-    lifted, opposed = _anode_feedback(settings, point)
-    amplitude, bias = drive.amplitude, drive.bias
-    if amplitude is None:
-        amplitude = above / peak_share + opposed
-    if bias is None or drive.amplitude is None:
-        bias = threshold - lifted - (amplitude - opposed) * cosine
-    peak_above = (amplitude - opposed) * peak_share
+    bias = drive.bias
+    if bias is None or (drive.amplitude is None and cosine != 0):
+        bias = threshold - lifted - effective * cosine
+    peak_above = effective * peak_share
     transfer = job.transfer_factor
     if transfer is None:
         transfer = point.peak_current / peak_above**settings.exponent
@@ -110,10 +113,14 @@ def _stage(
         max_current=job.max_current,
         max_dissipation=job.max_dissipation,
     )
+    for name in ("threshold_softness", "knee_voltage", "knee_resistance"):
+        stand_ins[f"device.{name}"] = getattr(device, name)
+    if device.reverse_conduction is not None:
+        stand_ins["device.reverse_conduction"] = device.reverse_conduction.conductance
     stage = Stage(
         carrier=job.carrier,
         device=device,
-        drive=Drive(bias, amplitude),
+        drive=Drive(bias, effective + opposed),
         supply=circuit.supply,
         branches=(circuit.blocking, *circuit.tank),
         load=settings.load,

@@ -123,8 +123,9 @@ def _judge(settings: Settings, book: Built, state: SteadyState) -> None:
 
 def _way_out(job: Job) -> str:
     """Say which network or supply would do it, tried and not guessed; or that --textbook keeps the book's design."""
+    plain = "network pi with its default Q" if job.network in (None, "pi") else "network pi"
     trials: list[tuple[str, dict[str, object]]] = [
-        ("network pi", {"network": "pi", "loaded_q": None, "input_q": None}),
+        (plain, {"network": "pi", "loaded_q": None, "input_q": None}),
         ("network pi with an input-side Q of 4", {"network": "pi", "loaded_q": None, "input_q": 4.0}),
         (f"a supply of {1.3 * job.supply:.3g} V", {"supply": 1.3 * job.supply}),
         (

@@ -13,13 +13,11 @@ from rfstage.cautions import (
     about_dip,
     about_low_resistance,
     about_resonance,
-    about_settled,
     about_tank_loss,
-    safety,
 )
 from rfstage.designs.building import Built, build
 from rfstage.designs.settings import Settings, with_defaults
-from rfstage.designs.textbook import Circuit, by_the_book, default_loaded_q
+from rfstage.designs.textbook import Circuit, by_the_book
 from rfstage.errors import ConvergenceError
 from rfstage.harmonics import Harmonic, harmonics, terminations, trough_dip, with_settled_levels
 from rfstage.job import Job
@@ -29,7 +27,7 @@ from rfstage.matching.networks import Tank, describe
 from rfstage.matching.quality import strongest_resonance_below
 from rfstage.operating import DriveVoltages, OperatingPoint, Rating, ratings
 from rfstage.pulse import operating_class, pulse_coefficients
-from rfstage.quantity import show, show_orders
+from rfstage.quantity import show_orders
 from rfstage.stage import Stage
 
 if TYPE_CHECKING:
@@ -134,33 +132,22 @@ def with_settled(made: Design, state: SteadyState | None = None) -> Design:
         Where no steady state is reached a
         textbook design comes back as it was, with a caution that says so.
     """
+    from rfstage.designs.judging import in_line, settled_cautions
     from rfstage.steady import settle
 
-    line, settings = made.settings.line, made.settings
+    shown = made.settings.highest_order
     try:
-        state = state or settle(made.stage)
-        in_line = state
-        if settings.load != line:
-            in_line = settle(replace(made.stage, load=line), start=state)
+        if state is None or len(state.harmonics) < shown - 1:
+            state = settle(made.stage, listed=shown, start=state)
+        line = in_line(made.stage, state, made.settings.line)
     except ConvergenceError as error:
         return replace(made, cautions=(Caution("steady state", str(error)), *made.cautions))
     levels = with_settled_levels(
         made.harmonics,
         settled={h.order: h.level for h in state.harmonics},
-        in_line={h.order: h.level for h in in_line.harmonics},
+        in_line={h.order: h.level for h in line.harmonics},
     )
-    change = state.change_from_half_the_orders
-    found = about_settled(
-        family=settings.family,
-        supply=made.job.supply,
-        peak_voltage=state.peak_voltage,
-        rating=made.job.max_voltage,
-        minimum_voltage=state.minimum_voltage,
-        orders_settled=change is None or change.settled,
-        asked_power=made.job.power,
-        output_power=state.output_power,
-    )
-    worst = {
+    most = {
         "max_voltage": state.peak_voltage,
         "max_current": state.peak_current,
         "max_dissipation": state.dissipation,
@@ -169,8 +156,8 @@ def with_settled(made: Design, state: SteadyState | None = None) -> Design:
         made,
         settled=state,
         harmonics=levels,
-        ratings=tuple(r._replace(value=max(r.value, worst[r.name])) for r in made.ratings),
-        cautions=(*found, *made.cautions),
+        ratings=tuple(r._replace(value=max(r.value, most[r.name])) for r in made.ratings),
+        cautions=(*settled_cautions(state), *made.cautions),
     )
 
 
@@ -184,7 +171,7 @@ def _assembled(
         ladder,
         settings.load,
         carrier=job.carrier,
-        coefficients=coefficients,
+        coefficients=coefficients[: WAVEFORM_ORDERS + 1],
         peak_current=point.peak_current,
         swing=point.swing,
     )
@@ -231,13 +218,13 @@ def _assembled(
         tank=tank,
         harmonics=levels,
         continued=continued,
-        cautions=_cautions(settings, point, tank, levels, ladder, continued),
+        cautions=_cautions(built, settings, tank, levels, ladder, continued, designed_to),
         stage=built.stage,
-        assumed={**settings.assumed, **_sized(settings, circuit, point), **built.stand_ins},
+        assumed={**settings.assumed, **_sized(settings, circuit, tank), **built.stand_ins},
     )
 
 
-def _sized(settings: Settings, circuit: Circuit, point: OperatingPoint) -> dict[str, object]:
+def _sized(settings: Settings, circuit: Circuit, tank: Tank) -> dict[str, object]:
     """Return the defaults that follow from the load resistance, by key."""
     job = settings.job
     found: dict[str, object] = {}
@@ -246,64 +233,50 @@ def _sized(settings: Settings, circuit: Circuit, point: OperatingPoint) -> dict[
     if job.blocking is None:
         found["tank.blocking"] = float(circuit.blocking.value)
     if settings.request.network == "pi" and job.loaded_q is None and job.input_q is None:
-        found["tank.loaded_q"] = default_loaded_q(settings, point.load_resistance)
+        found["tank.loaded_q"] = tank.loaded_q
     return found
 
 
 def _cautions(
+    made: Built,
     settings: Settings,
-    point: OperatingPoint,
     tank: Tank,
     levels: tuple[Harmonic, ...],
     ladder: Ladder,
     continued: tuple[int, ...],
+    designed_to: str,
 ) -> tuple[Caution, ...]:
-    job = settings.job
-    found = about_dip(tank.trough_dip or 0.0)
+    from rfstage.designs.judging import safety_cautions
+
+    job, point = settings.job, made.point
+    found = about_dip(tank.trough_dip or 0.0, network=tank.network, corrected=designed_to == "settled")
     found += about_tank_loss(tank.efficiency, tank.loaded_q)
-    found += about_low_resistance(point.load_resistance, _input_capacitance(tank), job.carrier)
+    found += about_low_resistance(point.load_resistance, _input_capacitance(made.circuit), job.carrier)
     found += about_resonance(strongest_resonance_below(ladder.branches, settings.load, job.carrier))
     if continued:
-        orders = show_orders(continued)
         found.append(
             Caution(
                 "load file",
-                (
-                    f"the measured load does not reach orders {orders}; it was continued from its nearest end as a "
-                    "series resistance with a coil or capacitor, so those levels are estimates."
-                ),
+                f"the measured load does not reach orders {show_orders(continued)}; it was continued from its "
+                "nearest end as a series resistance with a coil or capacitor, so those levels are estimates.",
             )
         )
-    if any(h.strays_decide for h in levels):
-        orders = show_orders([h.order for h in levels if h.strays_decide])
+    strayed = [h.order for h in levels if h.strays_decide]
+    if strayed:
+        orders = "every order shown" if len(strayed) == len(levels) else f"orders {show_orders(strayed)}"
         found.append(
             Caution(
                 "strays",
-                (
-                    f"at orders {orders} the level moves by more than 3 dB with {show(5e-9, 'H')} of lead in each "
-                    "shunt capacitor: measure, don't trust."
-                ),
+                f"at {orders} the level moves by more than 3 dB with 5 nH of lead in each shunt capacitor: measure, "
+                "don't trust.",
             )
         )
     highest = max(part.peak_voltage or 0.0 for part in tank.parts)
-    return tuple(
-        found
-        + safety(
-            family=settings.family,
-            supply=job.supply,
-            dc_current=point.dc_current,
-            highest_rf=highest,
-            power=job.power,
-            blocked=True,
-            carrier=job.carrier,
-        )
-    )
+    safe = safety_cautions(made.stage, dc_current=point.dc_current, highest_rf=highest, power=job.power)
+    return (*found, *safe)
 
 
-def _input_capacitance(tank: Tank) -> float | None:
-    """Return the capacitor across the device [F] that a person fits, or None."""
-    for part in tank.parts:
-        branch = part.branch
-        if branch.name == "C1" and branch.place == "shunt":
-            return float(branch.value)
-    return None
+def _input_capacitance(circuit: Circuit) -> float | None:
+    """Return the network's capacitor across its input [F], or None where it begins otherwise."""
+    first = circuit.tank[0]
+    return float(first.value) if first.place == "shunt" and first.kind == "capacitor" else None

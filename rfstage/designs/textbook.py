@@ -59,7 +59,9 @@ def circuit_for(settings: Settings, resistance: float, near: tuple[Branch, ...] 
     across = _input_reactance(settings, resistance)
     choke = job.choke
     if choke is None:
-        choke = (10 * resistance if resistance < SMALL_RESISTANCE or across is None else 9 * across) / omega
+        # with a fixed input-side Q the input capacitor does not grow to tune the choke out
+        ratio = 10 if settings.request.input_q is not None else 9
+        choke = (10 * resistance if resistance < SMALL_RESISTANCE or across is None else ratio * across) / omega
     blocking = job.blocking
     if blocking is None:
         blocking = 10 / (omega * min(resistance, across or resistance))

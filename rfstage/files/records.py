@@ -11,8 +11,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from rfstage.designs.design import Design
+from rfstage.designs.judging import Verdict, ratings_of
 from rfstage.ladder import Branch
 from rfstage.matching.networks import PartStress, Tank
+from rfstage.operating import Rating
 
 if TYPE_CHECKING:
     from rfstage.steady import SteadyState
@@ -60,7 +62,7 @@ def design_record(design: Design, files: Sequence[str]) -> dict[str, Any]:
             "dc_power_w": point.dc_power,
             "device_rf_power_w": point.device_rf_power,
             "dissipation_w": point.dissipation,
-            "choke_loss_w": point.choke_loss,
+            "choke_dc_loss_w": point.choke_loss,
             "device_efficiency": point.device_efficiency,
             "overall_efficiency": point.overall_efficiency,
             "peak_voltage_v": point.peak_voltage,
@@ -72,9 +74,7 @@ def design_record(design: Design, files: Sequence[str]) -> dict[str, Any]:
             "unbiased_amplitude_v": design.drive.unbiased_amplitude,
             "drive_power_w": design.drive.power,
         },
-        "ratings": [
-            {"name": r.name, "limit": r.limit, "value": r.value, "exceeded": r.exceeded} for r in design.ratings
-        ],
+        "ratings": [_rating(r) for r in design.ratings],
         "tank": tank_record(design.tank),
         "harmonics": [
             {
@@ -164,9 +164,22 @@ def pulse_record(
     }
 
 
-def settle_record(state: SteadyState) -> dict[str, Any]:
-    """Return a steady state as ``rfstage.settle``, version 1."""
-    return {"format": "rfstage.settle", "version": VERSION, **settled_record(state)}
+def settle_record(state: SteadyState, verdicts: Sequence[Verdict]) -> dict[str, Any]:
+    """Return a steady state as ``rfstage.settle``, version 1, with its limit's verdicts and its ratings."""
+    return {
+        "format": "rfstage.settle",
+        "version": VERSION,
+        **settled_record(state),
+        "verdicts": [
+            {"order": v.order, "line_level_dbc": v.line_level, "limit_dbc": v.limit, "margin_db": v.margin}
+            for v in verdicts
+        ],
+        "ratings": [_rating(r) for r in ratings_of(state)],
+    }
+
+
+def _rating(rating: Rating) -> dict[str, Any]:
+    return {"name": rating.name, "limit": rating.limit, "value": rating.value, "exceeded": rating.exceeded}
 
 
 def settled_record(state: SteadyState) -> dict[str, Any]:
@@ -208,6 +221,7 @@ def settled_record(state: SteadyState) -> dict[str, Any]:
             "dc_current": change.dc_current,
             "output_power_db": change.output_power_db,
             "harmonics_db": change.harmonics_db,
+            "peak_voltage": change.peak_voltage,
         },
     }
 

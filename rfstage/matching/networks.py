@@ -65,8 +65,8 @@ def solve_network(
         target = complex(-1)
     if not target.real > 0:
         raise ImpossibleError(
-            f"the choke's loss alone is more than the {exact_complex(_figures(wanted))} ohm asked at the device; "
-            "raise supply.choke or supply.choke_q"
+            f"the losses of choke and blocking capacitor alone are more than the {exact_complex(_figures(wanted))} ohm "
+            "asked at the device leave room for; raise tank.blocking, or supply.choke and supply.choke_q"
         )
     try:
         if request.network == "pi":
@@ -130,7 +130,16 @@ def _solve_pi(
     taken = resistance * omega * capacitance
     asked = request.loaded_q
     if asked is None and request.input_q is None:
-        asked = max(DEFAULT_LOADED_Q, least_loaded_q(wanted, load, least_input_q=taken) + DEFAULT_Q_MARGIN)
+        least = max(least_loaded_q(wanted, load, least_input_q=taken), least_loaded_q(target, load))
+        asked = max(DEFAULT_LOADED_Q, least + DEFAULT_Q_MARGIN)
+    elif asked is not None:
+        pi_network(wanted, load, carrier=carrier, loaded_q=asked)  # says so where the Q is too low
+        if asked <= least_loaded_q(target, load):
+            raise ImpossibleError(
+                f"tank.loaded_q: behind choke and blocking capacitor a pi has to start from "
+                f"{exact_complex(_figures(target))} ohm and needs a loaded Q above {least_loaded_q(target, load):.4g}; "
+                f"got {asked:.6g} (a larger tank.blocking or supply.choke brings it down)"
+            )
     try:
         input_q = request.input_q
         if input_q is not None:
@@ -152,7 +161,9 @@ def _solve_pi(
     if float(parts[0].value) <= 0:
         if capacitance:
             raise ImpossibleError(_too_much_capacitance(capacitance, wanted, load, carrier, request.coil_q))
-        raise ImpossibleError("network pi: the input capacitor comes out at nothing; raise the loaded Q")
+        raise ImpossibleError(
+            "network pi: the input capacitor comes out at nothing; raise the loaded Q or tank.blocking"
+        )
     if float(parts[2].value) <= 0:
         least = least_loaded_q(wanted, load, least_input_q=taken)
         if load.imag >= 0:

@@ -6,6 +6,7 @@ from collections.abc import Sequence
 
 from rich.text import Text
 
+from rfstage.ladder import Branch
 from rfstage.matching.networks import PartStress
 from rfstage.quantity import show
 from rfstage.report.page import Cell, Look, columns
@@ -13,6 +14,7 @@ from rfstage.stage import CHOKE
 
 UNIT = {"capacitor": "F", "coil": "H", "resistor": "ohm"}
 ELECTRODE = {"bipolar": "collector", "fet": "drain", "tube": "anode"}
+FAMILY = {"bipolar": "bipolar", "fet": "FET", "tube": "tube"}
 CONTROL = {"bipolar": "base", "fet": "gate", "tube": "grid"}
 
 # (place, kind) -> drawing in Unicode, in ASCII
@@ -31,7 +33,7 @@ def circuit(look: Look, parts: Sequence[PartStress], *, start: str, end: str) ->
     """Return the drawing from ``start`` to ``end``, with value, Q and stresses of each part."""
     rail = "|" if look.ascii else "│"
     stressed = any(part.peak_voltage is not None for part in parts)
-    titles = ["", "part", "value", "Q", *(["peak volts", "rms amps", "loss"] if stressed else [])]
+    titles = ["", "part", "value", "Q or R", *(["peak volts", "rms amps", "loss"] if stressed else [])]
     rows = [[Cell(start, "bold"), *(Cell(t, "dim", right=k > 0) for k, t in enumerate(titles[1:]))]]
     for part in parts:
         rows.append(_row(look, part, stressed))
@@ -43,12 +45,11 @@ def circuit(look: Look, parts: Sequence[PartStress], *, start: str, end: str) ->
 def _row(look: Look, part: PartStress, stressed: bool) -> list[Cell]:
     branch = part.branch
     drawing = _TO_SUPPLY if branch.name == CHOKE else _DRAWN[branch.place, branch.kind]
-    quality = "in device" if branch.origin == "device" else "lossless" if branch.q is None else f"{float(branch.q):.4g}"
     cells = [
         Cell("  " + drawing[look.ascii], "cyan"),
         Cell(branch.name, "bold"),
         Cell(show(float(branch.value), UNIT[branch.kind]), "bold", right=True),
-        Cell(quality, right=True),
+        Cell(_quality(branch), right=True),
     ]
     if stressed:
         assert part.peak_voltage is not None
@@ -60,3 +61,12 @@ def _row(look: Look, part: PartStress, stressed: bool) -> list[Cell]:
             Cell(show(part.loss, "W") if part.loss > 0 else "none", right=True),
         ]
     return cells
+
+
+def _quality(branch: Branch) -> str:
+    """Return the Q, or the series resistance that stands in its place."""
+    if branch.origin == "device":
+        return "in device"
+    if branch.series_resistance is not None:
+        return show(float(branch.series_resistance), "ohm")
+    return "lossless" if branch.q is None else f"{float(branch.q):.4g}"

@@ -8,13 +8,13 @@ from rfstage.designs.design import Design
 from rfstage.harmonics import Harmonic
 from rfstage.matching.networks import Tank
 from rfstage.quantity import exact_text, show, show_complex
-from rfstage.report.circuit import CONTROL, ELECTRODE, circuit
+from rfstage.report.circuit import CONTROL, ELECTRODE, FAMILY, circuit
+from rfstage.report.judged import caution_lines, rating_lines, signed, verdict_lines
 from rfstage.report.page import NO_BREAK, Cell, Look, columns, heading, note, pairs
 
 WIDE = 100  # columns, from which device current and power in the load are shown too
 BAR_FLOOR = -100.0  # dBc at the left end of a bar; the right end is the carrier
 _ORDER_NAMES = ("dc", "fundamental", "second", "third")
-_UNITS_OF = {"max_voltage": "V", "max_current": "A", "max_dissipation": "W"}
 
 
 def summary(design: Design, look: Look) -> list[Text]:
@@ -26,7 +26,7 @@ def summary(design: Design, look: Look) -> list[Text]:
         *_tank(design, look),
         *_harmonics(design, look),
         *_assumed(design, look),
-        *_cautions(design, look),
+        *caution_lines(look, design.cautions),
     ]
 
 
@@ -34,7 +34,7 @@ def _title(design: Design, look: Look) -> list[Text]:
     job, settings = design.job, design.settings
     words = look.text(
         f"{show(job.carrier, 'Hz', 5)} class-{design.operating_class} stage: {exact_text(job.power, 'W')} into "
-        f"{show_complex(settings.load_impedance)} from {exact_text(job.supply, 'V')}, {settings.family}, "
+        f"{show_complex(settings.load_impedance)} from {exact_text(job.supply, 'V')}, {FAMILY[settings.family]}, "
         f"{job.conduction_angle:g}° conduction"
     )
     return note(look, words, style="bold", indent=0)
@@ -46,9 +46,12 @@ def _circuit(design: Design, look: Look) -> list[Text]:
     lines += circuit(
         look, design.tank.parts, start=electrode, end=f"load {show_complex(design.settings.load_impedance)}"
     )
+    point = design.point
+    loss = f" and loses {show(point.choke_loss, 'W')} in its dc resistance" if point.choke_loss > 0 else ""
     return lines + note(
         look,
-        f"Stresses are the carrier's. Cblock also stands off the supply's {show(design.job.supply, 'V')}.",
+        f"Stresses are the carrier's, by the book. Cblock also stands off the supply's {show(design.job.supply, 'V')}; "
+        f"Lchoke also carries {show(point.dc_current, 'A')} dc{loss}.",
         style="dim",
     )
 
@@ -65,28 +68,16 @@ def _point(design: Design, look: Look) -> list[Text]:
     ]
     if drive.bias is not None and drive.amplitude is not None:
         items += [(f"{control} bias", _volts(drive.bias)), (f"{control} drive, peak", show(drive.amplitude, "V"))]
-    if drive.unbiased_amplitude is not None:
+    if drive.unbiased_amplitude is not None and design.job.transfer_factor is None:
         items.append((f"{control} drive without bias", f"{show(drive.unbiased_amplitude, 'V')} peak"))
     items.append(("drive power", show(drive.power, "W") if drive.power is not None else "not known"))
+    if drive.power is not None and settings.family == "fet":
+        items[-1] = ("drive power, gate loss", items[-1][1])
     lines = heading(look, f"Operating point, designed to the {design.designed_to} power") + _compared(design, look)
     lines += pairs(look, items)
-    shares = "  ".join(f"{_ORDER_NAMES[n]}{NO_BREAK}{design.coefficients[n]:.4f}" for n in range(4))
+    shares = "  ".join(f"{_ORDER_NAMES[n]}{NO_BREAK}{design.coefficients[n] + 0.0:z.4f}" for n in range(4))
     lines += note(look, f"Current pulse over its peak: {shares}".replace("-", "−"))
-    for rating in design.ratings:
-        unit = _UNITS_OF[rating.name]
-        name = rating.name.replace("_", " ").replace("max", "rating: greatest")
-        if rating.exceeded:
-            lines += note(
-                look,
-                f"EXCEEDED  {name} {show(rating.limit, unit)}, the stage asks {show(rating.value, unit)}: "
-                f"{100 * (rating.value / rating.limit - 1):.3g} % too much",
-                style="bold red",
-            )
-        else:
-            lines += note(
-                look, f"within    {name} {show(rating.limit, unit)}, the stage asks {show(rating.value, unit)}"
-            )
-    return lines
+    return lines + rating_lines(look, design.ratings)
 
 
 def _compared(design: Design, look: Look) -> list[Text]:
@@ -147,19 +138,20 @@ def tank_lines(tank: Tank, look: Look) -> list[Text]:
         ("input-side Q", "none" if tank.input_q is None else f"{tank.input_q:.3g}"),
         ("bandwidth, −3 dB", "no −3 dB points" if tank.bandwidth is None else show(tank.bandwidth, "Hz")),
         ("tank efficiency", f"{100 * tank.efficiency:.1f} %"),
-        ("trough dip", f"{tank.trough_dip:.3f}" if tank.trough_dip is not None else "none"),
     ]
+    if tank.trough_dip is not None:
+        items.append(("trough dip, of the swing", f"{tank.trough_dip:.3f}"))
     seen = "  ".join(f"{n}:{NO_BREAK}{ratio:.2g}" for n, ratio in tank.terminations[:4])
+    meaning = (
+        "Loaded Q counts the energy in tank and output capacitance; input-side Q is the load resistance over the "
+        "reactance across the device."
+    )
+    if tank.trough_dip is not None:
+        meaning += " The device is a current generator; no source resistance stands in parallel."
     return (
         pairs(look, items)
         + note(look, f"Harmonic impedance over the load resistance, by order: {seen}")
-        + note(
-            look,
-            "Loaded Q counts the energy in tank and output capacitance; input-side Q is the load resistance "
-            "over the reactance across the device. The device is a current generator; no source resistance "
-            "stands in parallel.",
-            style="dim",
-        )
+        + note(look, meaning, style="dim")
     )
 
 
@@ -175,7 +167,8 @@ def _harmonics(design: Design, look: Look) -> list[Text]:
     rows += [_harmonic_row(h, look, design, wide=wide, judged=judged, room=room) for h in design.harmonics]
     lines = heading(look, "Harmonics at the load, dBc") + columns(look, rows, gap=1)
     worse = "the worse of textbook and settled" if design.settled is not None else "from the textbook pulse"
-    lines += note(look, f"textbook and settled: in the given load; line: in a resistive {line}, {worse}.", style="dim")
+    words = f"textbook and settled: in the given load; line: in a resistive {line}, {worse}."
+    lines += note(look, words + (" device and in load: textbook." if wide else ""), style="dim")
     if any(h.strays_decide for h in design.harmonics):
         lines += note(
             look, "* strays decide: 5 nH of lead in each shunt capacitor moves it by more than 3 dB", style="dim"
@@ -199,7 +192,7 @@ def _harmonic_row(h: Harmonic, look: Look, design: Design, *, wide: bool, judged
         style = "" if h.margin is None else "green" if h.margin >= 0 else "bold red"
         cells += [
             Cell(_level(h.limit), right=True),
-            Cell("none" if h.margin is None else _signed(h.margin), style, right=True),
+            Cell("none" if h.margin is None else signed(h.margin), style, right=True),
         ]
     if h.level is None:
         return [*cells, Cell("none in the ideal pulse", "dim")]
@@ -208,11 +201,6 @@ def _harmonic_row(h: Harmonic, look: Look, design: Design, *, wide: bool, judged
 
 def _level(decibels: float | None) -> str:
     return "none" if decibels is None else f"{decibels:.1f}".replace("-", "−")
-
-
-def _signed(decibels: float) -> str:
-    places = 1 if abs(decibels) >= 0.095 else 3
-    return f"{decibels:+.{places}f}".replace("-", "−")
 
 
 def _bar(level: float, limit: float | None, look: Look, room: int) -> str:
@@ -229,32 +217,32 @@ def _bar(level: float, limit: float | None, look: Look, room: int) -> str:
 
 
 def _verdict(design: Design, look: Look) -> list[Text]:
-    limit = design.settings.limit
+    limit, worst = design.settings.limit, design.worst
     if limit is None:
         return note(look, "No limit rule was given; --limit names one.", style="dim")
-    worst = design.worst
-    where = f"limit {limit.name} ({limit.source}; {limit.conditions})"
-    if worst is None or worst.margin is None:
-        return note(look, f"{where}: gives no figure here; reduce spurious emission as far as practicable.")
-    line = show(design.settings.line.at_carrier.real, "ohm")
-    if worst.margin < 0:
-        more = _signed(-worst.margin).lstrip("+")
-        words, style = f"MISSES: needs {more} dB more at order {worst.order}", "bold red"
-    else:
-        words, style = f"MEETS: {worst.margin:.1f} dB to spare, least at order {worst.order}", "bold green"
-    return note(look, f"{words}, {where}.", style=style) + note(
-        look, f"Judged in a resistive line of {line}; a measurement and the local rule decide.", style="dim"
+    return verdict_lines(
+        look,
+        limit,
+        worst=None if worst is None or worst.margin is None else (worst.order, worst.margin),
+        highest=design.settings.highest_order,
+        line=design.settings.line.at_carrier.real,
+        carrier=design.job.carrier,
+        power=design.job.power,
     )
 
 
 def _assumed(design: Design, look: Look) -> list[Text]:
     if not design.assumed:
         return []
-    words = "; ".join(f"{key} {_assumed_value(key, value)}" for key, value in design.assumed.items())
-    return heading(look, "Assumed, as common practice, where nothing was given") + note(look, words)
+    words = "; ".join(
+        f"{key} {_assumed_value(key, value, design.settings.exponent)}" for key, value in design.assumed.items()
+    )
+    return heading(look, "Assumed where nothing was given: common practice, and stand-ins for the device") + note(
+        look, words
+    )
 
 
-def _assumed_value(key: str, value: object) -> str:
+def _assumed_value(key: str, value: object, exponent: float) -> str:
     if isinstance(value, complex):
         return show_complex(value)
     if isinstance(value, str):
@@ -268,14 +256,14 @@ def _assumed_value(key: str, value: object) -> str:
         "supply.choke_resistance": "ohm",
         "limit.load": "ohm",
         "device.output_capacitance": "F",
+        "device.threshold_softness": "V",
+        "device.knee_voltage": "V",
+        "device.knee_resistance": "ohm",
+        "device.reverse_conduction": "S",
+        "device.transfer_factor": "A/V",
     }.get(key)
+    if unit == "A/V":
+        return f"{value:.4g} A/V" + ("" if exponent == 1 else f"^{exponent:g}")
     if unit:
         return show(value, unit) if value else f"0 {unit}".replace("ohm", "Ω")
-    return f"{value:.4g}" + (" (stand-in for the stage file)" if key == "device.transfer_factor" else "")
-
-
-def _cautions(design: Design, look: Look) -> list[Text]:
-    rows: list[Text] = heading(look, "Cautions")
-    for caution in design.cautions:
-        rows += note(look, f"! {caution.topic}: {caution.text}", hanging=2)
-    return rows
+    return f"{value:.4g}"

@@ -2,13 +2,17 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 from rich.text import Text
 
-from rfstage.cautions import about_settled
+from rfstage.designs.judging import LINE, Verdict, ratings_of, safety_cautions, settled_cautions, worst
 from rfstage.device import PARALLEL, PUSH_PULL
+from rfstage.limits import limit_named
 from rfstage.matching.networks import PartStress
 from rfstage.quantity import show, show_complex
-from rfstage.report.circuit import ELECTRODE, circuit
+from rfstage.report.circuit import ELECTRODE, FAMILY, circuit
+from rfstage.report.judged import caution_lines, rating_lines, signed, verdict_lines
 from rfstage.report.page import Cell, Look, columns, heading, note, pairs
 from rfstage.steady import SteadyState
 from rfstage.steady.pair import shared_node
@@ -23,35 +27,24 @@ LEFT_OUT = (
 )
 
 
-def settled_page(state: SteadyState, look: Look) -> list[Text]:
-    """Return the page of an as-built stage."""
+def settled_page(state: SteadyState, look: Look, verdicts: Sequence[Verdict]) -> list[Text]:
+    """Return the page of an as-built stage, with the verdicts on its limit."""
     stage = state.stage
     electrode = ELECTRODE[stage.device.family]
     pair = stage.device.pair
     lines = note(
         look,
         f"{show(stage.carrier, 'Hz', 5)} stage in steady state: {f'{pair} pair, ' if pair else ''}"
-        f"{stage.device.family}, "
+        f"{FAMILY[stage.device.family]}, "
         f"{show(stage.supply.voltage, 'V')}",
         style="bold",
         indent=0,
     )
-    change = state.change_from_half_the_orders
-    first = about_settled(
-        family=stage.device.family,
-        supply=stage.supply.voltage,
-        peak_voltage=state.peak_voltage,
-        rating=stage.device.max_voltage,
-        minimum_voltage=state.minimum_voltage,
-        orders_settled=change is None or change.settled,
-        asked_power=stage.asked.output_power,
-        output_power=state.output_power,
-    )
-    for caution in first:
+    for caution in settled_cautions(state):
         lines += note(look, f"! {caution.topic}: {caution.text}", style="bold red", hanging=2)
     if not state.has_output:
         lines += note(look, "No output: the drive stays below the threshold.", style="bold red")
-    lines += heading(look, "Meters") + pairs(look, meters(state))
+    lines += heading(look, "Meters") + pairs(look, meters(state)) + rating_lines(look, ratings_of(state))
     if state.devices:
         lines += heading(look, "Devices") + _devices(state, look)
     feed = shared_node(stage).feed if pair == PARALLEL else stage.feed
@@ -65,8 +58,11 @@ def settled_page(state: SteadyState, look: Look) -> list[Text]:
     lines += circuit(look, parts, start=electrode, end=f"load {show_complex(load)}")
     if pair == PUSH_PULL:
         lines += note(look, BETWEEN, style="dim")
-    lines += heading(look, "Harmonics in the load") + _harmonics(state, look)
-    return lines + _trust(state, look)
+    lines += heading(look, "Harmonics") + _harmonics(state, look, verdicts) + _limit(state, look, verdicts)
+    lines += _trust(state, look)
+    highest = max((b.peak_voltage for b in state.branches), default=0.0)
+    safe = safety_cautions(stage, dc_current=state.dc_current, highest_rf=highest, power=state.output_power)
+    return lines + caution_lines(look, safe)
 
 
 def meters(state: SteadyState) -> list[tuple[str, str]]:
@@ -104,27 +100,53 @@ def _devices(state: SteadyState, look: Look) -> list[Text]:
     return columns(look, rows)
 
 
-def _harmonics(state: SteadyState, look: Look) -> list[Text]:
-    rows = [[Cell(t, "dim", right=True) for t in ("n", "frequency", "in load", "dBc")]]
+def _harmonics(state: SteadyState, look: Look, verdicts: Sequence[Verdict]) -> list[Text]:
+    by_order = {v.order: v for v in verdicts}
+    titles = ("n", "frequency", "in load", "dBc", *(("line", "limit", "margin") if verdicts else ()))
+    rows = [[Cell(t, "dim", right=True) for t in titles]]
     for h in state.harmonics[:9]:
-        level = "none" if h.level is None else f"{h.level:.1f}".replace("-", "−")
-        rows.append(
-            [
-                Cell(str(h.order), right=True),
-                Cell(show(h.frequency, "Hz", 4), right=True),
-                Cell(_or_none(h.load_power, "W"), right=True),
-                Cell(level, right=True),
-            ]
-        )
+        row = [str(h.order), show(h.frequency, "Hz", 4), _or_none(h.load_power, "W"), _level(h.level)]
+        if verdicts:
+            v = by_order[h.order]
+            row += [_level(v.line_level), _level(v.limit), "none" if v.margin is None else signed(v.margin)]
+        rows.append([Cell(words, right=True) for words in row])
     return columns(look, rows)
 
 
+def _level(decibels: float | None) -> str:
+    return "none" if decibels is None else f"{decibels:.1f}".replace("-", "−")
+
+
+def _limit(state: SteadyState, look: Look, verdicts: Sequence[Verdict]) -> list[Text]:
+    stage, least = state.stage, worst(verdicts)
+    if stage.limit_rule is None or not verdicts:
+        return []
+    return verdict_lines(
+        look,
+        limit_named(stage.limit_rule),
+        worst=None if least is None or least.margin is None else (least.order, least.margin),
+        highest=verdicts[-1].order,
+        line=stage.limit_load or LINE,
+        carrier=stage.carrier,
+        power=state.output_power,
+    )
+
+
 def _trust(state: SteadyState, look: Look) -> list[Text]:
-    words = f"{state.orders_solved} orders; power balance closes to {abs(state.balance_error):.0e}"
+    words = f"{state.orders_solved} harmonic orders; the power balance closes to {_rough(abs(state.balance_error))}"
     change = state.change_from_half_the_orders
     if change is not None:
         words += (
-            f"; against half the orders dc current moved {100 * change.dc_current:.2g} %, output "
-            f"{change.output_power_db:.2g} dB, harmonics {change.harmonics_db:.2g} dB"
+            f". The last doubling of the orders moved the dc current by {_percent(change.dc_current)}, the output "
+            f"by {_percent(change.output_power_db / 4.34)}, the peak voltage by {_percent(change.peak_voltage)}, the "
+            f"harmonics by {max(change.harmonics_db, 0.001):.2g} dB or less"
         )
     return heading(look, "How far to trust it") + note(look, words + ".") + note(look, LEFT_OUT, style="dim")
+
+
+def _rough(share: float) -> str:
+    return "a part in a billion" if share < 1e-9 else f"{100 * share:.1g} %"
+
+
+def _percent(share: float) -> str:
+    return "under 0.01 %" if share < 1e-4 else f"{100 * share:.2g} %"

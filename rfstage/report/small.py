@@ -7,7 +7,7 @@ from collections.abc import Sequence
 from rich.text import Text
 
 from rfstage.matching.networks import Tank
-from rfstage.quantity import show_complex
+from rfstage.quantity import show, show_complex
 from rfstage.report.circuit import circuit
 from rfstage.report.design import tank_lines
 from rfstage.report.page import NO_BREAK, Cell, Look, columns, heading, note
@@ -21,7 +21,7 @@ def pulse_page(
     lines = heading(look, f"Current pulse, {angle:g}° conduction, class {operating_class}, exponent {exponent:g}")
     rows = [[Cell("order", "dim", right=True), Cell("share of the peak", "dim", right=True)]]
     rows += [
-        [Cell(str(n), right=True), Cell(f"{value:+.6f}".replace("-", "−"), right=True)] for n, value in enumerate(a)
+        [Cell(str(n), right=True), Cell(f"{value:+z.6f}".replace("-", "−"), right=True)] for n, value in enumerate(a)
     ]
     lines += columns(look, rows)
     return lines + note(
@@ -31,11 +31,14 @@ def pulse_page(
     )
 
 
-def match_page(look: Look, *, tank: Tank, load: complex, transfer: Sequence[tuple[int, float]]) -> list[Text]:
-    """Return one network, with what it does to harmonics from a current generator."""
-    lines = heading(look, f"Network {tank.network}, {show_complex(tank.impedance)} at the device")
+def match_page(
+    look: Look, *, tank: Tank, load: complex, carrier: float, transfer: Sequence[tuple[int, float]]
+) -> list[Text]:
+    """Return one network at its carrier [Hz], with what it does to harmonics from a current generator."""
+    at = f"{show_complex(tank.impedance)} at the device, {show(carrier, 'Hz', 5)}"
+    lines = heading(look, f"Network {tank.network}, {at}")
     lines += circuit(look, tank.parts, start="device", end=f"load {show_complex(load)}")
     lines += heading(look, "Tank") + tank_lines(tank, look)
-    words = "  ".join(f"{n}:{NO_BREAK}{level:.1f}{NO_BREAK}dB".replace("-", "−") for n, level in transfer)
-    lines += heading(look, "Harmonic transfer: load current against the carrier's, for equal device currents")
-    return lines + note(look, words)
+    words = "  ".join(f"{n}:{NO_BREAK}{level:.1f}".replace("-", "−") for n, level in transfer)
+    lines += heading(look, "Harmonic transfer, dB against the carrier")
+    return lines + note(look, words) + note(look, "Load current for equal device currents.", style="dim")

@@ -4,9 +4,10 @@ from __future__ import annotations
 
 from rich.text import Text
 
+from rfstage.designs.judging import LINE
 from rfstage.quantity import show
 from rfstage.report.page import NO_BREAK, Cell, Look, columns, heading, note, pairs
-from rfstage.sweep import Extreme, Sweep, fitted_value, modulation
+from rfstage.sweep import PHASES, Sweep, fitted_value, modulation
 
 ROWS = 24  # of the table; a longer sweep is thinned for the page, never for JSON or CSV
 BAR = 16
@@ -19,46 +20,71 @@ def sweep_page(swept: Sweep, look: Look) -> list[Text]:
     lines = heading(look, f"Steady state along {title}")
     lines += _circles(swept, look) if swept.circles else _table(swept, look)
     lines += _turning(swept, look) + _modulation(swept, look)
-    if swept.path == "drive.amplitude" and swept.stage.drive.bias < swept.stage.device.threshold:
+    if swept.path == "drive.amplitude" and _conducts_for_less_than_half(swept):
         lines += note(
             look,
-            "The bias is below the threshold (class C): output does not follow the drive in proportion, so "
-            "such a stage does not suit signals whose amplitude carries the message.",
+            "Class C: the output does not follow the drive in proportion, so such a stage does not suit signals whose "
+            "amplitude carries the message.",
         )
     return lines
 
 
-def _shown(count: int) -> list[int]:
-    if count <= ROWS:
-        return list(range(count))
-    return sorted({round(k * (count - 1) / (ROWS - 1)) for k in range(ROWS)})
+def _conducts_for_less_than_half(swept: Sweep) -> bool:
+    angles = [p.conduction_angle_deg for p in swept.points if p.has_output]
+    return bool(angles) and max(angles) < 179.5
+
+
+def _shown(swept: Sweep) -> tuple[list[int], int]:
+    """Return which points the page shows, evenly thinned, and the step."""
+    step = -(-len(swept.values) // ROWS)
+    return list(range(0, len(swept.values), step)), step
 
 
 def _table(swept: Sweep, look: Look) -> list[Text]:
-    titles = [swept.path, "dc", "output", "eff.", "heat", "peak", "angle", "2nd", "3rd", "output"]
+    barred = look.width >= 96
+    titles = [
+        swept.path,
+        "dc",
+        "output",
+        "eff.",
+        "heat",
+        "peak",
+        "angle",
+        "2nd",
+        "3rd",
+        *(["of the most"] if barred else []),
+    ]
     rows = [[Cell(t, "dim", right=k < 9) for k, t in enumerate(titles)]]
     most = max(p.output_power for p in swept.points) or 1.0
     full, empty = ("#", ".") if look.ascii else ("█", "·")
-    for k in _shown(len(swept.values)):
+    shown, step = _shown(swept)
+    device = swept.stage.device
+    for k in shown:
         p = swept.points[k]
         length = round(BAR * p.output_power / most)
         levels = [next((h.level for h in p.harmonics if h.order == n), None) for n in (2, 3)]
-        rows.append(
-            [
-                Cell(show(swept.values[k], swept.unit, 4), "bold", right=True),
-                Cell(_figure(p.dc_current, "A"), right=True),
-                Cell(_figure(p.output_power, "W"), right=True),
-                Cell("none" if p.efficiency is None else f"{100 * p.efficiency:.0f} %", right=True),
-                Cell(_figure(p.dissipation, "W"), right=True),
-                Cell(show(p.peak_voltage, "V"), right=True),
-                Cell(f"{p.conduction_angle_deg:.0f}°", right=True),
-                *(Cell("none" if level is None else f"{level:.0f}".replace("-", "−"), right=True) for level in levels),
-                Cell(full * length + empty * (BAR - length) if look.width >= 96 else ""),
-            ]
-        )
-    return columns(look, rows, gap=1) + note(
-        look, "2nd and 3rd are dBc in the load; heat is the device's.", style="dim"
-    )
+        row = [
+            Cell(show(swept.values[k], swept.unit, 4), "bold", right=True),
+            Cell(_figure(p.dc_current, "A"), right=True),
+            Cell(_figure(p.output_power, "W"), right=True),
+            Cell("none" if p.efficiency is None else f"{100 * p.efficiency:.0f} %", right=True),
+            _held(_figure(p.dissipation, "W"), p.dissipation, device.max_dissipation),
+            _held(show(p.peak_voltage, "V"), p.peak_voltage, device.max_voltage),
+            Cell(f"{p.conduction_angle_deg:.0f}°", right=True),
+            *(Cell("none" if level is None else f"{level:.0f}".replace("-", "−"), right=True) for level in levels),
+        ]
+        rows.append([*row, Cell(full * length + empty * (BAR - length))] if barred else row)
+    lines = columns(look, rows, gap=1)
+    words = "2nd and 3rd are dBc in the load; heat is the device's; ! is beyond the device's rating."
+    if step > 1:
+        words += f" One point in {step} is shown; --csv and --json have all {len(swept.values)}."
+    return lines + note(look, words, style="dim")
+
+
+def _held(words: str, value: float, rating: float | None) -> Cell:
+    """Return a figure, marked where it is beyond its rating."""
+    beyond = rating is not None and value > rating
+    return Cell(words + ("!" if beyond else ""), "bold red" if beyond else "", right=True)
 
 
 def _figure(value: float, unit: str) -> str:
@@ -76,60 +102,64 @@ def _circles(swept: Sweep, look: Look) -> list[Text]:
                     (
                         f"{value:.3g}",
                         _figure(circle.dissipation, "W"),
-                        f"{circle.dissipation_phase:.0f}°",
+                        "any" if value == 1 else f"{circle.dissipation_phase:.0f}°",
                         show(circle.peak_voltage, "V"),
-                        f"{circle.peak_voltage_phase:.0f}°",
+                        "any" if value == 1 else f"{circle.peak_voltage_phase:.0f}°",
                         _figure(circle.least_output, "W"),
                         _figure(circle.greatest_output, "W"),
                     )
                 )
             ]
         )
-    line = show(swept.stage.limit_load or 50.0, "ohm")
-    return columns(look, rows) + note(
+    line = show(swept.stage.limit_load or LINE, "ohm")
+    lines = columns(look, rows) + note(
         look,
-        f"Ratios against {line}; the angles are those of the reflection where the worst is "
-        "reached. The tank is not retuned.",
+        f"Ratios against {line}, in place of the stage's own load; the angles are those of the reflection where the "
+        f"worst is reached, in steps of {360 / PHASES:g}°. The tank is not retuned.",
         style="dim",
     )
+    device = swept.stage.device
+    if device.max_dissipation is not None and max(c.dissipation for c in swept.circles) > device.max_dissipation:
+        lines += note(look, f"! heat goes beyond the rating of {show(device.max_dissipation, 'W')}", style="bold red")
+    if device.max_voltage is not None and max(c.peak_voltage for c in swept.circles) > device.max_voltage:
+        lines += note(look, f"! peak goes beyond the rating of {show(device.max_voltage, 'V')}", style="bold red")
+    return lines
 
 
 def _turning(swept: Sweep, look: Look) -> list[Text]:
-    named: list[tuple[str, Extreme, str]] = [
-        (name, extreme, unit)
-        for name, extreme, unit in (
-            ("dip of the dc current", swept.dip, "A"),
-            ("best efficiency", swept.efficiency_peak, ""),
-            ("greatest output", swept.output_peak, "W"),
-        )
-        if extreme is not None
-    ]
-    if not named:
-        if swept.circles:
-            return []
-        return note(look, "Dip, best efficiency and greatest output all lie at an edge of this sweep or beyond it.")
-    now = fitted_value(swept.stage, swept.path)
+    alive = [k for k, p in enumerate(swept.points) if p.has_output]
+    if swept.circles or not alive:
+        return [] if swept.circles else note(look, "No point of this sweep has any output.")
     rows = []
-    for name, extreme, unit in named:
-        figure = show(extreme.figure, unit) if unit else f"{100 * extreme.figure:.1f} %"
-        rows.append(
-            [
-                Cell(name),
-                Cell(show(extreme.value, swept.unit, 4), "bold", right=True),
-                Cell(figure, right=True),
-                Cell(_way(now, extreme.value, swept.path)),
-            ]
-        )
+    for name, extreme, unit, figures in (
+        ("dip of the dc current", swept.dip, "A", [-p.dc_current for p in swept.points]),
+        ("best efficiency", swept.efficiency_peak, "", [p.efficiency or 0.0 for p in swept.points]),
+        ("greatest output", swept.output_peak, "W", [p.output_power for p in swept.points]),
+    ):
+        if extreme is None:
+            k = max(alive, key=lambda k: figures[k])
+            place, figure, way = show(swept.values[k], swept.unit, 4), abs(figures[k]), "at the edge, or beyond it"
+        else:
+            place, figure = show(extreme.value, swept.unit, 4), extreme.figure
+            way = _way(swept, extreme.value)
+        shown = show(figure, unit) if unit else f"{100 * figure:.1f} %"
+        rows.append([Cell(name), Cell(place, "bold", right=True), Cell(shown, right=True), Cell(way)])
     return heading(look, "Turning points, and the way there from what is set now") + columns(look, rows)
 
 
-def _way(now: float | None, there: float, path: str) -> str:
+def _way(swept: Sweep, there: float) -> str:
+    """Say which way to turn and how far, and whether the trimmer gets there."""
+    now = fitted_value(swept.stage, swept.path)
     if not now:
         return ""
     percent = 100 * (there / now - 1)
     if abs(percent) < 0.05:
         return "where it is set now"
-    return f"{'raise' if percent > 0 else 'lower'} {path} by {abs(percent):.2g} %"
+    words = f"{'raise' if percent > 0 else 'lower'} {swept.path} by {abs(percent):.2g} %"
+    data = swept.stage.part_data.get(swept.path)
+    if data is None or data.trim is None or data.trim[0] <= there <= data.trim[1]:
+        return words
+    return f"{words}, beyond its trimmer"
 
 
 def _modulation(swept: Sweep, look: Look) -> list[Text]:
@@ -150,6 +180,4 @@ def _modulation(swept: Sweep, look: Look) -> list[Text]:
     lines += note(look, f"Peaks across the parts at the crest: {peaks}.")
     if found.nonlinearity >= STRAIGHT:
         lines += note(look, "The output does not follow the supply: drive harder, or modulate the drive as well.")
-    return lines + note(
-        look, "Class C suits this, and does not suit signals that come in through the drive.", style="dim"
-    )
+    return lines

@@ -7,6 +7,7 @@
     pair         the same for pairs of devices: the impedance of each mode, a balanced pair as one device
     pairaccount  powers, losses and stresses of a pair
     report       currents, powers, stresses and harmonics from a solution
+    enough       whether the orders suffice
     solve        Newton, then a softened knee, then drive steps
     balance      the equations, their exact Jacobian, damped Newton, a stage axis in front of everything
     circuit      stages as arrays: the ladder's impedance at all orders, the device under drive

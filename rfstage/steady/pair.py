@@ -30,10 +30,11 @@ from rfstage.ladder import Branch
 from rfstage.load import Load
 from rfstage.stage import Stage
 from rfstage.steady.circuit import Circuit, sources
-from rfstage.steady.modes import EVEN, ODD
+from rfstage.steady.enough import Figures, voltage_beyond
+from rfstage.steady.modes import EVEN, ODD, modes
 from rfstage.steady.network import Complex, networks
 from rfstage.steady.pairaccount import PairNetwork, drawn_by_load, pair_account
-from rfstage.steady.report import Cycle, Figures, states
+from rfstage.steady.report import Cycle, states
 from rfstage.steady.solve import Solution
 from rfstage.steady.state import OrdersChange, SteadyState
 
@@ -159,7 +160,7 @@ class Pairs:
         """Return what is to be solved: one device for balanced pairs, else both."""
         if not self.balanced:
             return self.coupled(orders)
-        seen = self._impedance(orders)[:, self._carried(orders), np.arange(orders + 1)]
+        seen = self._seen(orders)
         law = Law.of([both(stage.device)[0] for stage in self.stages])
         return Circuit.assembled(law, *sources(self.stages), seen, np.abs(seen[:, 1]))
 
@@ -186,7 +187,13 @@ class Pairs:
     def figures(self, cycle: Cycle) -> Figures:
         """Return those of the first stage."""
         ladder = self.ladders[0][0]
-        return Figures.of(cycle.device[0, :, 0].sum(), drawn_by_load(ladder, cycle)[0], ladder.loaded)
+        return Figures.of(cycle.device[0, :, 0].sum(), drawn_by_load(ladder, cycle)[0], ladder.loaded, cycle.volts[0])
+
+    def voltage_beyond(self, cycle: Cycle) -> float:
+        """Return the voltage [V] that the orders walked but not solved may still make in the first pair."""
+        seen = self._seen(self.orders) if self.balanced else self._impedance(self.orders)
+        currents = cycle.device[:, 0] if self.balanced else modes(cycle.device)
+        return voltage_beyond(self.stages[0], seen[0, ..., 1:], currents[0, ..., 1:], cycle.volts[0])
 
     def states(self, cycle: Cycle, solution: Solution, change: OrdersChange | None) -> list[SteadyState]:
         """Return the steady states, in the stages' order."""
@@ -205,6 +212,11 @@ class Pairs:
         """Return the mode that each order has in a balanced pair."""
         order = np.arange(orders + 1)
         return np.where(order % 2 == 1, ODD, EVEN) if self._push_pull else np.full_like(order, EVEN)
+
+    def _seen(self, orders: int) -> Complex:
+        """Return what each device of a balanced pair sees [ohm], shape (S, N + 1)."""
+        seen: Complex = self._impedance(orders)[:, self._carried(orders), np.arange(orders + 1)]
+        return seen
 
     def _spread(self, deviation: Complex) -> Complex:
         """Return the modes (S, 2, N + 1) of balanced pairs from the first device's voltages (S, N + 1)."""

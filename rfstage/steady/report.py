@@ -28,7 +28,6 @@ from rfstage.steady.state import BranchStress, DeviceShare, HarmonicLevel, Order
 LISTED = 10  # harmonics listed at least; beyond, up to half of the orders solved
 ABSENT = 1e-12  # of the fundamental: the accuracy of the balance; a weaker harmonic is not there
 NO_CURRENT = 1e-12  # of supply over load resistance: the far foot of a threshold, where nothing flows
-COUNTED = 1e-8  # of the carrier's power: harmonics below −80 dBc do not decide the orders
 
 
 class Cycle(NamedTuple):
@@ -79,31 +78,6 @@ class Cycle(NamedTuple):
     def take(self, rows: Any) -> Cycle:
         """Return the chosen rows."""
         return Cycle(self.volts[rows], self.amperes[rows], self.node[rows], self.device[rows], self.charging[rows])
-
-
-class Figures(NamedTuple):
-    """What decides whether the orders suffice: dc current [A] and load powers of the first orders [W]."""
-
-    dc_current: float
-    load_powers: Array
-
-    @classmethod
-    def of(cls, dc_current: complex, drawn: Complex, ladder: Network) -> Figures:
-        """Return those of one stage, from dc current and the phasors drawn from its ladder [A], shape (N + 1,)."""
-        first = drawn[1 : LISTED + 1]
-        return cls(float(dc_current.real), ladder.gain[0, : first.size] * np.abs(first) ** 2)
-
-    def change_from(self, before: Figures) -> OrdersChange:
-        """Return what moved since ``before``."""
-        shared = min(self.load_powers.size, before.load_powers.size)
-        new, old = self.load_powers[:shared], before.load_powers[:shared]
-        if not (new[0] > 0 and old[0] > 0):
-            return OrdersChange(0.0, 0.0, 0.0)
-        counted = (new > COUNTED * new[0]) & (old > 0)
-        moved = np.abs(10 * np.log10(new[counted] / old[counted]))
-        return OrdersChange(
-            abs(1 - before.dc_current / self.dc_current), float(moved[0]), float(moved[1:].max(initial=0.0))
-        )
 
 
 class Account(NamedTuple):

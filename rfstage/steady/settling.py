@@ -9,11 +9,12 @@ import numpy as np
 from rfstage.errors import ConvergenceError, OutOfRangeError
 from rfstage.stage import Stage
 from rfstage.steady.circuit import Circuit, check
+from rfstage.steady.enough import LEAST_SAMPLES, Figures, samples_covered
 from rfstage.steady.network import Complex
-from rfstage.steady.report import Figures
+from rfstage.steady.report import LISTED, Cycle
 from rfstage.steady.single import Singles, System
-from rfstage.steady.solve import FAILED, solve
-from rfstage.steady.state import SteadyState
+from rfstage.steady.solve import FAILED, Solution, solve
+from rfstage.steady.state import ORDERS_VOLTAGE, OrdersChange, SteadyState
 
 FEWEST, MOST_CHOSEN, MOST = 10, 256, 1024  # orders: that may be asked, that the choice goes to, that may be asked
 FIRST_CHOSEN = 16
@@ -21,7 +22,9 @@ LEAST_COARSE = 24  # orders: the least that are worth solving only as a start fo
 BLOCK = 120_000  # numbers in the Jacobians of one block of stages: a megabyte, which a cache holds
 
 
-def settle(stage: Stage, *, orders: int | None = None, start: SteadyState | None = None) -> SteadyState:
+def settle(
+    stage: Stage, *, orders: int | None = None, start: SteadyState | None = None, listed: int = LISTED
+) -> SteadyState:
     """Return the steady state of a stage.
 
     Parameters
@@ -29,12 +32,16 @@ def settle(stage: Stage, *, orders: int | None = None, start: SteadyState | None
     stage : Stage
         An as-built stage.
     orders : int or None
-        Orders in the balance, 10 to 1024. None chooses: they double from 16 until dc current, output power and
-        the harmonics to the tenth above −80 dBc have settled, and stop at 256;
-        ``change_from_half_the_orders`` says whether they have.
+        Orders in the balance, 10 to 1024. None chooses: they double from 16 until dc current, output power, the
+        harmonics to the tenth above −80 dBc and the peak voltage have settled, no resonance of the ladder above
+        them is left that would be felt, and the current pulse has its samples. They stop at 256;
+        ``change_from_half_the_orders`` says whether the figures have settled.
     start : SteadyState or None
         A solution of a similar stage, as the first guess. It saves time and changes nothing else, since
         there is one solution only.
+    listed : int
+        Harmonics to list at least, 1 to 512. Above 10 they want twice as many orders; these are chosen
+        accordingly, beyond 256 if need be.
 
     Returns
     -------
@@ -45,7 +52,8 @@ def settle(stage: Stage, *, orders: int | None = None, start: SteadyState | None
     OutOfRangeError, ImpossibleError
         If the stage's values make no circuit, or its ladder conducts direct current.
     ConvergenceError
-        If the balance was not reached; no unfinished result is returned.
+        If the balance was not reached, or the current pulse is narrower than six samples of the cycle; no unfinished
+        result is returned.
 
     Notes
     -----
@@ -72,18 +80,21 @@ def settle(stage: Stage, *, orders: int | None = None, start: SteadyState | None
     (10.9, 0.79, 120)
     """
     check(stage)
+    if not 1 <= listed <= MOST // 2:
+        raise OutOfRangeError("listed", listed, f"from 1 to {MOST // 2}")
     if orders is None:
         levels = _doubled(FIRST_CHOSEN, MOST_CHOSEN)
-        system = _system([stage], levels[1])
+        while levels[-1] < 2 * listed:
+            levels.append(2 * levels[-1])
     else:
         _check_orders(orders)
+        if listed > max(LISTED, orders // 2):
+            raise OutOfRangeError("orders", orders, f"at least {2 * listed} where {listed} harmonics are to be listed")
         levels = [*_levels(orders // 2), orders]
-        system = _system([stage], orders)
+    system = _system([stage], levels[-1])
     before: Figures | None = None
     unknowns: Complex | None = None
     for level in levels:
-        if system.orders < level:
-            system = _system([stage], level)
         circuit = system.circuit(level)
         solution = solve(circuit, _start(system, circuit, unknowns, start))
         if FAILED in solution.methods:
@@ -95,10 +106,11 @@ def settle(stage: Stage, *, orders: int | None = None, start: SteadyState | None
         cycle = system.cycle(circuit, solution)
         figures = system.figures(cycle)
         change = None if before is None else figures.change_from(before)
-        if orders is None and change is not None and change.settled:
+        enough = orders is None and level >= 2 * listed and change is not None and change.settled
+        if enough and _nothing_hidden(system, circuit, cycle, solution):
             break
         before = figures
-    return system.states(cycle, solution, change)[0]
+    return _states(system, circuit, solution, [""], change)[0]
 
 
 def settle_many(stages: Sequence[Stage], *, orders: int, start: SteadyState | None = None) -> tuple[SteadyState, ...]:
@@ -174,7 +186,28 @@ def _settle_block(
     if FAILED in solution.methods:
         row = solution.methods.index(FAILED)
         raise _not_reached(f"the steady state of stage {places[row] + 1}", float(solution.merit[row]))
-    return system.states(system.cycle(circuit, solution), solution, None)
+    return _states(system, circuit, solution, [f" of stage {place + 1}" for place in places], None)
+
+
+def _nothing_hidden(system: System, circuit: Circuit, cycle: Cycle, solution: Solution) -> bool:
+    """Whether no resonance waits among the orders not solved, and the pulse does not lie between the samples."""
+    resolved = bool((samples_covered(circuit, solution) >= LEAST_SAMPLES).all())
+    return resolved and system.voltage_beyond(cycle) < ORDERS_VOLTAGE * float(circuit.supply.flat[0])
+
+
+def _states(
+    system: System, circuit: Circuit, solution: Solution, whose: Sequence[str], change: OrdersChange | None
+) -> list[SteadyState]:
+    """Return the steady states; a pulse of too few samples is refused, since its figures would mean nothing."""
+    states = system.states(system.cycle(circuit, solution), solution, change)
+    for row in np.flatnonzero(samples_covered(circuit, solution) < LEAST_SAMPLES):
+        if states[row].peak_current > 0:
+            raise ConvergenceError(
+                f"the current pulse{whose[row]} is too narrow: its conduction angle is "
+                f"{states[row].conduction_angle_deg:.3g}°, and {circuit.orders} orders resolve no less than "
+                f"{360 * LEAST_SAMPLES / circuit.samples:.3g}°"
+            )
+    return states
 
 
 def _system(stages: Sequence[Stage], orders: int) -> System:

@@ -12,8 +12,9 @@ from typing import NamedTuple, Protocol
 
 from rfstage.stage import Stage
 from rfstage.steady.circuit import Circuit
+from rfstage.steady.enough import Figures, voltage_beyond
 from rfstage.steady.network import Complex, Network, networks
-from rfstage.steady.report import Cycle, Figures, account, states
+from rfstage.steady.report import Cycle, account, states
 from rfstage.steady.solve import Solution
 from rfstage.steady.state import OrdersChange, SteadyState
 
@@ -36,6 +37,9 @@ class System(Protocol):
 
     def figures(self, cycle: Cycle) -> Figures:
         """Return those of the first stage."""
+
+    def voltage_beyond(self, cycle: Cycle) -> float:
+        """Return the voltage [V] that the orders walked but not solved may still make in the first stage."""
 
     def states(self, cycle: Cycle, solution: Solution, change: OrdersChange | None) -> list[SteadyState]:
         """Return the steady states, in the stages' order."""
@@ -71,7 +75,12 @@ class Singles(NamedTuple):
 
     def figures(self, cycle: Cycle) -> Figures:
         """Return those of the first stage."""
-        return Figures.of(cycle.device[0, 0], (cycle.device + cycle.charging)[0], self.ladders[0][0])
+        drawn = (cycle.device + cycle.charging)[0]
+        return Figures.of(cycle.device[0, 0], drawn, self.ladders[0][0], cycle.volts[0])
+
+    def voltage_beyond(self, cycle: Cycle) -> float:
+        """Return the voltage [V] that the orders walked but not solved may still make in the first stage."""
+        return voltage_beyond(self.stages[0], self.ladders[0][0].impedance[0], cycle.device[0, 1:], cycle.volts[0])
 
     def states(self, cycle: Cycle, solution: Solution, change: OrdersChange | None) -> list[SteadyState]:
         """Return the steady states, in the stages' order."""

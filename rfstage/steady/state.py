@@ -13,6 +13,7 @@ from rfstage.stage import Stage
 ORDERS_DC = 1e-3  # relative change of the dc current below which more orders would not be seen on a meter
 ORDERS_POWER = 0.01  # dB, of the output power
 ORDERS_HARMONICS = 0.1  # dB, of the harmonics that count
+ORDERS_VOLTAGE = 5e-3  # relative change of the peak voltage, and what unsolved orders may add, of the supply
 
 
 class HarmonicLevel(NamedTuple):
@@ -63,19 +64,23 @@ class Waveform(NamedTuple):
 class OrdersChange(NamedTuple):
     """What moved when the orders were last doubled.
 
-    ``dc_current`` relative [-], ``output_power_db`` [dB], and the largest move of a harmonic to the tenth above
-    −80 dBc, ``harmonics_db`` [dB].
+    ``dc_current`` relative [-], ``output_power_db`` [dB], the largest move of a harmonic to the tenth above
+    −80 dBc, ``harmonics_db`` [dB], and the electrode's ``peak_voltage`` relative [-].
     """
 
     dc_current: float
     output_power_db: float
     harmonics_db: float
+    peak_voltage: float
 
     @property
     def settled(self) -> bool:
-        """Whether more orders would change nothing that matters: 1e-3, 0.01 dB and 0.1 dB."""
+        """Whether more orders would change nothing that matters: 1e-3, 0.01 dB, 0.1 dB and 5e-3."""
         return (
-            self.dc_current < ORDERS_DC and self.output_power_db < ORDERS_POWER and self.harmonics_db < ORDERS_HARMONICS
+            self.dc_current < ORDERS_DC
+            and self.output_power_db < ORDERS_POWER
+            and self.harmonics_db < ORDERS_HARMONICS
+            and self.peak_voltage < ORDERS_VOLTAGE
         )
 
 
@@ -116,7 +121,7 @@ class SteadyState:
     conduction_angle_deg : float
         Part of the cycle in which the effective drive exceeds the threshold.
     harmonics : tuple of HarmonicLevel
-        From order 2, to the tenth at least.
+        From order 2 to half the orders solved, and to the tenth at least.
     waveform : Waveform
         One cycle.
     orders_solved : int
@@ -126,7 +131,7 @@ class SteadyState:
     residual : float
         Of the balance of harmonics, over the supply voltage [-].
     change_from_half_the_orders : OrdersChange or None
-        None where half the orders were not solved.
+        None where half the orders were not solved, or had no carrier yet.
     iterations, method : int, str
         What it took at the last order number.
     devices : tuple of DeviceShare
