@@ -279,6 +279,15 @@ JOB_FIELDS: tuple[Field, ...] = (
     ),
 )
 
+# what only one family of device has
+_BELONGS_TO = {
+    "amplification_factor": "tube",
+    "grid_current": "tube",
+    "gate_resistance": "fet",
+    "input_capacitance": "fet",
+    "power_gain": "bipolar",
+}
+
 
 def conflicts(values: dict[str, object]) -> list[str]:
     """Return one line for each pair of given values that can't stand together."""
@@ -291,12 +300,11 @@ def conflicts(values: dict[str, object]) -> list[str]:
         )
     if values.get("loaded_q") is not None and values.get("input_q") is not None:
         found.append("tank.input_q: got both a loaded Q and an input-side Q; give one of them")
-    family = values.get("family")
-    if values.get("amplification_factor") is not None and family != "tube":
-        found.append(
-            f"device.amplification_factor: got one for a device of family {family or 'bipolar'}; it belongs to a "
-            "triode (device.family tube)"
-        )
+    family = values.get("family") or "bipolar"
+    for field in JOB_FIELDS:
+        owner = _BELONGS_TO.get(field.name)
+        if owner is not None and owner != family and values.get(field.name) is not None:
+            found.append(f"{field.path}: is of no use for device.family {family}; it belongs to {owner}")
     if isinstance(values.get("limit"), str):
         try:
             limit_named(str(values["limit"]))

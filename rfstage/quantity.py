@@ -47,6 +47,10 @@ _UNITS: dict[str, tuple[str, tuple[str, ...], bool, str]] = {
     "": ("a plain number", (), False, "10"),
 }
 
+# read in capitals or not: no prefix and no other unit could be meant. F is left out (f is femto), S (s is a
+# second) and m (M is mega)
+_ANY_CASE = ("Hz", "V", "A", "W", "ohm", "H", "deg", "dB")
+
 _NUMBER = r"(?P<digits>\d+(?:\.\d*)?|\.\d+)(?:[eE](?P<exponent>[+-]?\d+))?"
 _TAIL = r"(?P<tail>[^\d\s+\-.,][^\d]*)?"
 _PLAIN = re.compile(rf"(?P<sign>[+-]?){_NUMBER}\s*{_TAIL}", re.ASCII)
@@ -63,21 +67,27 @@ def _wanted(unit: str) -> str:
     return f"wanted {what}, such as {example}"
 
 
+def _names(unit: str) -> tuple[str, ...]:
+    return (unit, *_UNITS[unit][1])
+
+
+def _without_unit(text: str, unit: str) -> str | None:
+    """Return what stands before the unit at the end of a text, or None if it does not end in the unit."""
+    for name in sorted(_names(unit), key=len, reverse=True):
+        end = text[-len(name) :] if name else ""
+        if name and (end == name or (unit in _ANY_CASE and name.isascii() and end.lower() == name.lower())):
+            return text[: -len(name)].rstrip()
+    return None
+
+
 def _tail_exponent(tail: str, unit: str) -> int | None:
     """Return the decimal exponent of prefix plus unit, or None if the tail is neither."""
-    names = (unit, *_UNITS[unit][1]) if unit else ("",)
-    for name in names:
-        if tail == name:
-            return 0
-    if _UNITS[unit][2]:
-        if tail in _PREFIXES:
-            return _PREFIXES[tail]
-        for name in names:
-            if name and tail.endswith(name):
-                prefix = tail[: -len(name)].rstrip()
-                if prefix in _PREFIXES:
-                    return _PREFIXES[prefix]
-    return None
+    before = _without_unit(tail, unit)
+    if before == "":
+        return 0
+    if not _UNITS[unit][2]:
+        return None
+    return _PREFIXES.get(tail, None if before is None else _PREFIXES.get(before))
 
 
 def _read_tail(tail: str | None, unit: str, text: str) -> int:
@@ -144,7 +154,7 @@ def parse_real(text: str, unit: str) -> float:
     if letter and _UNITS[unit][2] and (letter["letter"] != "R" or unit == "ohm"):
         prefix = 0 if letter["letter"] == "R" else _PREFIXES[letter["letter"]]
         tail = (letter["tail"] or "").strip()
-        if tail in ("", unit, *_UNITS[unit][1]):
+        if not tail or _without_unit(tail, unit) == "":
             return _glue(letter["sign"], f"{letter['whole'] or '0'}.{letter['part']}", prefix, text)
     if stripped.lstrip("+-").lower() in ("nan", "inf", "infinity"):
         raise QuantityError(f"read {text!r}, which is not a finite number; {_wanted(unit)}")
@@ -167,10 +177,8 @@ def parse_complex(text: str, unit: str = "ohm") -> complex:
     stripped = text.strip()
     if "j" not in stripped.lower():
         return complex(parse_real(text, unit))
-    for name in sorted((unit, *_UNITS[unit][1]), key=len, reverse=True):
-        if name and stripped.endswith(name):
-            stripped = stripped[: -len(name)].rstrip()
-            break
+    before = _without_unit(stripped, unit)
+    stripped = stripped if before is None else before
     split = _LAST_SIGN.search(stripped)
     real, imaginary = (stripped[: split.start()], stripped[split.start() :]) if split else ("", stripped)
     sign = "-" if imaginary.startswith("-") else ""

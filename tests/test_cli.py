@@ -2,14 +2,18 @@
 
 from __future__ import annotations
 
+import importlib
 import json
 import math
+import os
+import shutil
 import subprocess
 import sys
 
 import pytest
+from conftest import PROJECT
 
-from rfstage.cli import COMMANDS, main
+from rfstage.cli import COMMANDS, _in_ascii_units, main, overview
 from rfstage.jobfields import JOB_FIELDS
 
 GOOD = ("--carrier", "7.1MHz", "--power", "10W", "--angle", "120deg", "--supply", "13.8V")
@@ -215,7 +219,26 @@ def test_options_are_not_abbreviated(run):
 @pytest.mark.parametrize(
     ("words", "said"),
     [
-        (("design", "nothing.toml"), "can't be read"),
+        (("design", "nothing.toml"), "rfstage: nothing.toml: is not there"),
+        (("settle", "nothing.toml"), "rfstage: nothing.toml: is not there"),
+        (("design", ""), "an empty name is no file"),
+        (("design", *GOOD, "--save", ""), "--save: got an empty name"),
+        (("design", *GOOD, "--save", "."), ".: is a folder"),
+        (("design", *GOOD, "--load", "antenna.s2p"), "--load: antenna.s2p: a load file ends in .s1p and is a one-port"),
+        (("design", *GOOD, "--load", "."), "--load: .: a load file ends in .s1p and is a one-port"),
+        (("match", "50", "antenna.s2p", "--carrier", "7MHz"), "LOAD: antenna.s2p: a load file ends in .s1p"),
+        (("design", *GOOD, "--coil-q", "lossles"), "--coil-q: got 'lossles'; wanted 1 to 10 million, or lossless"),
+        (("design", *GOOD, "--limit", "us-amater"), "rfstage: --limit: got 'us-amater'"),
+        (("design", *GOOD, "--minimum-voltage", "20V"), "rfstage: --minimum-voltage: got 20 V"),
+        (("match", "50", "50", "--carrier", "7MHz", "--power", ""), "--power: read an empty text"),
+        (("design", *GOOD, "--carrier", "8MHz"), "--carrier is given twice"),
+        (("design", *GOOD, "--carrier=8MHz"), "--carrier is given twice"),
+        (("design", *GOOD, "--json=1"), "--json takes no value"),
+        (("design", *GOOD, "--save"), "--save: wants a value"),
+        (("sweep", "--of", "C1"), "sweep wants STAGE.toml, --from X, --to Y"),
+        (("match", "50"), "match wants LOAD"),
+        (("pulse", "120", "7"), "'7' is one word too many"),
+        (("pulse", "120", "--overwrite"), "'--overwrite' is no option"),
         (("design", *GOOD, "--load", "nothing.s1p"), "is not there"),
         (("design", *GOOD, "--minimum-voltage", "20V"), "below the supply of 13.8 V"),
         (("design", *GOOD, "--loaded-q", "1"), "must be above 2."),
@@ -224,8 +247,8 @@ def test_options_are_not_abbreviated(run):
         (("design", *GOOD, "--touchstone", "no/such/folder/x.s2p"), "is not there"),
         (("design", *GOOD, "--save", "same", "--touchstone", "same"), "same file name"),
         (("design", *GOOD, "--output-capacitance", "100nF", "--loaded-q", "10"), "device.output_capacitance"),
-        (("design", *GOOD, "--power", ""), "empty"),
-        (("design", *GOOD, "--power", "nan"), "not a finite number"),
+        (("design", *GOOD[:2], "--power", "", *GOOD[4:]), "empty"),
+        (("design", *GOOD[:2], "--power", "nan", *GOOD[4:]), "not a finite number"),
         (("design", *GOOD, "--coil-q", "0"), "1 to"),
         (("match", "50", "50"), "--carrier: missing"),
         (("pulse",), "ANGLE"),
@@ -238,7 +261,8 @@ def test_an_impossible_request_is_one_clear_line_and_writes_nothing(run, tmp_pat
     assert done.returncode == 2
     assert done.stdout == ""
     assert said.lower() in done.stderr.lower()
-    assert "Traceback" not in done.stderr
+    assert done.stderr.count("\n") == 1
+    assert done.stderr.startswith("rfstage: ")
     assert list(tmp_path.iterdir()) == []
 
 
@@ -322,13 +346,197 @@ def test_version_names_what_it_stands_on(capsys):
     ]
 
 
-def test_a_reader_that_goes_away_is_no_error():
-    done = subprocess.run(
-        f"{sys.executable} -m rfstage design {' '.join(GOOD)} | head -1",
-        shell=True,
-        capture_output=True,
-        text=True,
-        check=True,
-    )
+PLACES = {"PYTHONPATH": str(PROJECT), "PATH": os.environ["PATH"], "PYTHONIOENCODING": "utf-8"}
+RFSTAGE = f"{sys.executable} -W error -m rfstage"
+EVERY_COMMAND = (
+    f"design {' '.join(GOOD)}",
+    f"design {' '.join(GOOD)} --json",
+    "match 1000 50 --carrier 3.5MHz",
+    "settle examples/beacon-as-built.toml",
+    "sweep examples/beacon-as-built.toml --of C1 --from 8nF --to 9nF --points 2",
+    "pulse 120",
+    "--help",
+    "pulse --help",
+)
+
+
+def shell(line):
+    return subprocess.run(line, shell=True, capture_output=True, text=True, env=PLACES, cwd=PROJECT, check=False)
+
+
+@pytest.mark.parametrize("words", EVERY_COMMAND)
+def test_a_reader_that_goes_away_is_no_error(words):
+    reader = f"{sys.executable} -c 'import os; os.close(0)'"
+    done = shell(f"{{ {RFSTAGE} {words}; echo $? >&2; }} | {reader}")
+    assert done.stderr == "0\n"
+    assert done.stdout == ""
+
+
+def test_the_first_line_is_enough_for_a_reader():
+    done = shell(f"{RFSTAGE} {EVERY_COMMAND[0]} | head -1")
     assert done.stderr == ""
     assert done.stdout.count("\n") == 1
+
+
+@pytest.mark.skipif(not os.path.exists("/dev/full"), reason="no device that is always full")
+@pytest.mark.parametrize("words", EVERY_COMMAND)
+def test_an_output_that_takes_nothing_is_one_clear_line(words):
+    done = shell(f"{RFSTAGE} {words} > /dev/full")
+    assert done.returncode == 2
+    assert done.stderr == "rfstage: the output can't be written (No space left on device)\n"
+
+
+@pytest.mark.parametrize("words", EVERY_COMMAND)
+def test_a_closed_output_is_one_clear_line(words):
+    done = shell(f"{RFSTAGE} {words} >&-")
+    assert done.returncode == 2
+    assert done.stderr == "rfstage: the output can't be written (it is closed)\n"
+
+
+def test_with_nowhere_to_complain_the_exit_status_is_left():
+    assert shell(f"{RFSTAGE} nothing 2>&-").returncode == 2
+    assert shell(f"{RFSTAGE} nothing >&- 2>&-").returncode == 2
+
+
+def test_an_unknown_option_hides_no_other_problem(run):
+    done = run("design", "--carier", "7MHz", "--power", "10 V", "--coil-q=lossles", "--json=1", "--frob", "--save")
+    assert [line.split(":", 1)[1].strip() for line in done.stderr.splitlines()] == [
+        "'--carier' is no option of rfstage design (did you mean '--carrier'?)",
+        "--json takes no value",
+        "'--frob' is no option of rfstage design",
+        "--save: wants a value",
+        "--power: read '10 V', which is a voltage; wanted a power, such as 10 W",
+        "--coil-q: got 'lossles'; wanted 1 to 10 million, or lossless",
+    ]
+
+
+def test_a_value_may_stand_behind_an_equals_sign_and_words_behind_two_dashes(run):
+    got = record(run("pulse", "--orders=2", "--json", "--", "120"))
+    assert len(got["coefficients"]) == 3
+
+
+def test_the_page_ends_with_the_files_written_and_json_does_not(run, tmp_path):
+    done = run("design", *GOOD, "--save", "a.toml", "--touchstone", "grün.s2p")
+    assert done.stdout.splitlines()[-1] == "Wrote grün.s2p, a.toml"
+    again = run("design", *GOOD, "--save", "b.toml", "--json")
+    assert "Wrote" not in again.stdout
+    swept = run(
+        "sweep", "a.toml", "--of", "supply.voltage", "--from", "12", "--to", "14", "--points", "2", "--csv", "a.csv"
+    )
+    assert swept.stdout.splitlines()[-1] == "Wrote a.csv"
+    assert run("settle", "a.toml", "--spice", "a.cir").stdout.splitlines()[-1] == "Wrote a.cir"
+    assert {p.name for p in tmp_path.iterdir()} == {"a.toml", "grün.s2p", "b.toml", "a.csv", "a.cir"}
+
+
+def test_a_name_that_the_output_can_not_show_is_shown_escaped(run):
+    narrow = {"PYTHONIOENCODING": "ascii"}
+    done = run("design", *GOOD, "--save", "grün.toml", env=narrow)
+    assert done.stdout.splitlines()[-1] == r"Wrote gr\xfcn.toml"
+    assert record(run("design", *GOOD, "--save", "ü.toml", "--json", env=narrow))["files"] == ["ü.toml"]
+
+
+def test_control_characters_are_shown_escaped(run):
+    done = run("design", "a\n\x1b[31m.toml")
+    assert done.stderr == "rfstage: a\\n\\x1b[31m.toml: is not there\n"
+
+
+@pytest.mark.parametrize("command", ["settle", "sweep", "design"])
+def test_what_a_run_reads_is_never_replaced(run, tmp_path, examples, command):
+    for name in ("beacon-as-built.toml", "gallery.toml", "gallery-antenna.s1p"):
+        shutil.copy(examples / name, tmp_path)
+    before = {p.name: p.read_bytes() for p in tmp_path.iterdir()}
+    stage, antenna = "beacon-as-built.toml", "gallery-antenna.s1p"
+    words = {
+        "settle": [(stage, "stage file", "settle", stage, "--spice")],
+        "sweep": [(stage, "stage file", "sweep", stage, "--of", "C1", "--from", "8nF", "--to", "9nF", "--csv")],
+        "design": [
+            ("gallery.toml", "job file", "design", "gallery.toml", "--save"),
+            (antenna, "load file", "design", "gallery.toml", "--touchstone"),
+        ],
+    }
+    for name, kind, *line in words[command]:
+        done = run(*line, name, "--overwrite")
+        assert done.returncode == 2
+        assert done.stderr == f"rfstage: {name}: is the {kind} itself; give another name\n"
+    assert {p.name: p.read_bytes() for p in tmp_path.iterdir()} == before
+
+
+@pytest.mark.parametrize(
+    ("words", "said"),
+    [
+        (("C1", "7nF", "7nF"), ["--to: got 7 nF, the same as --from"]),
+        (
+            ("C1", "7", "11"),
+            [
+                "--from: got 7 F where C1 is 8.8 nF (did you mean 7 nF?)",
+                "--to: got 11 F where C1 is 8.8 nF (did you mean 11 nF?)",
+            ],
+        ),
+        (("carrier", "7.0", "7.2MHz"), ["--from: got 7 Hz where carrier is 7.1 MHz (did you mean 7 MHz?)"]),
+        (("C1", "0", "9nF"), ["--from: got 0 F; allowed above 0 F"]),
+    ],
+)
+def test_the_ends_of_a_sweep_are_looked_at(run, examples, words, said):
+    path, first, last = words
+    done = run("sweep", str(examples / "beacon-as-built.toml"), "--of", path, "--from", first, "--to", last)
+    assert done.returncode == 2
+    assert done.stderr.splitlines() == [f"rfstage: {line}" for line in said]
+
+
+@pytest.mark.parametrize("path", ["C1.lead_inductance", "L1.self_capacitance", "device.knee_resistance"])
+def test_a_sweep_may_begin_at_zero_where_nothing_is_a_value(run, examples, path):
+    last = {"C1": "3nH", "L1": "1pF", "device": "50mohm"}[path.split(".")[0]]
+    words = ("--of", path, "--from", "0", "--to", last, "--points", "2", "--json")
+    got = record(run("sweep", str(examples / "beacon-as-built.toml"), *words))
+    assert len(got["points"]) == 2
+
+
+def abouts():
+    return {name: importlib.import_module(f"rfstage.cli.{name}").ABOUT for name in COMMANDS}
+
+
+def test_descriptions_and_worked_lines_fit_eighty_columns():
+    for about in (*abouts().values(), overview()):
+        assert max(map(len, about.splitlines())) <= 78
+
+
+@pytest.mark.parametrize(
+    "line",
+    [line.strip() for about in abouts().values() for line in about.splitlines() if line.startswith("  rfstage ")],
+)
+def test_every_worked_line_of_the_help_runs_from_the_project(line):
+    done = shell(line.replace("rfstage", RFSTAGE, 1))
+    assert done.stderr == ""
+    assert done.returncode == 0
+
+
+def test_only_what_writes_files_offers_to_overwrite(capsys):
+    for command in COMMANDS:
+        with pytest.raises(SystemExit):
+            main([command, "--help"])
+        assert ("--overwrite" in capsys.readouterr().out) == (command in ("design", "settle", "sweep"))
+
+
+@pytest.mark.parametrize(
+    ("message", "printed"),
+    [
+        (
+            "−47.2 V, 46.9 mΩ, 3.30 µH, 120.0 °, 12.0 − j3.20 Ω",
+            "-47.2 V, 46.9 mohm, 3.30 uH, 120.0 deg, 12.0 - j3.20 ohm",
+        ),
+        ("from 1.79 (360°) to below 2 (0°)", "from 1.79 (360 deg) to below 2 (0 deg)"),
+        ("at most 1.25e+03 ohm, or 4e+05", "at most 1250 ohm, or 400000"),
+        ("got 1e+12; read '1.25e+03 x'", "got 1e+12; read '1.25e+03 x'"),
+        ("µ-Antenne 50°N Ω.s1p: is not there", "µ-Antenne 50°N Ω.s1p: is not there"),
+    ],
+)
+def test_messages_have_one_spelling_of_figures_and_keep_the_names_of_files(message, printed):
+    assert _in_ascii_units(message) == printed
+
+
+@pytest.mark.parametrize("command", ["", *COMMANDS])
+def test_nothing_heavy_is_loaded_by_the_front_rooms(command):
+    module = f"rfstage.cli.{command}".rstrip(".")
+    script = f"import sys; import {module}; print(*sys.modules)"
+    done = subprocess.run([sys.executable, "-S", "-c", script], capture_output=True, text=True, env=PLACES, check=True)
+    assert not set(done.stdout.split()) & {"numpy", "rich", "pathlib", "shutil", "dataclasses", "tomllib", "json"}

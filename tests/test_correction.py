@@ -167,7 +167,7 @@ def test_a_triode_whose_swing_over_mu_exceeds_the_drive_is_refused():
 
 
 def test_an_amplification_factor_belongs_to_a_tube():
-    with pytest.raises(RfstageError, match="belongs to a triode"):
+    with pytest.raises(RfstageError, match="it belongs to tube"):
         replace(TRIODE, family="fet")
 
 

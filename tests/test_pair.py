@@ -342,6 +342,31 @@ def test_pairs_of_an_extreme_sort_settle_by_the_ways_of_single_devices(pair):
     assert {state.method for state in states} > {DIRECT}
 
 
+@pytest.mark.parametrize("imbalance", [0.0, 0.2])
+@BOTH
+def test_a_resonance_above_the_orders_is_not_overlooked(stage, imbalance):
+    c1 = Branch("C1", "shunt", "capacitor", 1.2e-9, q=1000.0, lead_inductance=4e-9)
+    if stage is PARALLEL:
+        c1 = replace(c1, value=17.3e-9, lead_inductance=1.5e-9)
+    block, *_, coil, c2 = unlike(stage, imbalance).branches
+    device = replace(stage.device, imbalance=imbalance, output_capacitance=60e-12 if stage is PARALLEL else 150e-12)
+    made = replace(stage, device=device, branches=(block, c1, coil, c2))
+    state, few, fine = settle(made), settle(made, orders=32), settle(made, orders=256)
+    assert state.orders_solved > 32
+    assert state.peak_voltage == pytest.approx(fine.peak_voltage, rel=5e-3)
+    first = fine.branches[0]  # the output capacitance, which resonates with the lead
+    assert abs(few.branches[0].rms_current / first.rms_current - 1) > 0.05
+    assert state.branches[0].rms_current == pytest.approx(first.rms_current, rel=0.02)
+
+
+@BOTH
+def test_a_pair_s_narrow_pulse_is_refused(stage):
+    drive = Drive(stage.device.threshold + 0.5 - 1e6, 1e6)
+    for one in (stage, unlike(stage, 0.2)):
+        with pytest.raises(ConvergenceError, match="the current pulse is too narrow"):
+            settle(replace(one, drive=drive), orders=32)
+
+
 def test_a_mixed_batch_gives_each_stage_what_it_gets_alone():
     some = [
         PUSH_PULL,
@@ -548,21 +573,23 @@ def test_a_device_refuses_what_makes_no_pair(change):
 
 def test_record_and_page_show_each_device():
     state = settle(unlike(PUSH_PULL, 0.2), orders=32)
-    record = json.loads(json_text(settle_record(state)))
+    record = json.loads(json_text(settle_record(state, ())))
     assert [d["dc_current_a"] for d in record["devices"]] == [d.dc_current for d in state.devices]
     assert set(record["devices"][0]) == {"dc_current_a", "dissipation_w", "peak_voltage_v", "peak_current_a"}
-    text = "\n".join(line.plain for line in settled_page(state, Look(width=100)))
-    assert "push-pull pair, fet" in text
+    text = "\n".join(line.plain for line in settled_page(state, Look(width=100), ()))
+    assert "push-pull pair, FET" in text
     for name in ("first", "second"):
         assert any(line.split()[:1] == [name] for line in text.splitlines())
     assert "stand between the two outputs" in text
     single = settle(replace(PARALLEL, device=replace(PARALLEL.device, pair=None)), orders=32)
-    assert settle_record(single)["devices"] == []
-    assert "second" not in "\n".join(line.plain.split("Harmonics")[0] for line in settled_page(single, Look(width=100)))
+    assert settle_record(single, ())["devices"] == []
+    assert "second" not in "\n".join(
+        line.plain.split("Harmonics")[0] for line in settled_page(single, Look(width=100), ())
+    )
 
 
 def test_the_page_of_a_parallel_pair_shows_both_output_capacitances_as_one():
-    text = "\n".join(line.plain for line in settled_page(settle(PARALLEL, orders=32), Look(width=100)))
+    text = "\n".join(line.plain for line in settled_page(settle(PARALLEL, orders=32), Look(width=100), ()))
     assert "180 pF" in text
 
 

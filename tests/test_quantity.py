@@ -94,6 +94,37 @@ def test_kilo_and_ohm_are_read_in_their_usual_spellings(text, value):
     assert parse_real(text, "ohm") == value
 
 
+@pytest.mark.parametrize(
+    ("text", "unit", "value"),
+    [
+        ("60db", "dB", 60.0),
+        ("60DB", "dB", 60.0),
+        ("25uw", "W", 25e-6),
+        ("10w", "W", 10.0),
+        ("13.8v", "V", 13.8),
+        ("250ma", "A", 0.25),
+        ("7.1Mhz", "Hz", 7.1e6),
+        ("7.1MHZ", "Hz", 7.1e6),
+        ("1.2uh", "H", 1.2e-6),
+        ("4k7OHM", "ohm", 4700.0),
+        ("120 Deg", "deg", 120.0),
+    ],
+)
+def test_capitals_of_a_unit_do_not_matter_where_nothing_else_could_be_meant(text, unit, value):
+    assert parse_real(text, unit) == value
+
+
+def test_a_complex_impedance_takes_its_unit_in_capitals_too():
+    assert parse_complex("50+j10 OHM") == 50 + 10j
+
+
+def test_femto_and_farad_stay_apart_and_so_do_siemens_and_second():
+    assert (parse_real("5f", "F"), parse_real("5F", "F")) == (5e-15, 5.0)
+    for text, unit in (("5s", "S"), ("5 MM", "m"), ("5pf", "F")):
+        with pytest.raises(QuantityError):
+            parse_real(text, unit)
+
+
 def test_milli_and_mega_are_told_apart_by_their_case():
     assert (parse_real("5mW", "W"), parse_real("5MW", "W")) == (5e-3, 5e6)
 

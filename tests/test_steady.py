@@ -2,15 +2,18 @@
 
 import math
 from dataclasses import replace
+from pathlib import Path
 
 import numpy as np
 import pytest
 import stress
 from scipy.integrate import solve_ivp
 
-from rfstage.device import Device, ReverseConduction
+from rfstage.device import Device, JunctionCapacitance, ReverseConduction
 from rfstage.devicelaw import current
 from rfstage.errors import ConvergenceError, ImpossibleError, OutOfRangeError
+from rfstage.files.records import settled_record
+from rfstage.files.stage import load_stage
 from rfstage.ladder import Branch
 from rfstage.load import SeriesLoad
 from rfstage.pulse import pulse_coefficients
@@ -19,6 +22,7 @@ from rfstage.steady import settle, settle_many
 from rfstage.steady.balance import evaluate, jacobian, newton
 from rfstage.steady.circuit import Circuit
 from rfstage.steady.network import networks
+from rfstage.steady.single import Singles
 from rfstage.steady.solve import FAILED, cold_start, solve
 
 # A textbook class C stage: 10 W from 13.8 V at 120 degrees and 7.1 MHz, 7.5 ohm at the collector, pi of input-side Q 3
@@ -45,6 +49,7 @@ DESIGNED = Stage(
     ),
     load=SeriesLoad(50 + 0j, 7.1e6),
 )
+BEACON = load_stage(str(Path(__file__).parent.parent / "examples" / "beacon-as-built.toml"))
 HARD = replace(DESIGNED, device=replace(DESIGNED.device, threshold_softness=0.0))
 ORDINARY = stress.stages(150)
 EXTREME = stress.stages(60, stress.EXTREME)
@@ -366,6 +371,91 @@ def test_chosen_orders_are_enough():
                 assert abs(one.level - other.level) < 0.05
 
 
+def test_a_resonance_above_the_orders_is_not_overlooked():
+    """Of the output capacitance with a lead, at order 37.6: no figure moves between 16 and 32 orders."""
+    state, few, fine = settle(BEACON), settle(BEACON, orders=32), settle(BEACON, orders=256)
+    assert few.change_from_half_the_orders.settled
+    assert state.change_from_half_the_orders.settled
+    assert few.peak_voltage < 0.95 * fine.peak_voltage
+    assert state.peak_voltage == pytest.approx(fine.peak_voltage, rel=5e-3)
+    assert state.minimum_voltage == pytest.approx(fine.minimum_voltage, abs=5e-3 * 13.8)
+    for one, other in zip(state.branches, fine.branches, strict=True):
+        assert one.rms_current == pytest.approx(other.rms_current, rel=0.03)
+
+
+def test_a_stage_without_strays_still_takes_32_orders():
+    assert settle(DESIGNED).orders_solved == 32
+    assert np.median([settle(stage).orders_solved for stage in ORDINARY[:60]]) == 32
+
+
+def test_peak_voltages_of_chosen_orders_hold_against_256():
+    random = np.random.default_rng(5)
+    drawn = stress.stages(200)
+    stages = [with_strays(stage, random) if k % 2 else stage for k, stage in enumerate(drawn)]
+    chosen = np.array([settle(stage).peak_voltage for stage in stages])
+    fine = np.array([state.peak_voltage for state in settle_many(stages, orders=256)])
+    error = np.abs(chosen / fine - 1)
+    assert np.percentile(error, 99) < 2e-3
+    assert error.max() < 0.01
+
+
+def with_strays(stage: Stage, random: np.random.Generator) -> Stage:
+    """Return it with leads and windings whose own resonances lie anywhere from order 3 to 80."""
+    omega, branches = 2 * math.pi * stage.carrier, []
+    for branch in stage.branches:
+        stray = 1 / (branch.value * (random.uniform(3, 80) * omega) ** 2)
+        name = "self_capacitance" if branch.kind == "coil" else "lead_inductance"
+        branches.append(branch if branch.name == "Cblock" else replace(branch, **{name: stray}))
+    return replace(stage, branches=tuple(branches))
+
+
+def test_a_lead_and_a_junction_resonate_as_a_lead_and_a_capacitance_do():
+    """The ladder alone shows nothing then; with the junction's mean capacitance across it, it does."""
+    grading = 0.01  # as good as constant
+    junction = JunctionCapacitance(at_zero=120e-12 * (1 + 13.8 / 0.8) ** grading, potential=0.8, grading=grading)
+    stage = replace(BEACON, device=replace(BEACON.device, output_capacitance=1e-12, junction_capacitance=junction))
+    found = []
+    for one in (BEACON, stage):
+        system = Singles.of([one], 256)
+        circuit = system.circuit(32)
+        found.append(system.voltage_beyond(system.cycle(circuit, solve(circuit))))
+    assert found[0] > 0.1 * 13.8
+    assert found[1] == pytest.approx(found[0], rel=0.5)
+    assert settle(stage).orders_solved > 32
+
+
+def test_reported_changes_are_those_from_half_the_orders_even_where_256_do_not_settle():
+    stage = ORDINARY[76]
+    state, half = settle(stage), settle(stage, orders=128)
+    change = state.change_from_half_the_orders
+    assert state.orders_solved == 256
+    assert not change.settled
+    assert change.dc_current == pytest.approx(abs(1 - half.dc_current / state.dc_current), rel=1e-6)
+    assert change.output_power_db == pytest.approx(
+        abs(10 * math.log10(state.output_power / half.output_power)), rel=1e-6
+    )
+    moves = [abs(a.level - b.level) for a, b in zip(state.harmonics[:9], half.harmonics[:9], strict=True)]
+    assert change.harmonics_db == pytest.approx(max(moves), abs=change.output_power_db * 1.01)
+    assert change.peak_voltage == pytest.approx(abs(1 - half.peak_voltage / state.peak_voltage), rel=1e-6)
+    assert settled_record(state)["change_from_half_the_orders"] == change._asdict()
+
+
+@pytest.mark.parametrize(("listed", "orders"), [(2, 32), (16, 32), (17, 64), (60, 128), (130, 512)])
+def test_listed_harmonics_choose_their_orders(listed, orders):
+    state = settle(DESIGNED, listed=listed)
+    assert state.orders_solved == orders
+    assert state.harmonics[-1].order >= listed
+    assert state.change_from_half_the_orders.settled
+
+
+def test_listed_harmonics_need_orders_that_hold_them():
+    assert settle(DESIGNED, orders=120, listed=60).harmonics[-1].order == 60
+    with pytest.raises(OutOfRangeError, match="orders must be at least 120 for harmonics to the order 60"):
+        settle(DESIGNED, orders=119, listed=60)
+    with pytest.raises(OutOfRangeError, match="listed must be from 1 to 512"):
+        settle(DESIGNED, listed=513)
+
+
 def test_hard_corner_takes_four_times_the_samples():
     assert settle(HARD, orders=16).waveform.phase_deg.size == 512
     assert settle(DESIGNED, orders=16).waveform.phase_deg.size == 128
@@ -457,6 +547,44 @@ def test_bias_without_drive_draws_current_and_gives_nothing():
 
 
 # --- refusals
+
+
+def narrow(stage: Stage, degrees: float) -> Stage:
+    """Return the stage with a pulse of this conduction angle, of 0.5 V above the threshold."""
+    amplitude = 0.5 / (1 - math.cos(math.radians(degrees) / 2))
+    return replace(stage, drive=Drive(stage.device.threshold + 0.5 - amplitude, amplitude))
+
+
+@pytest.mark.parametrize("stage", [DESIGNED, HARD], ids=["soft", "hard"])
+def test_a_pulse_between_the_samples_is_refused(stage):
+    samples = 2048 if stage is DESIGNED else 8192
+    with pytest.raises(
+        ConvergenceError, match=r"^the current pulse is too narrow: its conduction angle is 0\.01°, and "
+    ):
+        settle(narrow(stage, 0.01))
+    least = 6 * 360 / samples
+    with pytest.raises(ConvergenceError, match=rf"256 orders resolve no less than {least:.3g}°$"):
+        settle(narrow(stage, 0.8 * least))
+    assert settle(narrow(stage, 1.2 * least)).has_output
+
+
+def test_a_narrow_pulse_gets_more_orders_first():
+    stage = narrow(DESIGNED, 6.0)
+    for settled_at in (lambda: settle(stage, orders=32), lambda: settle_many([stage], orders=32)):
+        with pytest.raises(
+            ConvergenceError, match=r"conduction angle is 6°, and 32 orders resolve no less than 8\.44°"
+        ):
+            settled_at()
+    with pytest.raises(ConvergenceError, match="the current pulse of stage 2 is too narrow"):
+        settle_many([DESIGNED, stage, DESIGNED], orders=32)
+    assert settle(stage).orders_solved >= 64
+
+
+def test_the_round_pulse_of_a_threshold_not_reached_is_no_narrow_one():
+    state, fine = settle(driven(DESIGNED, 0.45), orders=32), settle(driven(DESIGNED, 0.45), orders=256)
+    assert state.conduction_angle_deg == 0
+    assert state.dc_current > 0
+    assert state.dc_current == pytest.approx(fine.dc_current, rel=1e-6)
 
 
 def test_ladder_that_conducts_direct_current_is_refused():

@@ -5,22 +5,24 @@ Exit status: 0 done; 1 done, and a check that was asked for failed; 2 bad input 
 
 from __future__ import annotations
 
+import io
 import os
+import re
 import sys
 from collections.abc import Sequence
 from importlib import import_module
 
-from rfstage.errors import InputError, RfstageError
+from rfstage.errors import FileError, InputError, RfstageError
 
 # command -> (room in this package, what it does)
 COMMANDS = {
     "design": ("design", "a stage from carrier, conduction angle and power: the main job"),
-    "match": ("match", "one network by itself, from a resistance to a load"),
+    "match": ("match", "one network by itself, between any two impedances"),
     "settle": ("settle", "the steady state of an as-built stage"),
     "sweep": ("sweep", "the steady state along one value: tuning, drive, supply, load"),
     "pulse": ("pulse", "Fourier coefficients of the current pulse of a conduction angle"),
 }
-OK, CHECK_FAILED, BAD_INPUT = 0, 1, 2
+OK, CHECK_FAILED, BAD_INPUT, STOPPED = 0, 1, 2, 130
 
 
 def main(argv: Sequence[str] | None = None) -> int:
@@ -32,25 +34,25 @@ def main(argv: Sequence[str] | None = None) -> int:
     try:
         return _dispatch(words)
     except RfstageError as error:
-        for line in str(error).splitlines():
-            print(f"rfstage: {line}", file=sys.stderr)
+        _complain(error.problems if isinstance(error, InputError) else str(error).split("\n"))
         return BAD_INPUT
     except BrokenPipeError:
-        os.dup2(
-            os.open(os.devnull, os.O_WRONLY), 1
-        )  # the reader has gone: nothing more to say, and no complaint at exit
-        return OK
+        return OK  # the reader has gone: nothing more to say
     except KeyboardInterrupt:
-        print("rfstage: stopped", file=sys.stderr)
-        return 130
+        _complain(["stopped"])
+        return STOPPED
 
 
 def _dispatch(words: list[str]) -> int:
+    if sys.stdout is None:
+        raise FileError("the output can't be written (it is closed)")
+    if isinstance(sys.stdout, io.TextIOWrapper):
+        sys.stdout.reconfigure(errors="backslashreplace")  # for the name of a file that its encoding lacks
     if not words or words[0] in ("--help", "-h"):
-        print(overview())
+        _say(overview())
         return OK
     if words[0] == "--version":
-        print(versions())
+        _say(versions())
         return OK
     command = words[0]
     if command not in COMMANDS:
@@ -59,6 +61,42 @@ def _dispatch(words: list[str]) -> int:
         raise InputError(f"{command!r} is no command{nearest(command, COMMANDS)}; 'rfstage --help' lists them")
     room = import_module(f"rfstage.cli.{COMMANDS[command][0]}")
     return int(room.run(words[1:]))
+
+
+def _say(text: str) -> None:
+    from rfstage.cli.words import deliver
+
+    deliver(lambda: print(text))
+
+
+def _complain(problems: Sequence[str]) -> None:
+    """Print one line for each problem on stderr; with no stderr, or a full one, the exit status has to do."""
+    if sys.stderr is None:
+        return
+    from rfstage.fields import plain
+
+    try:
+        for problem in problems:
+            print(f"rfstage: {plain(_in_ascii_units(problem))}", file=sys.stderr, flush=True)
+    except OSError:
+        return
+
+
+def _in_ascii_units(message: str) -> str:
+    """Return a message with its figures in one spelling: ASCII units, and no powers of ten where digits do.
+
+    Only figures are touched: the name of a file keeps its letters.
+
+    Examples
+    --------
+    >>> _in_ascii_units("grün.s1p: 12.0 − j3.20 Ω at 20.0 °, 4.70 µH; at most 1.25e+03 ohm")
+    'grün.s1p: 12.0 - j3.20 ohm at 20.0 deg, 4.70 uH; at most 1250 ohm'
+    """
+    message = re.sub(r"−(?=[\dj]| j?\d)", "-", message)
+    message = re.sub(r"(?<=\d) ?°(?!\w)", " deg", message)
+    message = re.sub(r"(?<=\d )[µμ](?=[VAWFHSmΩ]|Hz|ohm)", "u", message)
+    message = re.sub(r"(?<=\d )([munpkMGT]?)Ω(?!\w)", r"\1ohm", message)
+    return re.sub(r"(?<![\w.'\"])\d(?:\.\d+)?e\+0[0-6](?![\w.])", lambda found: f"{float(found[0]):.12g}", message)
 
 
 def overview() -> str:
@@ -70,7 +108,7 @@ def overview() -> str:
         "  rfstage COMMAND --help   what a command takes",
         "  rfstage --version        versions of rfstage and what it stands on",
         "",
-        "  for example: rfstage design --carrier 7.1MHz --power 10W --angle 120deg --supply 13.8V --limit us-amateur",
+        "  rfstage design --carrier 7.1MHz --power 10W --angle 120deg --supply 13.8V",
         "",
         "exit status: 0 done; 1 done, and a check that was asked for failed; 2 bad input",
     ]

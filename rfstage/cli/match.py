@@ -5,11 +5,11 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
-from rfstage.cli.words import Parser, add_field_options, given, output, read_all
-from rfstage.errors import InputError
+from rfstage.cli.words import Parser, given, output, read_all
 from rfstage.fields import Field
-from rfstage.files.job import LOAD_FILE_ENDING
+from rfstage.files.job import impedance_or_file, load_file_problem
 from rfstage.jobfields import CAPACITOR_Q, CARRIER, COIL_Q, INPUT_Q, LOADED_Q, NETWORK
+from rfstage.quantity import QuantityError
 
 if TYPE_CHECKING:
     from rich.text import Text
@@ -17,10 +17,11 @@ if TYPE_CHECKING:
     from rfstage.report.page import Look
 
 ABOUT = """\
-One network that turns the load into what the device should see, without choke, blocking capacitor
-or output capacitance.
+One network between any two impedances: it turns the load into what the device
+should see, without choke, blocking capacitor or output capacitance.
 
-  rfstage match 1000 50 --carrier 3.5MHz --network pi --input-q 12 --coil-q lossless --capacitor-q lossless
+  rfstage match 1000 50 --carrier 3.5MHz --network pi --input-q 12
+  rfstage match 12+j3 50-j20 --carrier 14.2MHz --network l
 """
 _WANTED = Field("RESISTANCE", "wanted", "impedance", "ohm", 0, 1e7, True)
 _LOAD = Field("LOAD", "load", "impedance", "ohm", 0, 1e7, True)
@@ -31,32 +32,38 @@ _OPTIONS = (CARRIER, NETWORK, LOADED_Q, INPUT_Q, COIL_Q, CAPACITOR_Q, _POWER, _H
 
 def parser() -> Parser:
     """Return the command's parser."""
-    made = Parser("match", ABOUT)
+    made = Parser("match", ABOUT, writes=False)
     made.positional("wanted", "RESISTANCE", "what the device should see: a resistance or R+jX")
     made.positional("load", "LOAD", "the load: an impedance, or a file ending in .s1p")
-    add_field_options(made, "network", _OPTIONS)
+    made.add_fields("network", _OPTIONS)
     return made
 
 
 def run(words: Sequence[str]) -> int:
     """Run the command and return its exit status."""
     found = parser().read(words)
-    texts = {
-        field.name: (field, text) for field in _OPTIONS for text in [given(found, _OPTIONS).get(field.name)] if text
-    }
+    words_given = given(found, _OPTIONS)
+    texts = {field.name: (field, words_given[field.name]) for field in _OPTIONS if field.name in words_given}
     texts["wanted"] = (_WANTED, found.wanted)
-    measured = found.load.strip().lower().endswith(LOAD_FILE_ENDING)
-    if not measured:
-        texts["load"] = (_LOAD, found.load)
-    values = read_all(texts)
-    if "carrier" not in values:
-        raise InputError("--carrier: missing; a network is designed at one frequency, such as --carrier 7.1MHz")
-    if "loaded_q" in values and "input_q" in values:
-        raise InputError("--input-q: got both a loaded Q and an input-side Q; give one of them")
-    if measured:
+    problems = []
+    name, load = found.load.strip(), None
+    try:
+        load = impedance_or_file(_LOAD, name)
+        wrong = load_file_problem(name) if load is None else ""
+    except QuantityError as error:
+        wrong = str(error)
+    if wrong:
+        problems.append(f"LOAD: {wrong}")
+    if "carrier" not in texts:
+        problems.append("--carrier: missing; a network is designed at one frequency, such as --carrier 7.1MHz")
+    if "loaded_q" in texts and "input_q" in texts:
+        problems.append("--input-q: got both a loaded Q and an input-side Q; give one of them")
+    values = read_all(texts, problems)
+    values["load"] = load
+    if load is None:
         from rfstage.files.touchstone import read_load
 
-        values["load"] = read_load(found.load.strip())
+        values["load"] = read_load(name)
 
     from rfstage.designs.single import single_network
 

@@ -6,7 +6,7 @@ import math
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
-from rfstage.cli.words import Parser, output, read_all
+from rfstage.cli.words import Parser, given, output, read_all
 from rfstage.fields import Field
 
 if TYPE_CHECKING:
@@ -15,31 +15,31 @@ if TYPE_CHECKING:
     from rfstage.report.page import Look
 
 ABOUT = """\
-Fourier coefficients of the current pulse of a device that conducts for part of each cycle.
+Fourier coefficients of the current pulse of a device that conducts for part of
+each cycle.
 
   rfstage pulse 120deg --orders 5
 """
 _ANGLE = Field("ANGLE", "angle", "real", "deg", 0, 360, True)
-_EXPONENT = Field("", "exponent", "real", "", 1, 3, option="--exponent")
-_ORDERS = Field("", "orders", "count", "", 1, 10_000, option="--orders")
+_EXPONENT = Field("", "exponent", "real", "", 1, 3, False, "--exponent", "power law of the device, 1 to 3 [1]")
+_ORDERS = Field("", "orders", "count", "", 1, 10_000, False, "--orders", "highest order [10]")
+_OPTIONS = (_EXPONENT, _ORDERS)
 
 
 def parser() -> Parser:
     """Return the command's parser."""
-    made = Parser("pulse", ABOUT)
+    made = Parser("pulse", ABOUT, writes=False)
     made.positional("angle", "ANGLE", "full conduction angle in degrees")
-    pulse = made.add_argument_group("pulse")
-    pulse.add_argument("--exponent", metavar="P", default="1", help="power law of the device, 1 to 3 [1]")
-    pulse.add_argument("--orders", metavar="N", default="10", help="highest order [10]")
+    made.add_fields("pulse", _OPTIONS)
     return made
 
 
 def run(words: Sequence[str]) -> int:
     """Run the command and return its exit status."""
     found = parser().read(words)
-    values = read_all(
-        {"angle": (_ANGLE, found.angle), "exponent": (_EXPONENT, found.exponent), "orders": (_ORDERS, found.orders)}
-    )
+    texts = {"exponent": "1", "orders": "10", **given(found, _OPTIONS)}
+    fields = {field.name: (field, texts[field.name]) for field in _OPTIONS}
+    values = read_all({"angle": (_ANGLE, found.angle), **fields})
 
     from rfstage.pulse import operating_class, pulse_coefficients
 

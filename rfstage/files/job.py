@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 import os
+import re
 from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
 from rfstage.errors import InputError
-from rfstage.fields import Field, nearest, read
-from rfstage.files.tables import parse_toml, read_table
+from rfstage.fields import Field, nearest, plain, read
+from rfstage.files.tables import kind_of, parse_toml, read_table
 from rfstage.jobfields import JOB_FIELDS, REQUIRED, conflicts
 from rfstage.quantity import QuantityError
 
@@ -47,23 +48,25 @@ def read_job(path: str | os.PathLike[str] | None, options: Mapping[str, str]) ->
     problems: list[str] = []
     values: dict[str, Any] = {}
     where = {field.name: field.path for field in JOB_FIELDS}
+    misplaced: set[str] = set()
     if path is not None:
-        values = _from_file(os.fspath(path), problems)
+        values, misplaced = _from_file(os.fspath(path), problems)
         where = {name: f"{path}: {key}" for name, key in where.items()}
     for field in JOB_FIELDS:
         if field.name in options:
+            where[field.name] = field.option
             for rival in _RIVALS.get(field.name, ()):
                 if rival not in options:
                     values.pop(rival, None)
             _take_option(field, options[field.name], values, problems)
     for name in REQUIRED:
-        if name not in values and not any(where[name] in p or _field(name).option in p for p in problems):
+        if name not in values and name not in misplaced and not any(p.startswith(where[name] + ":") for p in problems):
             field = _field(name)
             problems.append(f"{where[name]}: missing ({field.help}; option {field.option})")
-    problems += conflicts(values)
+    problems += [_placed(line, where) for line in conflicts(values)]
     file = values.get("load_file")
-    if file is not None and not os.path.isfile(file):
-        problems.append(f"load.file: {file} is not there")
+    if file is not None and (wrong := load_file_problem(file)):
+        problems.append(f"{where['load'] if 'load' in options else where['load_file']}: {wrong}")
     if problems:
         raise InputError(*problems)
     if file is not None:
@@ -75,33 +78,75 @@ def read_job(path: str | os.PathLike[str] | None, options: Mapping[str, str]) ->
     return Job(**values)
 
 
+def load_file_problem(name: str) -> str:
+    """Return what is wrong with the name of a load file, or nothing if it can be opened as one."""
+    if not name.lower().endswith(LOAD_FILE_ENDING) or os.path.isdir(name):
+        return f"{plain(name)}: a load file ends in {LOAD_FILE_ENDING} and is a one-port"
+    return "" if os.path.exists(name) else f"{plain(name)}: is not there"
+
+
+def impedance_or_file(field: Field, text: str) -> complex | None:
+    """Return the impedance that a text is, or None if it names a load file.
+
+    Raises
+    ------
+    QuantityError
+        If it is neither; a file of another kind is said to be that.
+    """
+    if text.lower().endswith(LOAD_FILE_ENDING):
+        return None
+    try:
+        return complex(read(field, text))
+    except QuantityError:
+        if re.search(r"\.s\d+p\Z", text, re.IGNORECASE) or (text and os.path.exists(text)):
+            raise QuantityError(load_file_problem(text)) from None
+        raise
+
+
+def _placed(line: str, where: Mapping[str, str]) -> str:
+    """Return a line about a key with the file or the option that the key's value came from."""
+    key, colon, rest = line.partition(":")
+    return next((where[field.name] for field in JOB_FIELDS if field.path == key), key) + colon + rest
+
+
 def _field(name: str) -> Field:
     return next(field for field in JOB_FIELDS if field.name == name)
 
 
 def _take_option(field: Field, text: str, values: dict[str, Any], problems: list[str]) -> None:
-    if field.name == "load" and text.lower().endswith(LOAD_FILE_ENDING):
-        values["load_file"] = text
-        values.pop("load", None)
-        return
     try:
-        values[field.name] = read(field, text)
+        value = impedance_or_file(field, text) if field.name == "load" else read(field, text)
     except QuantityError as error:
         problems.append(f"{field.option}: {error}")
+        return
+    values[field.name] = value
+    if value is None:
+        values["load_file"] = text
+        del values[field.name]
 
 
-def _from_file(path: str, problems: list[str]) -> dict[str, Any]:
+def _from_file(path: str, problems: list[str]) -> tuple[dict[str, Any], set[str]]:
+    """Return the values of a job file, and the names of those that stand at its top instead of in their table."""
+    document = parse_toml(path)
+    if kind_of(document) == "stage":
+        raise InputError(f"{path}: is a stage file; use 'rfstage settle {path}'")
     values: dict[str, Any] = {}
+    misplaced: set[str] = set()
     groups: dict[str, list[Field]] = {}
     for field in JOB_FIELDS:
         groups.setdefault(field.path.split(".")[0], []).append(field)
-    for group, table in parse_toml(path).items():
-        if group in groups:
+    homes = {field.path.split(".")[1]: field for field in JOB_FIELDS} | {field.name: field for field in JOB_FIELDS}
+    for group, table in document.items():
+        if group in homes and not isinstance(table, dict):
+            home, key = homes[group].path.split(".")
+            misplaced.add(homes[group].name)
+            problems.append(f"{path}: {group}: belongs under [{home}]" + (f" as {key}" if key != group else ""))
+        elif group in groups:
             values |= read_table(table, groups[group], prefix=f"{path}: {group}.", problems=problems)
         else:
-            problems.append(f"{path}: {group}: no such table{nearest(group, groups)}")
+            problems.append(f"{path}: {plain(group)}: no such table{nearest(group, groups)}")
     if "load_file" in values:
         if "load" in values:
             problems.append(f"{path}: load: got both an impedance and a file; give one of them")
         values["load_file"] = os.path.join(os.path.dirname(path), values["load_file"])
-    return values
+    return values, misplaced

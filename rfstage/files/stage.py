@@ -2,15 +2,18 @@
 
 from __future__ import annotations
 
+import json
 import math
 import os
+import re
 from pathlib import Path
 from typing import Any
 
 from rfstage.device import PAIRS, Device, JunctionCapacitance, ReverseConduction
 from rfstage.errors import InputError
-from rfstage.fields import LOSSLESS, Field
-from rfstage.files.tables import parse_toml, read_table
+from rfstage.fields import LOSSLESS, Field, plain, shown
+from rfstage.files.job import load_file_problem
+from rfstage.files.tables import STAGE_FORMAT, kind_of, parse_toml, read_table
 from rfstage.jobfields import CARRIER, FAMILIES
 from rfstage.ladder import Branch
 from rfstage.limits import limit_named
@@ -18,12 +21,14 @@ from rfstage.load import Load, MeasuredLoad, SeriesLoad
 from rfstage.quantity import QuantityError, exact_complex, exact_text, parse_real
 from rfstage.stage import CHOKE, OUTPUT_CAPACITANCE, Asked, Drive, PartData, Stage, Supply
 
-FORMAT = "rfstage.stage"
 VERSION = 1
+DIGITS = 12  # of every number written: enough for any part, and 200 mV stays 200 mV
+NAME = re.compile(r"[A-Za-z0-9_-]{1,12}", re.ASCII)
+RESERVED = ("load", "carrier", "drive", "supply", "device")  # what else a sweep or a page may name
 VALUE_UNIT = {"capacitor": "F", "coil": "H", "resistor": "ohm"}
 
 _TOP = (
-    Field("format", "format", "choice", choices=(FORMAT,)),
+    Field("format", "format", "choice", choices=(STAGE_FORMAT,)),
     Field("version", "version", "count", "", VERSION, VERSION),
     Field("carrier", "carrier", "real", "Hz", CARRIER.low, CARRIER.high),
 )
@@ -102,9 +107,9 @@ def stage_text(stage: Stage, folder: Path) -> str:
     """Return a stage as TOML; a load file is named as seen from ``folder``."""
     device, supply = stage.device, stage.supply
     lines = [
-        f'format = "{FORMAT}"',
+        f'format = "{STAGE_FORMAT}"',
         f"version = {VERSION}",
-        f'carrier = "{exact_text(stage.carrier, "Hz")}"',
+        f'carrier = "{_number(stage.carrier, "Hz")}"',
         "",
         "[device]",
         f'family = "{device.family}"',
@@ -126,16 +131,28 @@ def stage_text(stage: Stage, folder: Path) -> str:
     if stage.limit_rule or stage.limit_load:
         lines += ["", "[limit]"]
         lines += [f'rule = "{stage.limit_rule}"'] if stage.limit_rule else []
-        lines += [f'load = "{exact_text(stage.limit_load, "ohm")}"'] if stage.limit_load else []
+        lines += [f'load = "{_number(stage.limit_load, "ohm")}"'] if stage.limit_load else []
     return "\n".join(lines) + "\n"
 
 
+def _rounded(value: float) -> float:
+    return float(f"{value:.{DIGITS}g}")
+
+
+def _number(value: Any, unit: str) -> str:
+    return exact_text(_rounded(float(value)), unit)
+
+
+def _quoted(text: str) -> str:
+    return json.dumps(text, ensure_ascii=False).replace("\x7f", "\\u007f")  # JSON's escapes are TOML's too
+
+
 def _written(field: Field, value: Any) -> str:
-    if field.kind == "q":
-        return f'"{LOSSLESS}"' if math.isinf(value) else repr(value)
     if field.kind in ("text", "choice"):
-        return f'"{value}"'
-    return f'"{exact_text(value, field.unit)}"' if field.unit else repr(value)
+        return _quoted(value)
+    if field.kind == "q" and math.isinf(value):
+        return f'"{LOSSLESS}"'
+    return f'"{_number(value, field.unit)}"' if field.unit else repr(_rounded(value))
 
 
 def _lines(fields: tuple[Field, ...], source: object) -> list[str]:
@@ -153,21 +170,21 @@ def _branch_lines(branch: Branch, data: PartData) -> list[str]:
         f'name = "{branch.name}"',
         f'place = "{branch.place}"',
         f'kind = "{branch.kind}"',
-        f'value = "{exact_text(float(branch.value), VALUE_UNIT[branch.kind])}"',
+        f'value = "{_number(branch.value, VALUE_UNIT[branch.kind])}"',
     ]
     if branch.q is not None:
-        lines.append(f"q = {float(branch.q)!r}")
+        lines.append(f"q = {_rounded(float(branch.q))!r}")
     if branch.series_resistance is not None:
-        lines.append(f'series_resistance = "{exact_text(float(branch.series_resistance), "ohm")}"')
+        lines.append(f'series_resistance = "{_number(branch.series_resistance, "ohm")}"')
     if branch.lead_inductance != 0:
-        lines.append(f'lead_inductance = "{exact_text(float(branch.lead_inductance), "H")}"')
+        lines.append(f'lead_inductance = "{_number(branch.lead_inductance, "H")}"')
     if branch.self_capacitance != 0:
-        lines.append(f'self_capacitance = "{exact_text(float(branch.self_capacitance), "F")}"')
+        lines.append(f'self_capacitance = "{_number(branch.self_capacitance, "F")}"')
     if data.trim is not None:
         unit = VALUE_UNIT[branch.kind]
-        lines.append("trim = [" + ", ".join(f'"{exact_text(v, unit)}"' for v in data.trim) + "]")
+        lines.append("trim = [" + ", ".join(f'"{_number(v, unit)}"' for v in data.trim) + "]")
     if data.tolerance is not None:
-        lines.append(f'tolerance = "{exact_text(data.tolerance, "%")}"')
+        lines.append(f'tolerance = "{_number(data.tolerance, "%")}"')
     if data.winding is not None:
         kinds = {field.name: field for field in _WINDING}
         lines.append("winding = { " + ", ".join(f"{k} = {_written(kinds[k], v)}" for k, v in data.winding) + " }")
@@ -177,9 +194,10 @@ def _branch_lines(branch: Branch, data: PartData) -> list[str]:
 def _load_lines(load: Load, folder: Path) -> list[str]:
     if isinstance(load, MeasuredLoad):
         relative = Path(os.path.relpath(load.name, folder)).as_posix()
-        return [f'file = "{relative}"']
+        return [f"file = {_quoted(relative)}"]
     assert isinstance(load, SeriesLoad)
-    return [f'impedance = "{exact_complex(load.at_carrier)} ohm"']
+    impedance = complex(_rounded(load.at_carrier.real), _rounded(load.at_carrier.imag))
+    return [f'impedance = "{exact_complex(impedance)} ohm"']
 
 
 def load_stage(path: str | Path) -> Stage:
@@ -203,6 +221,8 @@ def load_stage(path: str | Path) -> Stage:
     """
     path = Path(path)
     document = parse_toml(path)
+    if kind_of(document) == "job":
+        raise InputError(f"{path}: is a job file; use 'rfstage design {path}'")
     problems: list[str] = []
     top = read_table(document, _TOP, prefix=f"{path}: ", problems=problems, also=_TABLES)
     tables = {name: document.get(name, {}) for name in _TABLES}
@@ -305,10 +325,13 @@ def _read_branches(
         q = values.get("q")
         if q is not None and "series_resistance" in values:
             problems.append(f"{where}q: got both a Q and a series resistance; give one of them")
-        name = str(values.get("name"))
-        if name in data or name in (CHOKE, OUTPUT_CAPACITANCE):
-            problems.append(f"{where}name: {name!r} is taken; give each branch a name of its own")
+        name = values.get("name", "")
+        if "name" in values:
+            _check_name(name, (*data, CHOKE, OUTPUT_CAPACITANCE), f"{where}name", problems)
         trim = _read_trim(table.get("trim"), unit, f"{where}trim", problems)
+        if trim is not None and not trim[0] <= value <= trim[1] and len(problems) == before:
+            low, high = (exact_text(end, unit) for end in trim)
+            problems.append(f"{where}value: got {exact_text(value, unit)}; allowed by its own trim {low} to {high}")
         winding = None
         if "winding" in table:
             wound = read_table(table["winding"], _WINDING, prefix=f"{where}winding.", problems=problems)
@@ -331,13 +354,23 @@ def _read_branches(
     return tuple(branches), data
 
 
+def _check_name(name: str, taken: tuple[str, ...], where: str, problems: list[str]) -> None:
+    """Refuse a name that a page, a path of a sweep or a SPICE deck can't carry."""
+    if not NAME.fullmatch(name) or name.lower() in RESERVED:
+        problems.append(
+            f"{where}: got {shown(name)}; allowed letters, digits, _ and -, at most 12, and not {', '.join(RESERVED)}"
+        )
+    elif name.lower() in (other.lower() for other in taken):  # a SPICE deck knows no capitals
+        problems.append(f"{where}: {name!r} is taken; give each branch a name of its own, whatever its capitals")
+
+
 def _positive(raw: object, unit: str, where: str, problems: list[str]) -> float:
     if raw is None:
         problems.append(f"{where}: missing")
         return math.nan
     try:
         if isinstance(raw, bool) or not isinstance(raw, str | int | float):
-            raise QuantityError(f"got {raw!r}")
+            raise QuantityError(f"got {shown(raw)}; wanted a number above 0 {unit}")
         value = parse_real(raw, unit) if isinstance(raw, str) else float(raw)
         if not 0 < value < math.inf:
             raise QuantityError(f"got {exact_text(value, unit)}; allowed above 0 {unit}")
@@ -351,7 +384,7 @@ def _read_trim(raw: object, unit: str, where: str, problems: list[str]) -> tuple
     if raw is None:
         return None
     if not isinstance(raw, list) or len(raw) != 2:
-        problems.append(f"{where}: got {raw!r}; wanted the least and the most that can be set")
+        problems.append(f"{where}: got {shown(raw)}; wanted the least and the most that can be set, as a list of two")
         return None
     low, high = (_positive(value, unit, where, problems) for value in raw)
     if low >= high:
@@ -370,11 +403,17 @@ def _read_load(values: dict[str, Any], carrier: float | None, path: Path, proble
     if carrier is None:
         return None
     if "file" in values:
+        file = path.parent / values["file"]
+        if wrong := load_file_problem(str(file)):
+            problems.append(f"{path}: load.file: {wrong}")
+            return None
         from rfstage.files.touchstone import read_load
 
-        load = read_load(path.parent / values["file"])
+        load = read_load(file)
         if not load.reaches(carrier):
-            problems.append(f"{path}: load.file: {load.name} does not reach the carrier of {exact_text(carrier, 'Hz')}")
+            problems.append(
+                f"{path}: load.file: {plain(load.name)} does not reach the carrier of {exact_text(carrier, 'Hz')}"
+            )
         return load
     if "impedance" in values:
         return SeriesLoad(values["impedance"], carrier)

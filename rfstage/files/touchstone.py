@@ -17,6 +17,8 @@ from numpy.typing import NDArray
 
 from rfstage.designs.design import Design
 from rfstage.errors import FileError
+from rfstage.fields import plain
+from rfstage.files.tables import unreadable
 from rfstage.ladder import Ladder
 from rfstage.load import MeasuredLoad
 from rfstage.quantity import exact_complex, exact_text, show
@@ -49,13 +51,14 @@ def read_load(path: str | Path) -> MeasuredLoad:
 
 def read_network(path: Path, *, ports: int) -> Any:
     """Return scikit-rf's network of a Touchstone file with this many ports; errors as `read_load`."""
-    import skrf
-
+    name = plain(path)
     try:
         raw = path.read_bytes()
     except OSError as error:
-        raise FileError(f"{path}: can't be read ({error.strerror})") from None
-    text = _checked(raw.decode("utf-8", errors="replace").lstrip("\ufeff"), path, ports)
+        raise FileError(unreadable(name, error)) from None
+    text = _checked(raw.decode("utf-8", errors="replace").lstrip("\ufeff"), name, ports)
+    import skrf
+
     stream = io.StringIO(text)
     stream.name = f"load.s{ports}p"
     try:
@@ -63,14 +66,14 @@ def read_network(path: Path, *, ports: int) -> Any:
         with warnings.catch_warnings():
             warnings.simplefilter("ignore")  # of frequencies that fall: the load itself refuses those
             network.read_touchstone(stream)
-    except (ValueError, IndexError, KeyError, TypeError, AttributeError, NotImplementedError, EOFError) as error:
-        raise FileError(f"{path}: is not a Touchstone file that can be read ({error})") from None
+    except (ValueError, IndexError, KeyError, TypeError, AttributeError, NotImplementedError, EOFError):
+        raise FileError(f"{name}: is not a Touchstone file that can be read") from None
     if network.nports != ports:
-        raise FileError(f"{path}: has {network.nports} ports; wanted {ports}")
+        raise FileError(f"{name}: has {network.nports} ports; wanted {ports}")
     return network
 
 
-def _checked(text: str, path: Path, ports: int) -> str:
+def _checked(text: str, name: str, ports: int) -> str:
     """Return the text with its option line in the usual order, or say what line is wrong."""
     out: list[str] = []
     option_seen = False
@@ -81,38 +84,44 @@ def _checked(text: str, path: Path, ports: int) -> str:
             continue
         if body.startswith("#"):
             if not option_seen:
-                out.append(_option_line(body, path, count))
+                out.append(_option_line(body, name, count))
             option_seen = True
         elif body.startswith("["):
             out.append(body)
         else:
-            numbers += _count_numbers(body, path, count)
+            columns = _count_numbers(body, name, count)
+            if ports == 1 and columns != 3:
+                raise FileError(
+                    f"{name}: line {count} has {columns} columns; a one-port has 3, a frequency and two numbers, so "
+                    + ("a row is cut" if columns < 3 else "the file is no one-port")
+                )
+            numbers += columns
             out.append(body)
     if not option_seen:
-        raise FileError(f"{path}: is not a Touchstone file: it has no option line (such as # MHz S RI R 50)")
+        raise FileError(f"{name}: is not a Touchstone file: it has no option line (such as # MHz S RI R 50)")
     row = 1 + 2 * ports**2
     if numbers == 0 or numbers % row:
         raise FileError(
-            f"{path}: holds {numbers} numbers; a {ports}-port has {row} for each frequency, so a row is cut "
+            f"{name}: holds {numbers} numbers; a {ports}-port has {row} for each frequency, so a row is cut "
             "or the file has another number of ports"
         )
     return "\n".join(out) + "\n"
 
 
-def _count_numbers(body: str, path: Path, line: int) -> int:
+def _count_numbers(body: str, name: str, line: int) -> int:
     words = body.split()
     for word in words:
         try:
             value = float(word)
         except ValueError:
             hint = "; write a decimal point, not a comma" if "," in word else ""
-            raise FileError(f"{path}: line {line}: {word[:40]!r} is not a number{hint}") from None
+            raise FileError(f"{name}: line {line}: {word[:40]!r} is not a number{hint}") from None
         if not math.isfinite(value):
-            raise FileError(f"{path}: line {line}: {word!r} is not a finite number")
+            raise FileError(f"{name}: line {line}: {word!r} is not a finite number")
     return len(words)
 
 
-def _option_line(body: str, path: Path, line: int) -> str:
+def _option_line(body: str, name: str, line: int) -> str:
     words = body[1:].lower().split()
     unit, parameter, form, resistance = "ghz", "s", "ma", "50"
     k = 0
@@ -132,9 +141,9 @@ def _option_line(body: str, path: Path, line: int) -> str:
             except ValueError:
                 good = False
             if not good:
-                raise FileError(f"{path}: line {line}: reference resistance {resistance!r}; wanted above 0 ohm")
+                raise FileError(f"{name}: line {line}: reference resistance {resistance!r}; wanted above 0 ohm")
         else:
-            raise FileError(f"{path}: line {line}: {word!r} is not known in an option line (such as # MHz S RI R 50)")
+            raise FileError(f"{name}: line {line}: {word!r} is not known in an option line (such as # MHz S RI R 50)")
         k += 1
     return f"# {unit} {parameter} {form} r {resistance}"
 

@@ -6,6 +6,7 @@ cut in a pipe, and a page reads the same with and without colour.
 
 from __future__ import annotations
 
+import io
 import os
 import re
 import shutil
@@ -143,10 +144,15 @@ def _shows(encoding: str | None, sample: str) -> bool:
 
 
 def print_page(lines: Sequence[Text], *, plain: bool, stream: IO[str] | None = None) -> None:
-    """Print a page; colour only on a terminal that wants it."""
+    """Print a page in one go; colour only on a terminal that wants it.
+
+    It is drawn aside first: rich ends the program itself when a reader goes away.
+    """
     target = stream or sys.stdout
+    drawn = io.StringIO()
     console = Console(
-        file=target,
+        file=drawn,
+        force_terminal=Console(file=target).is_terminal,
         no_color=True if plain or "NO_COLOR" in os.environ else None,
         highlight=False,
         markup=False,
@@ -155,3 +161,4 @@ def print_page(lines: Sequence[Text], *, plain: bool, stream: IO[str] | None = N
         color_system=None if plain else "auto",
     )
     console.print(Text("\n").join(lines), soft_wrap=True)
+    target.write(drawn.getvalue())

@@ -4,7 +4,7 @@
 
     Figures          dc current, load powers and peak voltage, at one order number and at half of it
     voltage_beyond   a resonance above the orders solved moves none of these, until it is among them
-    samples_covered  a pulse between two samples has no width at all
+    too_narrow       a pulse between two samples has no width at all
 """
 
 from __future__ import annotations
@@ -26,11 +26,11 @@ from rfstage.steady.state import OrdersChange
 WATCHED = 10  # orders whose load power is watched
 COUNTED = 1e-8  # of the carrier's power: harmonics below −80 dBc do not decide the orders
 LEAST_SAMPLES = 6  # of the cycle, that a pulse must cover
-FOOT = 8.0  # softnesses below the threshold, where the foot of the current is down to e^−8
+FOOT = 8.0  # softnesses below the crest, where the pulse of a drive that hardly reaches the threshold is e^−8
 
 
 class Figures(NamedTuple):
-    """What decides whether the orders suffice: dc current [A], load powers of the first orders [W], peak voltage [V]."""
+    """What decides whether orders suffice: dc current [A], load powers of the first orders [W], peak voltage [V]."""
 
     dc_current: float
     load_powers: Array
@@ -98,24 +98,28 @@ def voltage_beyond(stage: Stage, impedance: Complex, currents: Complex, volts: A
     1.0
     """
     solved, known = currents.shape[-1], impedance.shape[-1]
-    ahead, orders = impedance[..., solved:], np.arange(solved + 1, known + 1)
+    ahead, orders = impedance[..., solved:], np.arange(solved + 1.0, known + 1)
     if stage.device.junction_capacitance is not None:
         capacitance = junction_charge(Law.of([stage.device]), volts)[1].mean()
         ahead = ahead / (1 + 2j * math.pi * stage.carrier * capacitance * orders * ahead)
     largest = np.abs(currents[..., solved - solved // 4 :]).max(axis=-1, keepdims=True)
-    return float(np.linalg.norm(ahead * largest * (solved / orders) ** 2))
+    fallen = largest * (solved / orders) ** 2
+    return float(np.linalg.norm(ahead * fallen))
 
 
-def samples_covered(circuit: Circuit, solution: Solution) -> NDArray[np.int64]:
-    """Return how many samples of the cycle see the current pulse, shape (S,); of a pair the narrower one's.
+def too_narrow(circuit: Circuit, solution: Solution, amperes: Array) -> NDArray[np.bool_]:
+    """Return whether a current pulse covers too few samples of the cycle to mean anything, shape (S,).
 
-    The pulse begins where the foot of a soft threshold does, so that the rounded pulse of a device that stays below
-    its threshold has a width too.
+    ``amperes`` are the devices' currents [A], shape (S, M), or (S, 2, M): of a pair the narrower pulse counts. It is
+    measured at the threshold, and lower where a soft one is hardly reached or not at all: the foot's rounded pulse
+    has a width too.
     """
-    driven = circuit.driven
-    drive = driven.overdrive
+    drive = circuit.driven.overdrive
     if circuit.law.parts.mu:
-        drive = driven.effective_drive(voltage(circuit, solution.unknowns))
-    crest = np.minimum(drive.max(axis=-1, keepdims=True), 0.0)
-    covered = np.count_nonzero(drive > crest - FOOT * circuit.law.softness, axis=-1)
-    return np.asarray(covered).reshape(drive.shape[0], -1).min(axis=1)
+        drive = circuit.driven.effective_drive(voltage(circuit, solution.unknowns))
+    level = np.minimum(drive.max(axis=-1, keepdims=True) - FOOT * circuit.law.softness, 0.0)
+    covered = (drive > level).sum(axis=-1)
+    narrow: NDArray[np.bool_] = (covered < LEAST_SAMPLES).reshape(len(drive), -1).any(axis=1)
+    if narrow.any():
+        narrow &= amperes.reshape(len(drive), -1).max(axis=1) > 0
+    return narrow

@@ -9,12 +9,12 @@ import numpy as np
 from rfstage.errors import ConvergenceError, OutOfRangeError
 from rfstage.stage import Stage
 from rfstage.steady.circuit import Circuit, check
-from rfstage.steady.enough import LEAST_SAMPLES, Figures, samples_covered
+from rfstage.steady.enough import LEAST_SAMPLES, Figures, too_narrow
 from rfstage.steady.network import Complex
-from rfstage.steady.report import LISTED, Cycle
+from rfstage.steady.report import LISTED
 from rfstage.steady.single import Singles, System
-from rfstage.steady.solve import FAILED, Solution, solve
-from rfstage.steady.state import ORDERS_VOLTAGE, OrdersChange, SteadyState
+from rfstage.steady.solve import FAILED, solve
+from rfstage.steady.state import ORDERS_VOLTAGE, SteadyState
 
 FEWEST, MOST_CHOSEN, MOST = 10, 256, 1024  # orders: that may be asked, that the choice goes to, that may be asked
 FIRST_CHOSEN = 16
@@ -40,8 +40,8 @@ def settle(
         A solution of a similar stage, as the first guess. It saves time and changes nothing else, since
         there is one solution only.
     listed : int
-        Harmonics to list at least, 1 to 512. Above 10 they want twice as many orders; these are chosen
-        accordingly, beyond 256 if need be.
+        The order to which harmonics are listed at least, 1 to 512. Twice as many orders are needed above 10; they
+        are chosen accordingly, beyond 256 if need be.
 
     Returns
     -------
@@ -83,13 +83,11 @@ def settle(
     if not 1 <= listed <= MOST // 2:
         raise OutOfRangeError("listed", listed, f"from 1 to {MOST // 2}")
     if orders is None:
-        levels = _doubled(FIRST_CHOSEN, MOST_CHOSEN)
-        while levels[-1] < 2 * listed:
-            levels.append(2 * levels[-1])
+        levels = _doubled(FIRST_CHOSEN, max(MOST_CHOSEN, 1 << (2 * listed - 1).bit_length()))
     else:
         _check_orders(orders)
         if listed > max(LISTED, orders // 2):
-            raise OutOfRangeError("orders", orders, f"at least {2 * listed} where {listed} harmonics are to be listed")
+            raise OutOfRangeError("orders", orders, f"at least {2 * listed} for harmonics to the order {listed}")
         levels = [*_levels(orders // 2), orders]
     system = _system([stage], levels[-1])
     before: Figures | None = None
@@ -106,11 +104,18 @@ def settle(
         cycle = system.cycle(circuit, solution)
         figures = system.figures(cycle)
         change = None if before is None else figures.change_from(before)
-        enough = orders is None and level >= 2 * listed and change is not None and change.settled
-        if enough and _nothing_hidden(system, circuit, cycle, solution):
-            break
         before = figures
-    return _states(system, circuit, solution, [""], change)[0]
+        chosen = orders is None and level >= 2 * listed and change is not None and change.settled
+        if chosen and system.voltage_beyond(cycle) >= ORDERS_VOLTAGE * stage.supply.voltage:
+            chosen = False  # a resonance above these orders, which none of the figures has felt yet
+        if chosen or level == levels[-1]:
+            narrow = too_narrow(circuit, solution, cycle.amperes)
+            if not narrow.any():
+                break
+    state = system.states(cycle, solution, change)[0]
+    if narrow.any():
+        raise _too_narrow("the current pulse", state, circuit)
+    return state
 
 
 def settle_many(stages: Sequence[Stage], *, orders: int, start: SteadyState | None = None) -> tuple[SteadyState, ...]:
@@ -186,27 +191,10 @@ def _settle_block(
     if FAILED in solution.methods:
         row = solution.methods.index(FAILED)
         raise _not_reached(f"the steady state of stage {places[row] + 1}", float(solution.merit[row]))
-    return _states(system, circuit, solution, [f" of stage {place + 1}" for place in places], None)
-
-
-def _nothing_hidden(system: System, circuit: Circuit, cycle: Cycle, solution: Solution) -> bool:
-    """Whether no resonance waits among the orders not solved, and the pulse does not lie between the samples."""
-    resolved = bool((samples_covered(circuit, solution) >= LEAST_SAMPLES).all())
-    return resolved and system.voltage_beyond(cycle) < ORDERS_VOLTAGE * float(circuit.supply.flat[0])
-
-
-def _states(
-    system: System, circuit: Circuit, solution: Solution, whose: Sequence[str], change: OrdersChange | None
-) -> list[SteadyState]:
-    """Return the steady states; a pulse of too few samples is refused, since its figures would mean nothing."""
-    states = system.states(system.cycle(circuit, solution), solution, change)
-    for row in np.flatnonzero(samples_covered(circuit, solution) < LEAST_SAMPLES):
-        if states[row].peak_current > 0:
-            raise ConvergenceError(
-                f"the current pulse{whose[row]} is too narrow: its conduction angle is "
-                f"{states[row].conduction_angle_deg:.3g}°, and {circuit.orders} orders resolve no less than "
-                f"{360 * LEAST_SAMPLES / circuit.samples:.3g}°"
-            )
+    cycle = system.cycle(circuit, solution)
+    states = system.states(cycle, solution, None)
+    for thin in np.flatnonzero(too_narrow(circuit, solution, cycle.amperes)):
+        raise _too_narrow(f"the current pulse of stage {places[int(thin)] + 1}", states[thin], circuit)
     return states
 
 
@@ -238,6 +226,14 @@ def _not_reached(what: str, residual: float) -> ConvergenceError:
     return ConvergenceError(
         f"{what} was not reached: a residual of {residual:.2g} of the supply voltage is left (is the knee voltage far "
         "below 0.1 % of the supply, or a part lossless?)"
+    )
+
+
+def _too_narrow(what: str, state: SteadyState, circuit: Circuit) -> ConvergenceError:
+    least = 360 * LEAST_SAMPLES / circuit.samples
+    return ConvergenceError(
+        f"{what} is too narrow: its conduction angle is {state.conduction_angle_deg:.3g}°, and {circuit.orders} orders "
+        f"resolve no less than {least:.3g}°"
     )
 
 
