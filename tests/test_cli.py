@@ -495,19 +495,25 @@ def abouts():
     return {name: importlib.import_module(f"rfstage.cli.{name}").ABOUT for name in COMMANDS}
 
 
+def worked_lines():
+    texts = [about.replace("\\\n", " ") for about in abouts().values()]
+    return [" ".join(line.split()) for text in texts for line in text.splitlines() if line.startswith("  rfstage ")]
+
+
 def test_descriptions_and_worked_lines_fit_eighty_columns():
     for about in (*abouts().values(), overview()):
         assert max(map(len, about.splitlines())) <= 78
 
 
-@pytest.mark.parametrize(
-    "line",
-    [line.strip() for about in abouts().values() for line in about.splitlines() if line.startswith("  rfstage ")],
-)
+@pytest.mark.parametrize("line", worked_lines())
 def test_every_worked_line_of_the_help_runs_from_the_project(line):
     done = shell(line.replace("rfstage", RFSTAGE, 1))
     assert done.stderr == ""
     assert done.returncode == 0
+
+
+def test_every_command_has_a_worked_line():
+    assert {line.split()[1] for line in worked_lines()} == set(COMMANDS)
 
 
 def test_only_what_writes_files_offers_to_overwrite(capsys):

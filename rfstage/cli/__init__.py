@@ -1,6 +1,7 @@
 """The terminal program: parse, call, render. Results on stdout, messages on stderr.
 
-Exit status: 0 done; 1 done, and a check that was asked for failed; 2 bad input or an impossible request.
+Exit status: 0 done; 1 done, and a check that was asked for failed; 2 bad input, an impossible request, or an output
+that can't be written.
 """
 
 from __future__ import annotations
@@ -110,7 +111,8 @@ def overview() -> str:
         "",
         "  rfstage design --carrier 7.1MHz --power 10W --angle 120deg --supply 13.8V",
         "",
-        "exit status: 0 done; 1 done, and a check that was asked for failed; 2 bad input",
+        "exit status: 0 done; 1 done, and a check that was asked for failed;",
+        "2 bad input, or no way to write the output",
     ]
     return "\n".join(lines)
 

@@ -77,8 +77,9 @@ def run(words: Sequence[str]) -> int:
         contents.append((wanted["save"], stage_text(made.stage, Path(wanted["save"]).parent)))
     if "spice" in wanted:
         from rfstage.files.spice import spice_text
+        from rfstage.files.stage import rounded
 
-        contents.append((wanted["spice"], spice_text(made.stage)))
+        contents.append((wanted["spice"], spice_text(rounded(made.stage))))
     write_files(contents, overwrite=found.overwrite, inputs=inputs)
 
     def record() -> dict[str, Any]:

@@ -17,8 +17,8 @@ if TYPE_CHECKING:
     from rfstage.report.page import Look
 
 ABOUT = """\
-One network between any two impedances: it turns the load into what the device
-should see, without choke, blocking capacitor or output capacitance.
+One network between any two impedances: it turns the load into what the
+device should see, without choke, blocking capacitor or output capacitance.
 
   rfstage match 1000 50 --carrier 3.5MHz --network pi --input-q 12
   rfstage match 12+j3 50-j20 --carrier 14.2MHz --network l

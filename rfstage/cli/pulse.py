@@ -15,8 +15,8 @@ if TYPE_CHECKING:
     from rfstage.report.page import Look
 
 ABOUT = """\
-Fourier coefficients of the current pulse of a device that conducts for part of
-each cycle.
+Fourier coefficients of the current pulse of a device that conducts for part
+of each cycle.
 
   rfstage pulse 120deg --orders 5
 """

@@ -14,8 +14,8 @@ if TYPE_CHECKING:
     from rfstage.report.page import Look
 
 ABOUT = """\
-The steady state of a stage as it is built: what the meters read, what gets hot,
-what each part bears, the harmonics, and how far to trust it all.
+The steady state of a stage as it is built: what the meters read, what gets
+hot, what each part bears, the harmonics, and how far to trust it all.
 
   rfstage settle examples/beacon-as-built.toml
 """

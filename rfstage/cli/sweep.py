@@ -25,7 +25,8 @@ drive.amplitude, supply.voltage, any number of the stage file; or the load:
 circles of standing-wave ratio.
 
   rfstage sweep examples/beacon-as-built.toml --of C1 --from 7nF --to 11nF
-  rfstage sweep examples/beacon-as-built.toml --of load --from 1 --to 3 --points 5
+  rfstage sweep examples/beacon-as-built.toml --of load --from 1 --to 3 \\
+      --points 5
 """
 _POINTS = Field("", "points", "count", "", 2, 100_000, False, "--points", "how many points, evenly spaced [41]")
 ZERO_ALLOWED = ("lead_inductance", "self_capacitance", "choke_resistance", "knee_resistance", "series_resistance")
@@ -37,12 +38,11 @@ def parser() -> Parser:
     """Return the command's parser."""
     made = Parser("sweep", ABOUT)
     made.positional("stage", "STAGE.toml", "stage file")
-    along = made.add_argument_group("sweep")
+    along = made.add_fields("sweep", (_POINTS,))
     along.add_argument("--of", metavar="PATH", required=True, help="the value to move")
     along.add_argument("--from", dest="first", metavar="X", required=True, help="where it begins, with its unit")
     along.add_argument("--to", dest="last", metavar="Y", required=True, help="where it ends")
     along.add_argument("--csv", metavar="FILE", help="write the points as a table")
-    made.add_fields("points", (_POINTS,))
     return made
 
 

@@ -49,7 +49,7 @@ class Parser(argparse.ArgumentParser):
         """Add an argument that is known by its place."""
         self._given.add_argument(name, metavar=metavar, help=about, nargs="?" if optional else None)
 
-    def add_fields(self, title: str, fields: Sequence[Field]) -> None:
+    def add_fields(self, title: str, fields: Sequence[Field]) -> argparse._ArgumentGroup:
         """Add one option for each field; its text is read later, so that all errors come at once."""
         group = self.add_argument_group(title)
         for field in fields:
@@ -62,6 +62,7 @@ class Parser(argparse.ArgumentParser):
                     help=field.help.replace("%", "%%"),
                 )
                 self._fields.append(field)
+        return group
 
     def read(self, words: Sequence[str]) -> argparse.Namespace:
         """Return the words by name, as texts; ``--help`` prints the help and ends the program.

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 import json
 import math
 import os
@@ -104,12 +105,13 @@ _TABLES = ("device", "drive", "supply", "branch", "load", "asked", "limit")
 
 
 def stage_text(stage: Stage, folder: Path) -> str:
-    """Return a stage as TOML; a load file is named as seen from ``folder``."""
+    """Return a stage as TOML, `rounded`; a load file is named as seen from ``folder``."""
+    stage = rounded(stage)
     device, supply = stage.device, stage.supply
     lines = [
         f'format = "{STAGE_FORMAT}"',
         f"version = {VERSION}",
-        f'carrier = "{_number(stage.carrier, "Hz")}"',
+        f'carrier = "{exact_text(stage.carrier, "Hz")}"',
         "",
         "[device]",
         f'family = "{device.family}"',
@@ -131,16 +133,28 @@ def stage_text(stage: Stage, folder: Path) -> str:
     if stage.limit_rule or stage.limit_load:
         lines += ["", "[limit]"]
         lines += [f'rule = "{stage.limit_rule}"'] if stage.limit_rule else []
-        lines += [f'load = "{_number(stage.limit_load, "ohm")}"'] if stage.limit_load else []
+        lines += [f'load = "{exact_text(stage.limit_load, "ohm")}"'] if stage.limit_load else []
     return "\n".join(lines) + "\n"
 
 
-def _rounded(value: float) -> float:
-    return float(f"{value:.{DIGITS}g}")
+def rounded(stage: Stage) -> Stage:
+    """Return the stage as its file has it: every number to twelve significant digits."""
+    made: Stage = _rounded(stage)
+    return made
 
 
-def _number(value: Any, unit: str) -> str:
-    return exact_text(_rounded(float(value)), unit)
+def _rounded(value: Any) -> Any:
+    if isinstance(value, float):
+        return float(f"{value:.{DIGITS}g}")
+    if isinstance(value, complex):
+        return complex(_rounded(value.real), _rounded(value.imag))
+    if isinstance(value, tuple):
+        return tuple(_rounded(item) for item in value)
+    if isinstance(value, dict):
+        return {key: _rounded(item) for key, item in value.items()}
+    if isinstance(value, MeasuredLoad) or not dataclasses.is_dataclass(value) or isinstance(value, type):
+        return value
+    return dataclasses.replace(value, **{f.name: _rounded(getattr(value, f.name)) for f in dataclasses.fields(value)})
 
 
 def _quoted(text: str) -> str:
@@ -152,7 +166,7 @@ def _written(field: Field, value: Any) -> str:
         return _quoted(value)
     if field.kind == "q" and math.isinf(value):
         return f'"{LOSSLESS}"'
-    return f'"{_number(value, field.unit)}"' if field.unit else repr(_rounded(value))
+    return f'"{exact_text(value, field.unit)}"' if field.unit else repr(value)
 
 
 def _lines(fields: tuple[Field, ...], source: object) -> list[str]:
@@ -170,21 +184,21 @@ def _branch_lines(branch: Branch, data: PartData) -> list[str]:
         f'name = "{branch.name}"',
         f'place = "{branch.place}"',
         f'kind = "{branch.kind}"',
-        f'value = "{_number(branch.value, VALUE_UNIT[branch.kind])}"',
+        f'value = "{exact_text(float(branch.value), VALUE_UNIT[branch.kind])}"',
     ]
     if branch.q is not None:
-        lines.append(f"q = {_rounded(float(branch.q))!r}")
+        lines.append(f"q = {float(branch.q)!r}")
     if branch.series_resistance is not None:
-        lines.append(f'series_resistance = "{_number(branch.series_resistance, "ohm")}"')
+        lines.append(f'series_resistance = "{exact_text(float(branch.series_resistance), "ohm")}"')
     if branch.lead_inductance != 0:
-        lines.append(f'lead_inductance = "{_number(branch.lead_inductance, "H")}"')
+        lines.append(f'lead_inductance = "{exact_text(float(branch.lead_inductance), "H")}"')
     if branch.self_capacitance != 0:
-        lines.append(f'self_capacitance = "{_number(branch.self_capacitance, "F")}"')
+        lines.append(f'self_capacitance = "{exact_text(float(branch.self_capacitance), "F")}"')
     if data.trim is not None:
         unit = VALUE_UNIT[branch.kind]
-        lines.append("trim = [" + ", ".join(f'"{_number(v, unit)}"' for v in data.trim) + "]")
+        lines.append("trim = [" + ", ".join(f'"{exact_text(v, unit)}"' for v in data.trim) + "]")
     if data.tolerance is not None:
-        lines.append(f'tolerance = "{_number(data.tolerance, "%")}"')
+        lines.append(f'tolerance = "{exact_text(data.tolerance, "%")}"')
     if data.winding is not None:
         kinds = {field.name: field for field in _WINDING}
         lines.append("winding = { " + ", ".join(f"{k} = {_written(kinds[k], v)}" for k, v in data.winding) + " }")
@@ -196,8 +210,7 @@ def _load_lines(load: Load, folder: Path) -> list[str]:
         relative = Path(os.path.relpath(load.name, folder)).as_posix()
         return [f"file = {_quoted(relative)}"]
     assert isinstance(load, SeriesLoad)
-    impedance = complex(_rounded(load.at_carrier.real), _rounded(load.at_carrier.imag))
-    return [f'impedance = "{exact_complex(impedance)} ohm"']
+    return [f'impedance = "{exact_complex(load.at_carrier)} ohm"']
 
 
 def load_stage(path: str | Path) -> Stage:
