@@ -27,7 +27,7 @@ from rfstage.load import SeriesLoad
 from rfstage.stage import Stage
 from rfstage.steady import SteadyState, settle, settle_many
 
-PHASES = 48  # of each circle of standing-wave ratio
+PHASES = 36  # of each circle of standing-wave ratio
 TOGETHER = 64  # orders: up to here a batch from the middle is fastest, beyond it a chain from point to point
 CHUNK = 10  # points solved between two reports of progress
 LOAD = "load"

@@ -28,7 +28,9 @@ circles of standing-wave ratio.
   rfstage sweep examples/beacon-as-built.toml --of load --from 1 --to 3 \\
       --points 5
 """
-_POINTS = Field("", "points", "count", "", 2, 100_000, False, "--points", "how many points, evenly spaced [41]")
+_POINTS = Field(
+    "", "points", "count", "", 2, 100_000, False, "--points", "how many points, evenly spaced [41; 10 along load]"
+)
 ZERO_ALLOWED = ("lead_inductance", "self_capacitance", "choke_resistance", "knee_resistance", "series_resistance")
 FAR = 1000.0  # a bare number this many times off the value now set is taken for one that wants a prefix
 PATIENCE = 1.0  # s: past it a progress bar shows
@@ -63,7 +65,9 @@ def run(words: Sequence[str]) -> int:
     path = found.of.strip()
     unit = unit_of(stage, path)
     ends = _ends(path, unit, found.first, found.last)
-    values = read_all({**ends, "points": (_POINTS, given(found, (_POINTS,)).get("points", "41"))})
+    values = read_all(
+        {**ends, "points": (_POINTS, given(found, (_POINTS,)).get("points", "10" if path == "load" else "41"))}
+    )
     now = None if path == "load" else fitted_value(stage, path)
     _check_ends(path, now, {name: (field, text, values[name]) for name, (field, text) in ends.items()})
     swept = sweep(stage, path, list(np.linspace(values["first"], values["last"], values["points"])), _progress())

@@ -18,8 +18,7 @@ import math
 
 from rfstage.errors import ImpossibleError
 from rfstage.ladder import Branch
-from rfstage.matching.parts import capacitor, coil, parallel_resistance
-from rfstage.quantity import exact_complex
+from rfstage.matching.parts import capacitor, coil, four_figures, parallel_resistance
 
 
 def l_network(wanted: complex, load: complex, *, carrier: float, high_pass: bool = False) -> tuple[Branch, ...]:
@@ -66,17 +65,13 @@ def l_network(wanted: complex, load: complex, *, carrier: float, high_pass: bool
     name, other = ("l-high-pass", "l") if high_pass else ("l", "l-high-pass")
     if abs(wanted - load) <= 1e-12 * abs(load):
         raise ImpossibleError(
-            f"network {name}: the load already is the wanted {exact_complex(wanted)} ohm, "
+            f"network {name}: the load already is the wanted {four_figures(wanted)} ohm, "
             "so an L has nothing to do; ask for network pi, which also filters"
         )
     raise ImpossibleError(
-        f"network {name}: no such L turns the load of {exact_complex(load)} ohm into "
-        f"{_rounded(wanted)} ohm at the device; try {other} or pi"
+        f"network {name}: no such L turns the load of {four_figures(load)} ohm into "
+        f"{four_figures(wanted)} ohm at the device; try {other} or pi"
     )
-
-
-def _rounded(z: complex) -> str:
-    return exact_complex(complex(float(f"{z.real:.4g}"), float(f"{z.imag:.4g}")))
 
 
 def _shunt_first(wanted: complex, load: complex) -> list[tuple[float, float]]:

@@ -11,10 +11,10 @@ from rfstage.ladder import Branch, Ladder
 from rfstage.load import Load
 from rfstage.matching.exact import behind, close, with_losses
 from rfstage.matching.l import l_network
-from rfstage.matching.parts import parallel_resistance
+from rfstage.matching.parts import four_figures, parallel_resistance
 from rfstage.matching.pi import least_loaded_q, pi_network
 from rfstage.matching.quality import bandwidth, input_side_q, loaded_q
-from rfstage.quantity import exact_complex, exact_text, show
+from rfstage.quantity import exact_text, show
 
 DEFAULT_LOADED_Q = 10.0
 DEFAULT_Q_MARGIN = 2.0
@@ -65,7 +65,7 @@ def solve_network(
         target = complex(-1)
     if not target.real > 0:
         raise ImpossibleError(
-            f"the losses of choke and blocking capacitor alone are more than the {exact_complex(_figures(wanted))} ohm "
+            f"the losses of choke and blocking capacitor alone are more than the {four_figures(wanted)} ohm "
             "asked at the device leave room for; raise tank.blocking, or supply.choke and supply.choke_q"
         )
     try:
@@ -75,7 +75,7 @@ def solve_network(
     except ConvergenceError as error:
         raise ImpossibleError(
             f"network {request.network}: with {_quality('coils', request.coil_q)} and "
-            f"{_quality('capacitors', request.capacitor_q)} no parts show {exact_complex(_figures(wanted))} ohm to "
+            f"{_quality('capacitors', request.capacitor_q)} no parts show {four_figures(wanted)} ohm to "
             f"the device ({error}); raise tank.coil_q and tank.capacitor_q, or lower the loaded Q"
         ) from None
 
@@ -137,7 +137,7 @@ def _solve_pi(
         if asked <= least_loaded_q(target, load):
             raise ImpossibleError(
                 f"tank.loaded_q: behind choke and blocking capacitor a pi has to start from "
-                f"{exact_complex(_figures(target))} ohm and needs a loaded Q above {least_loaded_q(target, load):.4g}; "
+                f"{four_figures(target)} ohm and needs a loaded Q above {least_loaded_q(target, load):.4g}; "
                 f"got {asked:.6g} (a larger tank.blocking or supply.choke brings it down)"
             )
     try:
@@ -200,13 +200,9 @@ def _too_much_capacitance(capacitance: float, wanted: complex, load: complex, ca
     return (
         f"device.output_capacitance: {show(capacitance, 'F')} has {reactance} reactance at "
         f"{exact_text(carrier, 'Hz')}, an input-side Q of {taken:.3g} by itself against "
-        f"{exact_complex(_figures(wanted))} ohm, which is more than this Q leaves; a pi of loaded Q {fits:.3g} or "
+        f"{four_figures(wanted)} ohm, which is more than this Q leaves; a pi of loaded Q {fits:.3g} or "
         f"more would take it in{better}"
     )
-
-
-def _figures(z: complex) -> complex:
-    return complex(float(f"{z.real:.4g}"), float(f"{z.imag:.4g}"))
 
 
 class PartStress(NamedTuple):

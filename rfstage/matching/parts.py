@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 
 from rfstage.ladder import Branch
+from rfstage.quantity import exact_complex
 
 
 def coil(name: str, place: str, reactance: float, carrier: float) -> Branch:
@@ -20,3 +21,8 @@ def capacitor(name: str, place: str, reactance: float, carrier: float) -> Branch
 def parallel_resistance(impedance: complex) -> float:
     """Return the resistance [ohm] of the parallel form of an impedance [ohm]."""
     return abs(impedance) ** 2 / impedance.real
+
+
+def four_figures(impedance: complex) -> str:
+    """Return an impedance [ohm] for a message, each part to four figures."""
+    return exact_complex(complex(float(f"{impedance.real:.4g}"), float(f"{impedance.imag:.4g}")))

@@ -18,8 +18,7 @@ import math
 
 from rfstage.errors import ImpossibleError
 from rfstage.ladder import Branch
-from rfstage.matching.parts import parallel_resistance
-from rfstage.quantity import exact_complex
+from rfstage.matching.parts import four_figures, parallel_resistance
 
 
 def least_loaded_q(wanted: complex, load: complex, *, least_input_q: float = 0.0) -> float:
@@ -88,7 +87,7 @@ def pi_network(
             least = math.sqrt(r1 / r2 - 1)
             raise ImpossibleError(
                 f"tank.input_q: {input_q:.6g} is too low for a pi from {r1:.4g} ohm at the device to "
-                f"{exact_complex(load)} ohm; it must be above {least:.4g}"
+                f"{four_figures(load)} ohm; it must be above {least:.4g}"
             )
         q1, q2 = input_q, math.sqrt(r2 / virtual - 1)
     else:
@@ -97,7 +96,7 @@ def pi_network(
         if loaded_q <= least:
             raise ImpossibleError(
                 f"tank.loaded_q: {loaded_q:.6g} is too low for a pi from {r1:.4g} ohm at the device to "
-                f"{exact_complex(load)} ohm; it must be above {least:.4g}"
+                f"{four_figures(load)} ohm; it must be above {least:.4g}"
             )
         virtual = virtual_resistance(r1, r2, loaded_q=loaded_q)
         q1, q2 = math.sqrt(max(r1 / virtual - 1, 0.0)), math.sqrt(max(r2 / virtual - 1, 0.0))

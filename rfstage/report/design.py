@@ -237,9 +237,7 @@ def _assumed(design: Design, look: Look) -> list[Text]:
     words = "; ".join(
         f"{key} {_assumed_value(key, value, design.settings.exponent)}" for key, value in design.assumed.items()
     )
-    return heading(look, "Assumed, common practice or stand-ins for the device") + note(
-        look, words
-    )
+    return heading(look, "Assumed, common practice or stand-ins for the device") + note(look, words)
 
 
 def _assumed_value(key: str, value: object, exponent: float) -> str:
