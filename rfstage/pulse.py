@@ -21,7 +21,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from rfstage.errors import OutOfRangeError
 
-_SERIES_TERMS = 14  # of the power series used below one radian: the next term is under 1e-17
+_ODD_TERMS, _CUBIC_TERMS = 10, 13  # of the power series used below one radian: the next terms are under 1e-17
 
 
 def operating_class(conduction_angle_deg: float) -> str:
@@ -122,7 +122,7 @@ def _by_series(t: NDArray[np.float64], sine_half: NDArray[np.float64]) -> tuple[
 def _odd_series(square: NDArray[np.float64]) -> NDArray[np.float64]:
     """Return 3 (sin t − t cos t)/t³ = Σ (−1)^k 3 (2k+2)/(2k+3)! t^{2k}."""
     total = np.zeros_like(square)
-    for k in range(_SERIES_TERMS - 1, -1, -1):
+    for k in range(_ODD_TERMS - 1, -1, -1):
         total = 3.0 * (2 * k + 2) / math.factorial(2 * k + 3) - square * total
     return total
 
@@ -130,7 +130,7 @@ def _odd_series(square: NDArray[np.float64]) -> NDArray[np.float64]:
 def _cubic_series(square: NDArray[np.float64]) -> NDArray[np.float64]:
     """Return 6 (u − sin u)/u³ = Σ (−1)^k 6/(2k+3)! u^{2k}."""
     total = np.zeros_like(square)
-    for k in range(_SERIES_TERMS - 1, -1, -1):
+    for k in range(_CUBIC_TERMS - 1, -1, -1):
         total = 6.0 / math.factorial(2 * k + 3) - square * total
     return total
 
