@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from typing import NamedTuple
 
-from rfstage.quantity import show
+from rfstage.quantity import show, show_orders
 
 DC_SHOCK = 60.0  # V: above it direct current is treated as dangerous to touch (common practice, no source)
 RF_BURN = 30.0  # V peak: RF above about this burns skin on contact (common practice, no source)
@@ -191,6 +192,19 @@ def about_low_resistance(resistance: float, input_capacitance: float | None, car
     else:
         return []
     return [Caution("low resistance", f"{why}: use a higher supply, two devices, or a wide-band transformer.")]
+
+
+def about_load_file(continued: Sequence[int]) -> list[Caution]:
+    """Return what was done at the harmonic orders that a measured load does not reach."""
+    if not continued:
+        return []
+    return [
+        Caution(
+            "load file",
+            f"the measured load does not reach orders {show_orders(continued)}; it was continued from its nearest end as "
+            "a series resistance with a coil or capacitor, so those levels are estimates.",
+        )
+    ]
 
 
 def about_tank_loss(efficiency: float, loaded_q: float) -> list[Caution]:

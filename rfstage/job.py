@@ -47,6 +47,8 @@ class Job:
     threshold: float | None = None
     transfer_factor: float | None = None
     amplification_factor: float | None = None
+    knee_voltage: float | None = None
+    knee_resistance: float | None = None
     max_voltage: float | None = None
     max_current: float | None = None
     max_dissipation: float | None = None

@@ -106,6 +106,10 @@ class MeasuredLoad:
                 "a passive load has more than 0 (is the analyser's calibration good?)"
             )
 
+    def beyond(self, carrier: float, highest_order: int) -> tuple[int, ...]:
+        """Return the harmonic orders from 2 of a carrier [Hz] at which the load is continued beyond its table."""
+        return tuple(n for n in range(2, highest_order + 1) if not self.reaches(n * carrier))
+
     def reaches(self, frequency: float) -> bool:
         """Return whether the table covers this frequency [Hz]."""
         return bool(self.frequencies[0] <= frequency <= self.frequencies[-1])

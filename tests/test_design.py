@@ -459,7 +459,7 @@ absurd = st.fixed_dictionaries(
 )
 
 
-@settings(max_examples=200, deadline=None, suppress_health_check=list(HealthCheck))
+@settings(max_examples=1500, deadline=None, suppress_health_check=list(HealthCheck))
 @given(job=sane)
 def test_any_sane_job_ends_in_a_sound_design_or_in_an_error_for_people(job):
     try:
@@ -469,7 +469,7 @@ def test_any_sane_job_ends_in_a_sound_design_or_in_an_error_for_people(job):
     assert broken_invariants(d) == []
 
 
-@settings(max_examples=200, deadline=None, suppress_health_check=list(HealthCheck))
+@settings(max_examples=1500, deadline=None, suppress_health_check=list(HealthCheck))
 @given(job=absurd)
 @example(job={"carrier": 2.45e7, "power": 10428.7, "conduction_angle": 1.2e-7, "supply": 351.0})
 @example(

@@ -28,6 +28,7 @@ FLOORS = {
     "matching": 2.0,
     "cautions": 2.0,
     "devicelaw": 2.1,
+    "datasheet": 2.1,
     "harmonics": 2.5,
     "stage": 3.0,
     "job": 3.0,

@@ -207,3 +207,16 @@ def test_bad_sweeps_are_one_clear_line(run, tmp_path, tower, words, said):
     assert done.stdout == ""
     assert said in done.stderr
     assert "Traceback" not in done.stderr
+
+
+@pytest.mark.parametrize("name", ["lantern", "gallery", "tower"])
+def test_each_example_has_a_tuning_curve_with_its_three_points_apart(examples, name):
+    stage = design(load_job(examples / f"{name}.toml")).stage
+    centre = fitted_value(stage, "C1")
+    found = sweep(stage, "C1", np.linspace(0.8 * centre, 1.25 * centre, 31))
+    assert found.dip is not None
+    assert found.efficiency_peak is not None
+    assert found.output_peak is not None
+    assert found.dip.figure < settle(with_value(stage, "C1", 0.8 * centre)).dc_current
+    # common practice, no source: output, efficiency and dip follow one another as the capacitor is closed
+    assert found.output_peak.value <= found.efficiency_peak.value < found.dip.value

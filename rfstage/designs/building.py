@@ -104,8 +104,8 @@ def _stage(
         exponent=settings.exponent,
         threshold=threshold,
         threshold_softness=_rounded(SOFTNESS * peak_above),
-        knee_voltage=_rounded(knee_voltage),
-        knee_resistance=_rounded(knee_resistance),
+        knee_voltage=_rounded(knee_voltage) if job.knee_voltage is None else job.knee_voltage,
+        knee_resistance=_rounded(knee_resistance) if job.knee_resistance is None else job.knee_resistance,
         amplification_factor=job.amplification_factor,
         output_capacitance=settings.output_capacitance,
         reverse_conduction=_reverse(settings.family, point),
@@ -113,8 +113,10 @@ def _stage(
         max_current=job.max_current,
         max_dissipation=job.max_dissipation,
     )
-    for name in ("threshold_softness", "knee_voltage", "knee_resistance"):
-        stand_ins[f"device.{name}"] = getattr(device, name)
+    stand_ins["device.threshold_softness"] = device.threshold_softness
+    for name in ("knee_voltage", "knee_resistance"):
+        if getattr(job, name) is None:
+            stand_ins[f"device.{name}"] = getattr(device, name)
     if device.reverse_conduction is not None:
         stand_ins["device.reverse_conduction"] = device.reverse_conduction.conductance
     stage = Stage(

@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from rfstage.cautions import (
     Caution,
     about_dip,
+    about_load_file,
     about_low_resistance,
     about_resonance,
     about_tank_loss,
@@ -196,11 +197,8 @@ def _assembled(
         output_power=job.power,
         limit=settings.limit,
     )
-    continued = tuple(
-        n
-        for n in shown_orders
-        if isinstance(settings.load, MeasuredLoad) and not settings.load.reaches(n * job.carrier)
-    )
+    load = settings.load
+    continued = load.beyond(job.carrier, settings.highest_order) if isinstance(load, MeasuredLoad) else ()
     return Design(
         job=job,
         settings=settings,
@@ -253,14 +251,7 @@ def _cautions(
     found += about_tank_loss(tank.efficiency, tank.loaded_q)
     found += about_low_resistance(point.load_resistance, _input_capacitance(made.circuit), job.carrier)
     found += about_resonance(strongest_resonance_below(ladder.branches, settings.load, job.carrier))
-    if continued:
-        found.append(
-            Caution(
-                "load file",
-                f"the measured load does not reach orders {show_orders(continued)}; it was continued from its "
-                "nearest end as a series resistance with a coil or capacitor, so those levels are estimates.",
-            )
-        )
+    found += about_load_file(continued)
     strayed = [h.order for h in levels if h.strays_decide]
     if strayed:
         orders = "every order shown" if len(strayed) == len(levels) else f"orders {show_orders(strayed)}"

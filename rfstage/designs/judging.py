@@ -6,14 +6,15 @@ from collections.abc import Sequence
 from dataclasses import replace
 from typing import NamedTuple
 
-from rfstage.cautions import Caution, about_settled, safety
+from rfstage.cautions import Caution, about_load_file, about_settled, safety
 from rfstage.ladder import Branch
 from rfstage.limits import limit_named
-from rfstage.load import SeriesLoad
+from rfstage.load import MeasuredLoad, SeriesLoad
 from rfstage.operating import Rating
 from rfstage.stage import Stage
 from rfstage.steady import SteadyState, settle
 
+SHOWN = 10  # orders on the page of a settled stage
 LINE = 50.0  # ohm, where a stage names no other
 
 
@@ -88,6 +89,12 @@ def settled_cautions(state: SteadyState) -> list[Caution]:
         asked_power=stage.asked.output_power,
         output_power=state.output_power,
     )
+
+
+def load_file_cautions(stage: Stage) -> list[Caution]:
+    """Return what was done where a measured load does not reach the orders shown."""
+    load = stage.load
+    return about_load_file(load.beyond(stage.carrier, SHOWN) if isinstance(load, MeasuredLoad) else ())
 
 
 def safety_cautions(stage: Stage, *, dc_current: float, highest_rf: float, power: float) -> list[Caution]:

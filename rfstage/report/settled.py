@@ -6,7 +6,15 @@ from collections.abc import Sequence
 
 from rich.text import Text
 
-from rfstage.designs.judging import LINE, Verdict, ratings_of, safety_cautions, settled_cautions, worst
+from rfstage.designs.judging import (
+    LINE,
+    Verdict,
+    load_file_cautions,
+    ratings_of,
+    safety_cautions,
+    settled_cautions,
+    worst,
+)
 from rfstage.device import PARALLEL, PUSH_PULL
 from rfstage.limits import limit_named
 from rfstage.matching.networks import PartStress
@@ -40,7 +48,7 @@ def settled_page(state: SteadyState, look: Look, verdicts: Sequence[Verdict]) ->
         style="bold",
         indent=0,
     )
-    for caution in settled_cautions(state):
+    for caution in (*settled_cautions(state), *load_file_cautions(stage)):
         lines += note(look, f"! {caution.topic}: {caution.text}", style="bold red", hanging=2)
     if not state.has_output:
         lines += note(look, "No output: the drive stays below the threshold.", style="bold red")
