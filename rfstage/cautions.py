@@ -201,8 +201,8 @@ def about_load_file(continued: Sequence[int]) -> list[Caution]:
     return [
         Caution(
             "load file",
-            f"the measured load does not reach orders {show_orders(continued)}; it was continued from its nearest end as "
-            "a series resistance with a coil or capacitor, so those levels are estimates.",
+            f"the measured load does not reach orders {show_orders(continued)}; it was continued from its nearest end "
+            "as a series resistance with a coil or capacitor, so those levels are estimates.",
         )
     ]
 
