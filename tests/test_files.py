@@ -15,7 +15,7 @@ from hypothesis import strategies as st
 
 from rfstage import Job, Ladder, RfstageError, design, load_job, load_stage
 from rfstage.errors import FileError, InputError
-from rfstage.files.stage import stage_text
+from rfstage.files.stagetext import stage_text
 from rfstage.files.touchstone import grid, read_load, touchstone_text
 from rfstage.files.write import check_targets, write_files
 from rfstage.harmonics import decibels, load_powers

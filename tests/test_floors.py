@@ -24,6 +24,7 @@ FLOORS = {
     "jobfields": 1.1,
     "ladder": 1.1,
     "operating": 2.0,
+    "drive": 2.0,
     "device": 2.0,
     "matching": 2.0,
     "cautions": 2.0,

@@ -10,7 +10,7 @@ import pytest
 from rfstage import Job, design, load_job
 from rfstage.cautions import about_dip, about_tank_loss
 from rfstage.designs.judging import judged, ratings_of, settled_cautions, supply_reaches_load, worst
-from rfstage.files.stage import stage_text
+from rfstage.files.stagetext import stage_text
 from rfstage.ladder import Branch
 from rfstage.limits import limit_named
 from rfstage.steady import settle

@@ -8,8 +8,9 @@ import pytest
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
+from rfstage.drive import drive_power, drive_voltages
 from rfstage.errors import ImpossibleError
-from rfstage.operating import OperatingPoint, drive_power, drive_voltages, operating_point, ratings
+from rfstage.operating import OperatingPoint, operating_point, ratings
 from rfstage.pulse import pulse_coefficients
 
 

@@ -16,7 +16,8 @@ from rfstage.device import Device, JunctionCapacitance, ReverseConduction
 from rfstage.errors import ConvergenceError, ImpossibleError, InputError, OutOfRangeError
 from rfstage.files.records import json_text, settle_record
 from rfstage.files.spice import spice_text
-from rfstage.files.stage import load_stage, stage_text
+from rfstage.files.stage import load_stage
+from rfstage.files.stagetext import stage_text
 from rfstage.ladder import Branch, Ladder
 from rfstage.load import SeriesLoad
 from rfstage.report.page import Look

@@ -166,7 +166,7 @@ def test_progress_is_reported_to_the_end(tower):
 
 
 def test_the_command_line_writes_csv_and_json(run, tmp_path, tower):
-    from rfstage.files.stage import stage_text
+    from rfstage.files.stagetext import stage_text
 
     (tmp_path / "stage.toml").write_text(stage_text(tower, tmp_path), encoding="utf-8")
     words = ("sweep", "stage.toml", "--of", "C1", "--from", "120pF", "--to", "150pF", "--points", "7")
@@ -199,7 +199,7 @@ def test_the_command_line_writes_csv_and_json(run, tmp_path, tower):
     ],
 )
 def test_bad_sweeps_are_one_clear_line(run, tmp_path, tower, words, said):
-    from rfstage.files.stage import stage_text
+    from rfstage.files.stagetext import stage_text
 
     (tmp_path / "stage.toml").write_text(stage_text(tower, tmp_path), encoding="utf-8")
     done = run("sweep", "stage.toml", *words)

@@ -72,12 +72,12 @@ def run(words: Sequence[str]) -> int:
     if "save" in wanted:
         from pathlib import Path
 
-        from rfstage.files.stage import stage_text
+        from rfstage.files.stagetext import stage_text
 
         contents.append((wanted["save"], stage_text(made.stage, Path(wanted["save"]).parent)))
     if "spice" in wanted:
         from rfstage.files.spice import spice_text
-        from rfstage.files.stage import rounded
+        from rfstage.files.stagetext import rounded
 
         contents.append((wanted["spice"], spice_text(rounded(made.stage))))
     write_files(contents, overwrite=found.overwrite, inputs=inputs)

@@ -8,7 +8,8 @@ from typing import NamedTuple
 from rfstage.designs.settings import Settings
 from rfstage.designs.textbook import Circuit
 from rfstage.device import Device, ReverseConduction, knee_from_lowest_voltage
-from rfstage.operating import DriveVoltages, OperatingPoint, drive_power, drive_voltages
+from rfstage.drive import DriveVoltages, drive_power, drive_voltages
+from rfstage.operating import OperatingPoint
 from rfstage.stage import Asked, Drive, Stage
 
 SOFTNESS = 0.02  # of the peak control voltage above threshold: a corner real devices have

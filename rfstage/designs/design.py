@@ -19,6 +19,7 @@ from rfstage.cautions import (
 from rfstage.designs.building import Built, build
 from rfstage.designs.settings import Settings, with_defaults
 from rfstage.designs.textbook import Circuit, by_the_book
+from rfstage.drive import DriveVoltages
 from rfstage.errors import ConvergenceError
 from rfstage.harmonics import Harmonic, harmonics, terminations, trough_dip, with_settled_levels
 from rfstage.job import Job
@@ -26,7 +27,7 @@ from rfstage.ladder import Ladder
 from rfstage.load import MeasuredLoad
 from rfstage.matching.networks import Tank, describe
 from rfstage.matching.quality import strongest_resonance_below
-from rfstage.operating import DriveVoltages, OperatingPoint, Rating, ratings
+from rfstage.operating import OperatingPoint, Rating, ratings
 from rfstage.pulse import operating_class, pulse_coefficients
 from rfstage.quantity import show_orders
 from rfstage.stage import Stage
