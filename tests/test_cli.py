@@ -238,7 +238,6 @@ def test_options_are_not_abbreviated(run):
         (("sweep", "--of", "C1"), "sweep wants STAGE.toml, --from X, --to Y"),
         (("match", "50"), "match wants LOAD"),
         (("pulse", "120", "7"), "'7' is one word too many"),
-        (("pulse", "120", "--overwrite"), "'--overwrite' is no option"),
         (("design", *GOOD, "--load", "nothing.s1p"), "is not there"),
         (("design", *GOOD, "--minimum-voltage", "20V"), "below the supply of 13.8 V"),
         (("design", *GOOD, "--loaded-q", "1"), "must be above 2."),
@@ -516,11 +515,19 @@ def test_every_command_has_a_worked_line():
     assert {line.split()[1] for line in worked_lines()} == set(COMMANDS)
 
 
-def test_only_what_writes_files_offers_to_overwrite(capsys):
+def test_every_command_takes_the_options_that_hold_everywhere(capsys):
     for command in COMMANDS:
         with pytest.raises(SystemExit):
             main([command, "--help"])
-        assert ("--overwrite" in capsys.readouterr().out) == (command in ("design", "settle", "sweep"))
+        shown = capsys.readouterr().out
+        assert all(option in shown for option in ("--json", "--plain", "--overwrite"))
+
+
+def test_pulse_can_end_at_the_mean(run):
+    got = record(run("pulse", "180", "--orders", "0", "--json", "--overwrite"))
+    # SOURCE: exact, half a cosine: mean 1/pi, fundamental over mean pi/2
+    assert got["coefficients"] == pytest.approx([1 / math.pi])
+    assert got["fundamental_to_dc"] == pytest.approx(math.pi / 2)
 
 
 @pytest.mark.parametrize(

@@ -32,7 +32,7 @@ _OPTIONS = (CARRIER, NETWORK, LOADED_Q, INPUT_Q, COIL_Q, CAPACITOR_Q, _POWER, _H
 
 def parser() -> Parser:
     """Return the command's parser."""
-    made = Parser("match", ABOUT, writes=False)
+    made = Parser("match", ABOUT)
     made.positional("wanted", "RESISTANCE", "what the device should see: a resistance or R+jX")
     made.positional("load", "LOAD", "the load: an impedance, or a file ending in .s1p")
     made.add_fields("network", _OPTIONS)

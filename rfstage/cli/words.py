@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     from rfstage.report.page import Look
 
 _MINUS_VALUE = re.compile(r"-(?:\.?\d|[jJ][\d.]|[jJ]$)")
+HELP_WIDTH = 78  # columns; to ask the terminal loads a dozen modules, at every start
 _FILE = re.compile(r"\.s\d+p\Z", re.IGNORECASE)
 
 
@@ -29,12 +30,12 @@ class Parser(argparse.ArgumentParser):
     problems of a command line come at once.
     """
 
-    def __init__(self, command: str, about: str, *, writes: bool = True) -> None:
+    def __init__(self, command: str, about: str) -> None:
         super().__init__(
             prog=f"rfstage {command}",
             description=about,
             allow_abbrev=False,
-            formatter_class=argparse.RawDescriptionHelpFormatter,
+            formatter_class=lambda prog: argparse.RawDescriptionHelpFormatter(prog, width=HELP_WIDTH),
         )
         self._fields: list[Field] = []
         # in a group of its own: an argument added to the parser itself loads what only --help needs
@@ -42,8 +43,9 @@ class Parser(argparse.ArgumentParser):
         everywhere = self.add_argument_group("output")
         everywhere.add_argument("--json", action="store_true", help="one JSON object on stdout and nothing else")
         everywhere.add_argument("--plain", action="store_true", help="no colour, no box art, ASCII")
-        if writes:
-            everywhere.add_argument("--overwrite", action="store_true", help="replace files that exist")
+        everywhere.add_argument(
+            "--overwrite", action="store_true", help="replace files that exist, where any is written"
+        )
 
     def positional(self, name: str, metavar: str, about: str, *, optional: bool = False) -> None:
         """Add an argument that is known by its place."""

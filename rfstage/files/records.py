@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import json
-import math
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
@@ -147,20 +146,18 @@ def match_record(tank: Tank, transfer: Sequence[tuple[int, float]]) -> dict[str,
 
 
 def pulse_record(
-    *, angle: float, exponent: float, operating_class: str, coefficients: NDArray[np.float64]
+    *, angle: float, exponent: float, operating_class: str, coefficients: Sequence[float], fundamental_to_dc: float
 ) -> dict[str, Any]:
     """Return the coefficients of a current pulse, as ``rfstage.pulse``; the angle in degrees."""
-    a = numbers(coefficients)
-    ratio = a[1] / a[0] if len(a) > 1 else math.nan
     return {
         "format": "rfstage.pulse",
         "version": VERSION,
         "conduction_angle_deg": angle,
         "exponent": exponent,
         "operating_class": operating_class,
-        "coefficients": a,
-        "fundamental_to_dc": ratio,
-        "maximum_efficiency": ratio / 2,
+        "coefficients": list(coefficients),
+        "fundamental_to_dc": fundamental_to_dc,
+        "maximum_efficiency": fundamental_to_dc / 2,
     }
 
 

@@ -14,7 +14,13 @@ from rfstage.report.page import NO_BREAK, Cell, Look, columns, heading, note
 
 
 def pulse_page(
-    look: Look, *, angle: float, exponent: float, operating_class: str, coefficients: Sequence[float]
+    look: Look,
+    *,
+    angle: float,
+    exponent: float,
+    operating_class: str,
+    coefficients: Sequence[float],
+    fundamental_to_dc: float,
 ) -> list[Text]:
     """Return the coefficients of a pulse of this conduction angle [deg]."""
     a = coefficients
@@ -26,7 +32,7 @@ def pulse_page(
     lines += columns(look, rows)
     return lines + note(
         look,
-        f"fundamental over dc {a[1] / a[0]:.5f}; greatest efficiency {50 * a[1] / a[0]:.2f} % "
+        f"fundamental over dc {fundamental_to_dc:.5f}; greatest efficiency {50 * fundamental_to_dc:.2f} % "
         "(full swing, harmonics shorted, no losses)",
     )
 

@@ -84,14 +84,16 @@ def main() -> None:
         tuned = next(b.name for b in stage.branches if b.kind == "capacitor" and b.place == "shunt")
         value = fitted_value(stage, tuned) or 0.0
         along = list(np.linspace(0.75 * value, 1.25 * value, 101))
-        begin, used = time.perf_counter(), time.process_time()
-        found = sweep(stage, tuned, along)
-        curve, used = time.perf_counter() - begin, time.process_time() - used
-        orders = found.points[0].orders_solved
-        begin = time.process_time()
-        for point in along[::5]:
-            settle_many([with_value(stage, tuned, point)], orders=orders)
-        cold = (time.process_time() - begin) / len(along[::5])
+        curve = used = cold = math.inf
+        for _ in range(3):
+            begin, spent = time.perf_counter(), time.process_time()
+            found = sweep(stage, tuned, along)
+            curve, used = min(curve, time.perf_counter() - begin), min(used, time.process_time() - spent)
+            orders = found.points[0].orders_solved
+            spent = time.process_time()
+            for point in along[::5]:
+                settle_many([with_value(stage, tuned, point)], orders=orders)
+            cold = min(cold, (time.process_time() - spent) / len(along[::5]))
         units.append(used / cold)
         line = f"  {name:<32} {1000 * alone:6.1f} ms a solve"
         line += f"; 101-point curve {units[-1]:3.0f} cold solves of {orders} orders"
