@@ -16,38 +16,19 @@ import cmath
 import math
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
-from typing import Any, NamedTuple
+from typing import NamedTuple
 
 import numpy as np
 
-from rfstage.errors import InputError, OutOfRangeError
-from rfstage.fields import nearest
-from rfstage.ladder import Branch
+from rfstage.errors import OutOfRangeError
 from rfstage.load import SeriesLoad
 from rfstage.stage import Stage
+from rfstage.stagevalues import LOAD, unit_of, with_value
 from rfstage.steady import SteadyState, settle, settle_many
 
 PHASES = 36  # of each circle of standing-wave ratio
 TOGETHER = 64  # orders: up to here a batch from the middle is fastest, beyond it a chain from point to point
 CHUNK = 10  # points solved between two reports of progress
-LOAD = "load"
-_UNITS = {"capacitor": "F", "coil": "H", "resistor": "ohm"}
-_BRANCH_UNITS = {"q": "", "series_resistance": "ohm", "lead_inductance": "H", "self_capacitance": "F"}
-_PART_UNITS: dict[str, dict[str, str]] = {
-    "drive": {"bias": "V", "amplitude": "V"},
-    "supply": {"voltage": "V", "choke": "H", "choke_resistance": "ohm", "choke_q": ""},
-    "device": {
-        "transfer_factor": "",
-        "exponent": "",
-        "threshold": "V",
-        "threshold_softness": "V",
-        "knee_voltage": "V",
-        "knee_resistance": "ohm",
-        "amplification_factor": "",
-        "imbalance": "",
-        "output_capacitance": "F",
-    },
-}
 
 
 class Extreme(NamedTuple):
@@ -90,70 +71,6 @@ class Sweep:
     dip: Extreme | None
     efficiency_peak: Extreme | None
     output_peak: Extreme | None
-
-
-def paths(stage: Stage) -> dict[str, str]:
-    """Return every path that can be swept, with its unit."""
-    found = {"carrier": "Hz", "load.resistance": "ohm", LOAD: ""}
-    for branch in stage.branches:
-        found[branch.name] = _UNITS[branch.kind]
-        found |= {
-            f"{branch.name}.{key}": unit
-            for key, unit in _BRANCH_UNITS.items()
-            if getattr(branch, key) not in (None, 0.0)
-        }
-    for part, units in _PART_UNITS.items():
-        found |= {
-            f"{part}.{key}": unit for key, unit in units.items() if getattr(getattr(stage, part), key) is not None
-        }
-    if stage.device.pair is None:
-        del found["device.imbalance"]
-    return found
-
-
-def unit_of(stage: Stage, path: str) -> str:
-    """Return the unit of a path.
-
-    Raises
-    ------
-    InputError
-        If the stage has no such value, with the nearest names.
-    """
-    known = paths(stage)
-    if path not in known:
-        raise InputError(f"--of: {path!r} is nothing in this stage{nearest(path, known)}; it has {', '.join(known)}")
-    return known[path]
-
-
-def with_value(stage: Stage, path: str, value: float) -> Stage:
-    """Return the stage with one value changed; the path is one of `paths`."""
-    if path == "carrier":
-        # the choke stays the coil it is: its resistance goes as the root of the frequency, its reactance as that
-        q = stage.supply.choke_q
-        supply = stage.supply if q is None else replace(stage.supply, choke_q=q * math.sqrt(value / stage.carrier))
-        return replace(stage, carrier=value, supply=supply)
-    if path == "load.resistance":
-        return replace(stage, load=SeriesLoad(complex(value), stage.carrier))
-    head, _, key = path.partition(".")
-    changed: dict[str, Any] = {key or "value": value}
-    if head in _PART_UNITS:
-        part: Any = getattr(stage, head)
-        whole: dict[str, Any] = {head: replace(part, **changed)}
-        return replace(stage, **whole)
-    return replace(stage, branches=tuple(replace(b, **changed) if b.name == head else b for b in stage.branches))
-
-
-def fitted_value(stage: Stage, path: str) -> float | None:
-    """Return the value that the stage has now, or None for the load."""
-    if path == "carrier":
-        return stage.carrier
-    head, _, key = path.partition(".")
-    if head == LOAD:
-        return complex(stage.load.impedance(stage.carrier)).real if key else None
-    if head in _PART_UNITS:
-        return float(getattr(getattr(stage, head), key))
-    branch: Branch = next(b for b in stage.branches if b.name == head)
-    return float(getattr(branch, key or "value"))
 
 
 def sweep(

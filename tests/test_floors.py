@@ -35,6 +35,7 @@ FLOORS = {
     "job": 3.0,
     "steady": 4.0,
     "designs": 5.0,
+    "stagevalues": 3.5,
     "sweep": 5.5,
     "files": 6.0,
     "report": 7.0,

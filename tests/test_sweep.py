@@ -9,11 +9,13 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
-from rfstage import Job, design, load_job
+from rfstage import Job, design, load_job, load_stage
+from rfstage.device import JunctionCapacitance
 from rfstage.errors import InputError, OutOfRangeError
 from rfstage.files.records import sweep_record, sweep_table
+from rfstage.stagevalues import fitted_value, paths, with_value
 from rfstage.steady import settle
-from rfstage.sweep import fitted_value, mismatched, modulation, paths, sweep, with_value
+from rfstage.sweep import mismatched, modulation, sweep
 
 
 @pytest.fixture(scope="module")
@@ -150,12 +152,32 @@ def test_values_must_rise_or_fall(tower, values):
         sweep(tower, "C1", values)
 
 
-def test_every_path_can_be_set_and_read(tower):
-    for path in paths(tower):
-        if path != "load":
-            value = fitted_value(tower, path)
-            assert value is not None
-            assert fitted_value(with_value(tower, path, 1.01 * value), path) == pytest.approx(1.01 * value)
+def test_every_path_can_be_set_and_read(tower, examples):
+    junction = JunctionCapacitance(at_zero=1e-10, potential=0.8, grading=0.4)
+    device = replace(load_stage(examples / "beacon-as-built.toml").device, junction_capacitance=junction)
+    beacon = replace(load_stage(examples / "beacon-as-built.toml"), device=device)
+    for stage in (tower, beacon):
+        known = paths(stage)
+        for path in known:
+            if path != "load":
+                value = fitted_value(stage, path)
+                assert value is not None
+                other = 1.01 * value or 1e-12
+                assert fitted_value(with_value(stage, path, other), path) == pytest.approx(other)
+    assert {
+        "device.reverse_conduction.conductance",
+        "device.junction_capacitance.grading",
+        "L1.self_capacitance",
+        "C2.lead_inductance",
+        "load.reactance",
+        "supply.choke_q",
+    } <= set(known)
+
+
+def test_a_junction_can_be_swept(examples):
+    beacon = load_stage(examples / "beacon-as-built.toml")
+    points = sweep(beacon, "device.reverse_conduction.conductance", [1.0, 4.0]).points
+    assert points[0].output_power != points[1].output_power
 
 
 def test_progress_is_reported_to_the_end(tower):

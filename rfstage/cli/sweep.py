@@ -57,7 +57,8 @@ def run(words: Sequence[str]) -> int:
     import numpy as np
 
     from rfstage.files.stage import load_stage
-    from rfstage.sweep import fitted_value, sweep, unit_of
+    from rfstage.stagevalues import fitted_value, unit_of
+    from rfstage.sweep import sweep
 
     stage = load_stage(found.stage)
     inputs = {"stage file": found.stage, "load file": getattr(stage.load, "name", None)}
@@ -96,7 +97,7 @@ def _ends(path: str, unit: str, first: str, last: str) -> dict[str, tuple[Field,
     low, above, high = (1.0, False, 100.0) if path == "load" else (0.0, True, math.inf)
     if head in ("drive", "device") or key in ZERO_ALLOWED:
         above = False
-    if path in ("drive.bias", "device.threshold"):
+    if path in ("drive.bias", "device.threshold", "load.reactance"):
         low = -1e6
     return {
         name: (Field("", name, "real", unit, low, high, above, f"--{option}"), text)

@@ -7,7 +7,8 @@ from rich.text import Text
 from rfstage.designs.judging import LINE
 from rfstage.quantity import show
 from rfstage.report.page import NO_BREAK, Cell, Look, columns, heading, note, pairs
-from rfstage.sweep import PHASES, Sweep, fitted_value, modulation
+from rfstage.stagevalues import fitted_value
+from rfstage.sweep import PHASES, Sweep, modulation
 
 ROWS = 24  # of the table; a longer sweep is thinned for the page, never for JSON or CSV
 BAR = 16

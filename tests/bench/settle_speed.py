@@ -25,8 +25,9 @@ sys.path.insert(0, str(Path(__file__).resolve().parent.parent))
 from test_spice import STAGES, simulated
 
 from rfstage.stage import Stage
+from rfstage.stagevalues import fitted_value, with_value
 from rfstage.steady import SteadyState, settle, settle_many
-from rfstage.sweep import fitted_value, sweep, with_value
+from rfstage.sweep import sweep
 
 STEPS = (50, 75, 100, 150, 200, 300, 400, 600, 800)  # of a period, tried until the transient is accurate enough
 
