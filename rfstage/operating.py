@@ -21,6 +21,8 @@ from typing import NamedTuple
 from rfstage.errors import ImpossibleError
 from rfstage.quantity import exact_text
 
+SMALLEST_RESISTANCE, LARGEST_RESISTANCE = 1e-9, 1e12  # ohm: beyond them no lumped circuit is worth a number
+
 
 class OperatingPoint(NamedTuple):
     """Voltages [V], currents [A], powers [W] and efficiencies [-] of the textbook stage.
@@ -77,7 +79,8 @@ def operating_point(
     Raises
     ------
     ImpossibleError
-        If the choke's dc resistance leaves no swing that gives the power.
+        If the choke's dc resistance leaves no swing that gives the power, or the load resistance would be
+        one that no circuit shows.
 
     References
     ----------
@@ -102,8 +105,14 @@ def operating_point(
             f"{exact_text(output_power, 'W')} from {exact_text(supply, 'V')}: at most {most:.3g} ohm would do"
         )
     swing = (available + math.sqrt(square)) / 2
+    resistance = swing**2 / (2 * device_power)
+    if not SMALLEST_RESISTANCE <= resistance <= LARGEST_RESISTANCE:
+        raise ImpossibleError(
+            f"{exact_text(output_power, 'W')} from {exact_text(supply, 'V')} would want a load resistance of "
+            f"{resistance:.3g} ohm, which no circuit shows; are power and supply what was meant?"
+        )
     return operating_point_at(
-        swing**2 / (2 * device_power),
+        resistance,
         supply=supply,
         minimum_voltage=minimum_voltage,
         dc_coefficient=dc_coefficient,

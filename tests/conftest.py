@@ -11,6 +11,11 @@ import sys
 from pathlib import Path
 
 import pytest
+from hypothesis import settings
+
+# the same examples in every run of the suite; --hypothesis-profile=default draws fresh ones
+settings.register_profile("suite", derandomize=True, deadline=None)
+settings.load_profile("suite")
 
 PROJECT = Path(__file__).resolve().parent.parent
 

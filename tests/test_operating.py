@@ -333,3 +333,11 @@ def test_rating_is_exceeded_only_beyond_its_limit():
         for v in (p.peak_voltage, 0.999 * p.peak_voltage)
     )
     assert (at, below) == (False, True)
+
+
+@pytest.mark.parametrize(("power", "supply"), [(5e-324, 10.0), (1e7, 1e-3)])
+def test_a_load_resistance_that_no_circuit_shows_is_refused(power, supply):
+    with pytest.raises(ImpossibleError, match="which no circuit shows"):
+        operating_point(
+            supply=supply, minimum_voltage=0.0, output_power=power, dc_coefficient=0.218, fundamental_coefficient=0.391
+        )
