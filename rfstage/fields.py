@@ -5,8 +5,6 @@ error reads the same wherever the value came from. Standard library only: a malf
 before anything heavy is loaded.
 """
 
-from __future__ import annotations
-
 import math
 from collections.abc import Iterable
 from typing import Any, NamedTuple

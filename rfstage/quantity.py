@@ -51,11 +51,12 @@ _UNITS: dict[str, tuple[str, tuple[str, ...], bool, str]] = {
 # second) and m (M is mega)
 _ANY_CASE = ("Hz", "V", "A", "W", "ohm", "H", "deg", "dB")
 
+# patterns are compiled when a quantity is first read: a refused file or option never gets that far
 _NUMBER = r"(?P<digits>\d+(?:\.\d*)?|\.\d+)(?:[eE](?P<exponent>[+-]?\d+))?"
 _TAIL = r"(?P<tail>[^\d\s+\-.,][^\d]*)?"
-_PLAIN = re.compile(rf"(?P<sign>[+-]?){_NUMBER}\s*{_TAIL}", re.ASCII)
-_LETTER_POINT = re.compile(rf"(?P<sign>[+-]?)(?P<whole>\d*)(?P<letter>[pnuµμmRkKMG])(?P<part>\d+)\s*{_TAIL}", re.ASCII)
-_LAST_SIGN = re.compile(r"(?<![eE])[+-](?!.*(?<![eE])[+-])")
+_PLAIN = rf"(?P<sign>[+-]?){_NUMBER}\s*{_TAIL}"
+_LETTER_POINT = rf"(?P<sign>[+-]?)(?P<whole>\d*)(?P<letter>[pnuµμmRkKMG])(?P<part>\d+)\s*{_TAIL}"
+_LAST_SIGN = r"(?<![eE])[+-](?!.*(?<![eE])[+-])"
 
 
 class QuantityError(RfstageError, ValueError):
@@ -146,11 +147,11 @@ def parse_real(text: str, unit: str) -> float:
             f"read {text!r}, which has a comma: write the decimal point as in "
             f"{stripped.replace(',', '.')!r}, and no thousands marks"
         )
-    plain = _PLAIN.fullmatch(stripped)
+    plain = re.fullmatch(_PLAIN, stripped, re.ASCII)
     if plain:
         exponent = int(plain["exponent"] or 0) + _read_tail(plain["tail"], unit, text)
         return _glue(plain["sign"], plain["digits"], exponent, text)
-    letter = _LETTER_POINT.fullmatch(stripped)
+    letter = re.fullmatch(_LETTER_POINT, stripped, re.ASCII)
     if letter and _UNITS[unit][2] and (letter["letter"] != "R" or unit == "ohm"):
         prefix = 0 if letter["letter"] == "R" else _PREFIXES[letter["letter"]]
         tail = (letter["tail"] or "").strip()
@@ -179,7 +180,7 @@ def parse_complex(text: str, unit: str = "ohm") -> complex:
         return complex(parse_real(text, unit))
     before = _without_unit(stripped, unit)
     stripped = stripped if before is None else before
-    split = _LAST_SIGN.search(stripped)
+    split = re.search(_LAST_SIGN, stripped)
     real, imaginary = (stripped[: split.start()], stripped[split.start() :]) if split else ("", stripped)
     sign = "-" if imaginary.startswith("-") else ""
     size = imaginary.lstrip("+-").strip()
