@@ -146,9 +146,9 @@ def drive_power(
     carrier, device_rf_power, amplitude : float
         Hz, W and peak V at the control electrode.
     """
-    if family == "fet" and None not in (gate_resistance, input_capacitance, amplitude):
-        charging = 2 * math.pi * carrier * input_capacitance * amplitude  # type: ignore[operator]  # none is None here
-        return charging**2 * gate_resistance / 2  # type: ignore[operator]
+    if family == "fet" and gate_resistance is not None and input_capacitance is not None and amplitude is not None:
+        charging = 2 * math.pi * carrier * input_capacitance * amplitude
+        return charging**2 * gate_resistance / 2
     if family == "tube" and grid_current is not None and amplitude is not None:
         return amplitude * grid_current
     if family == "bipolar" and power_gain is not None:

@@ -243,7 +243,7 @@ class Ladder:
     ) -> tuple[Any, ...]:
         """Walk once, or block by block where samples times frequencies exceed what fits the cache."""
         plain = isinstance(frequency, float | int) and isinstance(load, complex | float | int)
-        f: Any = float(frequency) if plain else np.asarray(frequency, dtype=np.float64)  # type: ignore[arg-type]
+        f: Any = float(frequency) if plain else np.asarray(frequency, dtype=np.float64)  # type: ignore[arg-type]  # plain: a number
         z: Any = load.impedance(f) if hasattr(load, "impedance") else load
         z = complex(z) if plain else np.asarray(z, dtype=np.complex128)
         shape = _sample_shape(self.branches)
