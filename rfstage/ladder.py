@@ -2,16 +2,11 @@
 
 ::
 
-    device ──┬──── series ────┬──── series ──── load          V, I at the load: V = 1, I = 1/Z
-             │                │                               series branch:  V += I·Z
-           shunt            shunt                             shunt branch:   I += V·Y
-             │                │                               at the device:  Zin = V/I, V_load/I = 1/I
-
-    symbol  name                unit        losses
-    ------  ------------------  ------      ------------------------------------------------------
-    L       value of a coil     H           Q at the carrier: R = ω₀L/Q · √(f/f₀)
-    C       value of a capacitor F          Q: R = 1/(ωCQ) at every frequency (constant loss tangent)
-    R       series_resistance   ohm         either may state a constant series resistance instead
+    device ──┬──── series ────┬── through ── load             V, I at the load: V = 1, I = 1/Z
+             │                │     ││                        series branch:  V += I·Z
+           shunt            shunt   ││                        shunt branch:   I += V·Y
+             │                │     ││                        through branch: V, I by its two-port
+                                                              at the device:  Zin = V/I, V_load/I = 1/I
 
 One walk serves everything: impedance, transfer, and the current, voltage and loss of every branch. It is
 written in plain arithmetic, so that the same lines serve one Python number and arrays of samples times
@@ -27,130 +22,31 @@ from operator import attrgetter
 from typing import Any, NamedTuple
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import ArrayLike
 
-from rfstage.errors import OutOfRangeError
+from rfstage.branch import Branch, Complex, Real
+from rfstage.kinds import THROUGH
 from rfstage.load import Load
 
-Real = float | NDArray[np.float64]
-Complex = complex | NDArray[np.complex128]
+__all__ = ["BLOCK_ELEMENTS", "SAMPLED", "Branch", "BranchState", "Ladder", "Walk"]
 
 BLOCK_ELEMENTS = 8_000  # complex numbers in one array: 125 KiB, under what allocators map afresh each time
-
-
-@dataclass(frozen=True, slots=True)
-class Branch:
-    """One part of the ladder.
-
-    Parameters
-    ----------
-    name : str
-        Such as ``"C1"``.
-    place : str
-        ``"series"`` or ``"shunt"``.
-    kind : str
-        ``"coil"``, ``"capacitor"`` or ``"resistor"``.
-    value : float or ndarray, shape (samples...)
-        Inductance [H], capacitance [F] or resistance [ohm].
-    q : float, ndarray or None
-        Quality factor [-] at ``q_frequency``; None is lossless unless ``series_resistance`` is given.
-    q_frequency : float or None
-        Where a coil's Q holds [Hz]: the carrier. A capacitor's Q is the same at all frequencies.
-    series_resistance : float, ndarray or None
-        Constant series resistance [ohm], instead of a Q.
-    lead_inductance : float or ndarray
-        In series with a capacitor or resistor [H].
-    self_capacitance : float or ndarray
-        Across a coil [F].
-    origin : str
-        ``"part"``, ``"device"`` or ``"stray"``.
-    """
-
-    name: str
-    place: str
-    kind: str
-    value: Real
-    q: Real | None = None
-    q_frequency: float | None = None
-    series_resistance: Real | None = None
-    lead_inductance: Real = 0.0
-    self_capacitance: Real = 0.0
-    origin: str = "part"
-
-    def impedance(self, frequency: Real) -> Any:
-        """Return the branch's impedance [ohm]; sample axes come before those of ``frequency`` [Hz]."""
-        omega = 2 * math.pi * frequency
-        value = _lift(self.value, frequency)
-        if self.kind == "coil":
-            z = value * (1j * omega + self._coil_loss(frequency))
-            if self.series_resistance is not None:
-                z = z + _lift(self.series_resistance, frequency)
-            if _present(self.self_capacitance):
-                z = z / (1 + 1j * omega * _lift(self.self_capacitance, frequency) * z)
-            return z
-        if self.kind == "capacitor":
-            loss = 0.0 if self.q is None else 1 / _lift(self.q, frequency)
-            z = (loss - 1j) / (omega * value)
-        else:
-            z = value + 0j
-        if self.series_resistance is not None:
-            z = z + _lift(self.series_resistance, frequency)
-        if _present(self.lead_inductance):
-            z = z + 1j * omega * _lift(self.lead_inductance, frequency)
-        return z
-
-    def admittance(self, frequency: Real) -> Any:
-        """Return one over the impedance [S]; a capacitor without strays costs no division by its value."""
-        if self.kind == "capacitor" and self.series_resistance is None and not _present(self.lead_inductance):
-            loss = 0.0 if self.q is None else 1 / _lift(self.q, frequency)
-            return _lift(self.value, frequency) * (2 * math.pi * frequency * ((loss + 1j) / (loss * loss + 1)))
-        return 1 / self.impedance(frequency)
-
-    def _coil_loss(self, frequency: Real) -> Any:
-        """Series resistance per henry that a Q stands for: ω₀/Q · √(f/f₀)."""
-        if self.q is None:
-            return 0.0
-        if self.q_frequency is None:
-            raise OutOfRangeError(f"{self.name}: q_frequency", None, "given where a coil has a Q")
-        return 2 * math.pi * self.q_frequency / _lift(self.q, frequency) * (frequency / self.q_frequency) ** 0.5
-
-    def stored_energy(self, frequency: float, current: complex) -> float:
-        """Return mean stored energy [J] at peak ``current`` [A] through the branch.
-
-        For one sample and frequency; lead inductance and self-capacitance are counted.
-        """
-        omega = 2 * math.pi * frequency
-        square = abs(current) ** 2 / 4
-        if self.kind == "coil":
-            if not _present(self.self_capacitance):
-                return float(self.value) * square
-            across = current * complex(self.impedance(frequency))
-            winding = current - across * 1j * omega * float(self.self_capacitance)
-            return (float(self.value) * abs(winding) ** 2 + float(self.self_capacitance) * abs(across) ** 2) / 4
-        if self.kind == "capacitor":
-            return square * (float(self.lead_inductance) + 1 / (omega**2 * float(self.value)))
-        return square * float(self.lead_inductance)
-
-
-def _lift(value: Real, frequency: Real) -> Any:
-    """Give sample arrays one new axis for each axis of ``frequency``; leave plain numbers alone."""
-    if isinstance(value, np.ndarray) and isinstance(frequency, np.ndarray):
-        return value.reshape(value.shape + (1,) * frequency.ndim)
-    return value
-
-
-def _present(value: Real) -> bool:
-    return isinstance(value, np.ndarray) or value != 0
 
 
 class BranchState(NamedTuple):
     """What one branch carries for 1 A peak from the device: peak current [A] and loss [W].
 
-    Each of shape (samples..., frequencies...). The voltage across it is its impedance times the current.
+    Each of shape (samples..., frequencies...). Of a through branch the current is that of the device's side, and
+    ``seen`` the impedance there [ohm], load and all; of others ``seen`` is None.
     """
 
     current: Complex
     loss: Real
+    seen: Complex | None = None
+
+    def drop(self, branch: Branch, frequency: Real) -> Any:
+        """Return the impedance [ohm] that makes the current the voltage across, at the device's side if through."""
+        return branch.impedance(frequency) if self.seen is None else self.seen
 
 
 class Walk(NamedTuple):
@@ -214,7 +110,11 @@ class Ladder:
         Arguments as `impedance`; arrays as described at `Walk`, for 1 A peak from the device.
         """
         values = self._blocks(frequency, load, self._everything, keep=True)
-        states = tuple(BranchState(*values[k : k + 2]) for k in range(3, len(values), 2))
+        seen = iter(values[3 + 2 * len(self.branches) :])
+        states = tuple(
+            BranchState(values[3 + 2 * k], values[4 + 2 * k], next(seen) if branch.place == THROUGH else None)
+            for k, branch in enumerate(self.branches)
+        )
         return Walk(values[0], values[1], values[2], states)
 
     def chain(self, frequency: ArrayLike) -> tuple[Any, Any, Any, Any]:
@@ -230,13 +130,13 @@ class Ladder:
         full = np.broadcast_shapes(*(np.shape(x) for x in (a, b, c, d, f)))
         return tuple(np.broadcast_to(x, full) for x in (a, b, c, d))  # type: ignore[return-value]  # four, as said
 
-    def _everything(self, v: Complex, i: Complex, load: Complex, steps: list[tuple[Any, Any]]) -> tuple[Any, ...]:
+    def _everything(self, v: Complex, i: Complex, load: Complex, steps: list[tuple[Any, ...]]) -> tuple[Any, ...]:
         unit = 1 / i
         half_square = _square(unit) / 2
         out = [v * unit, unit, load]
-        for current, resistive in reversed(steps):
-            out += [current * unit, resistive * half_square]
-        return tuple(out)
+        for step in reversed(steps):
+            out += [step[0] * unit, step[1] * half_square]
+        return (*out, *(step[2] for step in reversed(steps) if len(step) > 2))
 
     def _blocks(
         self, frequency: ArrayLike, load: Load | ArrayLike, finish: Any, *, keep: bool = False
@@ -268,15 +168,15 @@ class Ladder:
 
 
 def _one_walk(branches: Sequence[Branch], f: Any, z: Any, finish: Any, keep: bool) -> tuple[Any, ...]:
-    steps: list[tuple[Any, Any]] | None = [] if keep else None
+    steps: list[tuple[Any, ...]] | None = [] if keep else None
     v, i = _outwards(branches, f, 1 + 0j, 1 / z, steps)
     return finish(v, i, z, steps)  # type: ignore[no-any-return]  # a tuple, by every caller above
 
 
 def _outwards(
-    branches: Sequence[Branch], f: Any, v: Any, i: Any, steps: list[tuple[Any, Any]] | None
+    branches: Sequence[Branch], f: Any, v: Any, i: Any, steps: list[tuple[Any, ...]] | None
 ) -> tuple[Any, Any]:
-    """Walk from load to device; ``steps`` collects each branch's current and |I|²·Re Z."""
+    """Walk from load to device; ``steps`` collects each branch's current, |I|²·Re Z, and V/I if it is through."""
     for branch in reversed(branches):
         if branch.place == "series":
             z = branch.impedance(f)
@@ -284,6 +184,13 @@ def _outwards(
             if steps is not None:
                 steps.append((i, _square(i) * z.real))
             v = v + across
+        elif branch.place == THROUGH:
+            ports = branch.ports(f)
+            beyond = i
+            v, i = ports.inwards(v, i)
+            if steps is not None:
+                resistances = (ports.own.real, ports.mutual.real, ports.far.real)
+                steps.append((i, ports.weighed(i, beyond, resistances), v / i))
         else:
             y = branch.admittance(f)
             through = v * y
@@ -298,8 +205,17 @@ def _square(x: Any) -> Any:
     return abs(x) ** 2
 
 
-_SAMPLED = ("value", "q", "series_resistance", "lead_inductance", "self_capacitance")
-_sampled_of = attrgetter(*_SAMPLED)
+SAMPLED = (
+    "value",
+    "q",
+    "series_resistance",
+    "lead_inductance",
+    "self_capacitance",
+    "second",
+    "second_q",
+    "coupling",
+)  # the numbers of a branch
+_sampled_of = attrgetter(*SAMPLED)
 
 
 def _sample_shape(branches: Sequence[Branch]) -> tuple[int, ...]:
@@ -310,12 +226,12 @@ def _sample_shape(branches: Sequence[Branch]) -> tuple[int, ...]:
 def _flat_samples(branch: Branch, shape: tuple[int, ...]) -> Branch:
     arrays: dict[str, Any] = {
         name: np.broadcast_to(a, shape).reshape(-1)
-        for name in _SAMPLED
+        for name in SAMPLED
         if isinstance(a := getattr(branch, name), np.ndarray)
     }
     return replace(branch, **arrays) if arrays else branch
 
 
 def _take(branch: Branch, part: slice) -> Branch:
-    arrays: dict[str, Any] = {name: a[part] for name in _SAMPLED if isinstance(a := getattr(branch, name), np.ndarray)}
+    arrays: dict[str, Any] = {name: a[part] for name in SAMPLED if isinstance(a := getattr(branch, name), np.ndarray)}
     return replace(branch, **arrays) if arrays else branch

@@ -17,11 +17,13 @@ ROOT = Path(rfstage.__file__).parent
 FLOORS = {
     "errors": 0.0,
     "quantity": 0.1,
+    "kinds": 0.0,
     "fields": 0.2,
     "pulse": 1.0,
     "load": 1.0,
     "limits": 1.0,
     "jobfields": 1.1,
+    "branch": 1.05,
     "ladder": 1.1,
     "operating": 2.0,
     "drive": 2.0,
