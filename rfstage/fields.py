@@ -85,7 +85,7 @@ def read(field: Field, raw: object) -> Any:
     if isinstance(raw, bool) or not isinstance(raw, str | int | float):
         raise QuantityError(f"got {shown(raw)}; wanted {_wanted(field)}")
     if field.kind in ("choice", "text"):
-        return _read_text(field, raw)
+        return _read_text(field, str(raw) if isinstance(raw, int) and str(raw) in field.choices else raw)
     try:
         if field.kind == "q" and isinstance(raw, str) and raw.strip() == LOSSLESS:
             return math.inf

@@ -65,12 +65,23 @@ class Job:
     input_q: float | None = None
     coil_q: float | None = None
     capacitor_q: float | None = None
+    middle_resistance: float | None = None
+    coupling: float | None = None
+    tap: float | None = None
+    link: str | None = None
+    filter: str | None = None
+    filter_kind: str | None = None
+    trap: int | None = None
+    transformer: float | None = None
+    transformer_magnetizing: float | None = None
+    transformer_leakage: float | None = None
     choke: float | None = None
     choke_q: float | None = None
     choke_resistance: float | None = None
     blocking: float | None = None
     limit: str | None = None
     limit_load: float | None = None
+    margin: float | None = None
 
     def __post_init__(self) -> None:
         problems = []

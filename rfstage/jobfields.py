@@ -12,7 +12,12 @@ from rfstage.limits import limit_named
 from rfstage.quantity import exact_text
 
 FAMILIES = ("bipolar", "fet", "tube")
-NETWORKS = ("l", "l-high-pass", "pi")
+NETWORKS = ("l", "l-high-pass", "pi", "pi-l", "t", "tapped-coil", "link", "capacitive-divider")
+AUTO = "auto"
+NONE = "none"
+LINKS = ("tuned", "untuned")
+FILTER_KINDS = ("butterworth", "chebyshev", "elliptic", "chebyshev-trap")
+FILTER_ORDERS = range(2, 12)
 REQUIRED = ("carrier", "power", "conduction_angle", "supply")
 
 CARRIER = Field("stage.carrier", "carrier", "real", "Hz", 1e3, 3e10, option="--carrier", help="carrier frequency")
@@ -25,7 +30,7 @@ LOADED_Q = Field(
     1000,
     True,
     "--loaded-q",
-    "loaded Q of a pi tank [10, or the least that works + 2]",
+    "loaded Q of the tank [10, or the least that works + 2]",
 )
 INPUT_Q = Field(
     "tank.input_q",
@@ -51,7 +56,119 @@ CAPACITOR_Q = Field(
     "Q of the capacitors, or lossless [1000]",
 )
 NETWORK = Field(
-    "tank.network", "network", "choice", option="--network", help="the tank's network [pi]", choices=NETWORKS
+    "tank.network",
+    "network",
+    "choice",
+    option="--network",
+    help="the tank's network [auto: all are tried and ranked]",
+    choices=(*NETWORKS, AUTO),
+)
+SPECIAL: tuple[Field, ...] = (
+    Field(
+        "tank.middle_resistance",
+        "middle_resistance",
+        "real",
+        "ohm",
+        0,
+        1e7,
+        True,
+        "--middle-resistance",
+        "pi-l: resistance between its pi and its L [5 times the load's]",
+    ),
+    Field(
+        "tank.coupling",
+        "coupling",
+        "real",
+        "",
+        0,
+        0.9999,
+        True,
+        "--coupling",
+        "tapped-coil, link: coupling of the coil's parts [0.4], of the link [0.35]",
+    ),
+    Field(
+        "tank.tap",
+        "tap",
+        "real",
+        "",
+        0,
+        0.9999,
+        True,
+        "--tap",
+        "tapped-coil: the tap's share of the turns from the grounded end, instead of a Q",
+    ),
+    Field(
+        "tank.link",
+        "link",
+        "choice",
+        option="--link",
+        help="link: its reactance tuned out by a series capacitor, or not [tuned]",
+        choices=LINKS,
+    ),
+)
+FILTERS: tuple[Field, ...] = (
+    Field(
+        "tank.filter",
+        "filter",
+        "choice",
+        option="--filter",
+        help="low-pass filter behind the tank: auto where the limit needs one, or its order [none]",
+        choices=(AUTO, NONE, *(str(order) for order in FILTER_ORDERS)),
+    ),
+    Field(
+        "tank.filter_kind",
+        "filter_kind",
+        "choice",
+        option="--filter-kind",
+        help="kind of filter [whichever does it with the lowest order]",
+        choices=FILTER_KINDS,
+    ),
+    Field(
+        "tank.trap",
+        "trap",
+        "count",
+        "",
+        2,
+        10,
+        False,
+        "--trap",
+        "harmonic that the trap of a chebyshev-trap filter is tuned to [2]",
+    ),
+)
+TRANSFORMER: tuple[Field, ...] = (
+    Field(
+        "tank.transformer",
+        "transformer",
+        "real",
+        "",
+        0.01,
+        100,
+        False,
+        "--transformer",
+        "wide-band transformer before the network: N of 1:N turns from device to network [no transformer]",
+    ),
+    Field(
+        "tank.transformer_magnetizing",
+        "transformer_magnetizing",
+        "real",
+        "H",
+        0,
+        1.0,
+        True,
+        "--transformer-magnetizing",
+        "its magnetizing inductance at the device's side [10 times the load resistance]",
+    ),
+    Field(
+        "tank.transformer_leakage",
+        "transformer_leakage",
+        "real",
+        "H",
+        0,
+        1.0,
+        False,
+        "--transformer-leakage",
+        "its leakage inductance there [1 % of the magnetizing inductance]",
+    ),
 )
 
 JOB_FIELDS: tuple[Field, ...] = (
@@ -247,6 +364,9 @@ JOB_FIELDS: tuple[Field, ...] = (
     INPUT_Q,
     COIL_Q,
     CAPACITOR_Q,
+    *SPECIAL,
+    *FILTERS,
+    *TRANSFORMER,
     Field("supply.choke", "choke", "real", "H", 0, 1e3, True, "--choke", "supply choke [see the assumptions shown]"),
     Field(
         "supply.choke_q",
@@ -299,8 +419,32 @@ JOB_FIELDS: tuple[Field, ...] = (
         "--limit-load",
         "resistive line load for the verdict [50 ohm]",
     ),
+    Field(
+        "limit.margin",
+        "margin",
+        "real",
+        "dB",
+        0,
+        60,
+        False,
+        "--margin",
+        "what a filter must keep under the limit, and a ranked network should [3 dB]",
+    ),
 )
 
+# what only some networks have, and what is of use only beside something else
+_NETWORKS_OF = {
+    "middle_resistance": ("pi-l",),
+    "coupling": ("tapped-coil", "link"),
+    "tap": ("tapped-coil",),
+    "link": ("link",),
+}
+_BESIDE = {
+    "filter_kind": "filter",
+    "trap": "filter",
+    "transformer_magnetizing": "transformer",
+    "transformer_leakage": "transformer",
+}
 # what only one family of device has
 _BELONGS_TO = {
     "amplification_factor": "tube",
@@ -327,6 +471,18 @@ def conflicts(values: dict[str, object]) -> list[str]:
         owner = _BELONGS_TO.get(field.name)
         if owner is not None and owner != family and values.get(field.name) is not None:
             found.append(f"{field.path}: is of no use for device.family {family}; it belongs to {owner}")
+    if values.get("tap") is not None and (values.get("loaded_q") or values.get("input_q")) is not None:
+        found.append("tank.tap: got both a tap and a Q, which follows from it; give one of them")
+    network = values.get("network") or AUTO
+    for field in JOB_FIELDS:
+        owners = _NETWORKS_OF.get(field.name)
+        if owners and values.get(field.name) is not None and network not in (*owners, AUTO):
+            found.append(f"{field.path}: is of no use for network {network}; it belongs to {' and '.join(owners)}")
+        needed = _BESIDE.get(field.name)
+        if needed and values.get(field.name) is not None and values.get(needed) in (None, NONE):
+            found.append(f"{field.path}: is of no use without tank.{needed}")
+    if values.get("trap") is not None and values.get("filter_kind") not in (None, "chebyshev-trap"):
+        found.append(f"tank.trap: is of no use for a {values['filter_kind']} filter; it belongs to chebyshev-trap")
     if isinstance(values.get("limit"), str):
         try:
             limit_named(str(values["limit"]))

@@ -21,6 +21,7 @@ from rfstage.load import Load
 OUTPUT_CAPACITANCE = "Cout"
 CHOKE = "Lchoke"
 BLOCKING = "Cblock"
+TRANSFORMER = "T1"
 
 
 @dataclass(frozen=True, slots=True)

@@ -125,7 +125,7 @@ def _stage(
         device=device,
         drive=Drive(bias, effective + opposed),
         supply=circuit.supply,
-        branches=(circuit.blocking, *circuit.tank),
+        branches=(*circuit.coupler, *circuit.tank, *circuit.filter),
         load=settings.load,
         asked=Asked(job.power, job.conduction_angle, settings.minimum_voltage),
         limit_rule=job.limit,

@@ -25,7 +25,7 @@ from rfstage.harmonics import Harmonic, harmonics, terminations, trough_dip, wit
 from rfstage.job import Job
 from rfstage.ladder import Ladder
 from rfstage.load import MeasuredLoad
-from rfstage.matching.networks import Tank, describe
+from rfstage.matching.tank import Tank, describe
 from rfstage.matching.quality import strongest_resonance_below
 from rfstage.operating import OperatingPoint, Rating, ratings
 from rfstage.pulse import operating_class, pulse_coefficients
@@ -167,7 +167,7 @@ def _assembled(
     settings: Settings, coefficients: NDArray[np.float64], built: Built, designed_to: str, book_resistance: float
 ) -> Design:
     job, circuit, point = settings.job, built.circuit, built.point
-    ladder = Ladder((*circuit.feed, *circuit.tank))
+    ladder = Ladder(circuit.branches)
     shown_orders = range(2, settings.highest_order + 1)
     dip = trough_dip(
         ladder,
@@ -181,6 +181,7 @@ def _assembled(
         settings.request.network,
         circuit.feed,
         circuit.tank,
+        behind=circuit.filter,
         load=settings.load,
         carrier=job.carrier,
         current=point.fundamental_current,
@@ -230,7 +231,7 @@ def _sized(settings: Settings, circuit: Circuit, tank: Tank) -> dict[str, object
     if job.choke is None:
         found["supply.choke"] = circuit.supply.choke
     if job.blocking is None:
-        found["tank.blocking"] = float(circuit.blocking.value)
+        found["tank.blocking"] = float(circuit.coupler[0].value)
     if settings.request.network == "pi" and job.loaded_q is None and job.input_q is None:
         found["tank.loaded_q"] = tank.loaded_q
     return found
@@ -271,4 +272,6 @@ def _cautions(
 def _input_capacitance(circuit: Circuit) -> float | None:
     """Return the network's capacitor across its input [F], or None where it begins otherwise."""
     first = circuit.tank[0]
+    if len(circuit.coupler) > 1:
+        return None  # behind a transformer
     return float(first.value) if first.place == "shunt" and first.kind == "capacitor" else None

@@ -13,9 +13,11 @@ from typing import TypeVar
 
 from rfstage.errors import InputError
 from rfstage.job import Job
+from rfstage.jobfields import AUTO
+from rfstage.ladder import Branch, Ladder
 from rfstage.limits import Limit, limit_named
 from rfstage.load import Load, MeasuredLoad, SeriesLoad
-from rfstage.matching.networks import Request
+from rfstage.matching.task import Request
 from rfstage.quantity import exact_text
 
 BIPOLAR_THRESHOLD = 0.7  # V
@@ -24,7 +26,11 @@ T = TypeVar("T")
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Settings:
-    """Every value of a job, given or assumed, in SI units; ``assumed`` holds the second kind by key."""
+    """Every value of a job, given or assumed, in SI units; ``assumed`` holds the second kind by key.
+
+    ``filter`` holds the parts of a low-pass filter behind the tank once one is chosen; ``margin`` [dB] is what it
+    keeps under the limit.
+    """
 
     job: Job
     family: str
@@ -35,12 +41,21 @@ class Settings:
     load: Load
     load_impedance: complex
     request: Request
+    filter: tuple[Branch, ...]
+    margin: float
     choke_q: float
     choke_resistance: float
     highest_order: int
     limit: Limit | None
     line: SeriesLoad
     assumed: dict[str, object]
+
+    @property
+    def tank_load(self) -> complex:
+        """What the tank works into at the carrier [ohm]: the load, through the filter where there is one."""
+        if not self.filter:
+            return self.load_impedance
+        return complex(Ladder(self.filter).impedance(self.job.carrier, self.load_impedance))
 
     @property
     def half_angle(self) -> float:
@@ -77,13 +92,16 @@ def with_defaults(job: Job) -> Settings:
         )
     fifty: complex | MeasuredLoad = 50 + 0j
     load = load_over_frequency(use("load.impedance", job.load, fifty), job.carrier)
-    network = use("tank.network", job.network, "pi")
     request = Request(
-        network=network,
+        network=use("tank.network", job.network, "pi"),
         coil_q=use("tank.coil_q", job.coil_q, 150.0),
         capacitor_q=use("tank.capacitor_q", job.capacitor_q, 1000.0),
         loaded_q=job.loaded_q,
         input_q=job.input_q,
+        middle_resistance=job.middle_resistance,
+        coupling=job.coupling,
+        tap=job.tap,
+        link=job.link,
     )
     return Settings(
         job=job,
@@ -95,6 +113,8 @@ def with_defaults(job: Job) -> Settings:
         load=load,
         load_impedance=complex(load.impedance(job.carrier)),
         request=request,
+        filter=(),
+        margin=3.0 if job.margin is None else job.margin,
         choke_q=use("supply.choke_q", job.choke_q, 100.0),
         choke_resistance=use("supply.choke_resistance", job.choke_resistance, 0.0),
         highest_order=use("stage.harmonics", job.harmonics, 10),

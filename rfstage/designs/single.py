@@ -11,7 +11,9 @@ from rfstage.designs.settings import load_over_frequency
 from rfstage.harmonics import terminations
 from rfstage.ladder import Ladder
 from rfstage.load import MeasuredLoad
-from rfstage.matching.networks import Request, Tank, describe, solve_network, tank_efficiency
+from rfstage.matching.networks import solve_network
+from rfstage.matching.tank import Tank, describe, tank_efficiency
+from rfstage.matching.task import Request
 
 
 class SingleNetwork(NamedTuple):

@@ -15,35 +15,40 @@ from numpy.typing import NDArray
 from rfstage.designs.settings import Settings
 from rfstage.errors import ConvergenceError, ImpossibleError
 from rfstage.ladder import Branch
-from rfstage.matching.networks import (
-    DEFAULT_LOADED_Q,
-    DEFAULT_Q_MARGIN,
-    solve_network,
-    tank_efficiency,
-)
-from rfstage.matching.pi import least_loaded_q, pi_network
+from rfstage.matching.networks import shunt_reactance, solve_network
+from rfstage.matching.tank import tank_efficiency
+from rfstage.matching.task import DEFAULT_LOADED_Q
 from rfstage.operating import OperatingPoint, operating_point, operating_point_at
-from rfstage.stage import BLOCKING, Supply, feed
+from rfstage.stage import BLOCKING, TRANSFORMER, Supply, feed
 
 SMALL_RESISTANCE = 500.0  # ohm: up to here the choke is sized against it, above against the input capacitor
 SETTLED = 1e-13  # relative change of the load resistance
 NEAR = 0.05  # relative change of the load resistance over which the parts found are a good start for the next
+MAGNETIZING = 10.0  # times the load resistance: reactance of a transformer's magnetizing inductance
+LEAKAGE = 0.01  # of the magnetizing inductance
+CORE_Q = 20.0  # of the magnetizing inductance
 _ROUNDS = 60
 
 
 class Circuit(NamedTuple):
-    """Supply with its choke, blocking capacitor, and the network, for one load resistance [ohm]."""
+    """Supply with its choke, blocking capacitor, transformer or none, network, filter, for one load resistance."""
 
     supply: Supply
     output_capacitance: float
-    blocking: Branch
+    coupler: tuple[Branch, ...]
     tank: tuple[Branch, ...]
+    filter: tuple[Branch, ...]
     carrier: float
 
     @property
     def feed(self) -> tuple[Branch, ...]:
-        """What stands before the network: output capacitance, choke, blocking capacitor."""
-        return (*feed(self.output_capacitance, self.supply.branch(self.carrier)), self.blocking)
+        """What stands before the network: output capacitance, choke, blocking capacitor, transformer."""
+        return (*feed(self.output_capacitance, self.supply.branch(self.carrier)), *self.coupler)
+
+    @property
+    def branches(self) -> tuple[Branch, ...]:
+        """Everything from the device to the load."""
+        return (*self.feed, *self.tank, *self.filter)
 
 
 def circuit_for(settings: Settings, resistance: float, near: tuple[Branch, ...] = ()) -> Circuit:
@@ -70,47 +75,59 @@ def circuit_for(settings: Settings, resistance: float, near: tuple[Branch, ...] 
     )
     capacitor_q = settings.request.capacitor_q
     blocker = Branch(BLOCKING, "series", "capacitor", blocking, q=None if math.isinf(capacitor_q) else capacitor_q)
-    before = (*feed(settings.output_capacitance, supply.branch(job.carrier)), blocker)
+    coupler = (blocker, *_transformer(settings, resistance))
+    before = (*feed(settings.output_capacitance, supply.branch(job.carrier)), *coupler)
     tank = solve_network(
         settings.request,
         feed=before,
         wanted=complex(resistance),
-        load=settings.load_impedance,
+        load=settings.tank_load,
         carrier=job.carrier,
         near=near,
     )
-    return Circuit(supply, settings.output_capacitance, blocker, tank, job.carrier)
+    return Circuit(supply, settings.output_capacitance, coupler, tank, settings.filter, job.carrier)
+
+
+def _transformer(settings: Settings, resistance: float) -> tuple[Branch, ...]:
+    """Return the transformer that was asked for, sized for a load resistance [ohm], or nothing."""
+    job = settings.job
+    if job.transformer is None:
+        return ()
+    magnetizing = job.transformer_magnetizing
+    if magnetizing is None:
+        magnetizing = MAGNETIZING * resistance / (2 * math.pi * job.carrier)
+    leakage = LEAKAGE * magnetizing if job.transformer_leakage is None else job.transformer_leakage
+    return (
+        Branch(
+            TRANSFORMER,
+            "through",
+            "transformer",
+            1 / job.transformer,
+            q_frequency=job.carrier,
+            lead_inductance=leakage,
+            second=magnetizing,
+            second_q=CORE_Q,
+        ),
+    )
 
 
 def _input_reactance(settings: Settings, resistance: float) -> float | None:
-    """Return the reactance [ohm] of the capacitance a pi needs across the device, or None for other networks.
+    """Return the reactance [ohm] of the capacitance a network needs across the device, or None without one.
 
     Where the load resistance is high this is what choke and blocking capacitor are sized against: both
     see the current of the input capacitor. The input capacitor also tunes the choke out, so that it is
     1/0.9 of what the network needs without one, and the choke ten times its reactance is nine times this.
+    Behind a transformer it is not across the device.
     """
-    if settings.request.network != "pi":
+    if settings.job.transformer is not None:
         return None
-    q = settings.request.loaded_q or default_loaded_q(settings, resistance)
-    try:
-        first = pi_network(
-            complex(resistance),
-            settings.load_impedance,
-            carrier=settings.job.carrier,
-            loaded_q=q,
-            input_q=settings.request.input_q,
-        )[0]
-    except ImpossibleError:
-        return None  # the network itself says what is wrong
-    value = float(first.value)
-    return 1 / (2 * math.pi * settings.job.carrier * value) if value > 0 else None
-
-
-def default_loaded_q(settings: Settings, resistance: float) -> float:
-    """Return the loaded Q [-] of a pi where none is asked: 10, or the least that works + 2."""
-    taken = resistance * 2 * math.pi * settings.job.carrier * settings.output_capacitance
-    least = least_loaded_q(complex(resistance), settings.load_impedance, least_input_q=taken)
-    return max(DEFAULT_LOADED_Q, least + DEFAULT_Q_MARGIN)
+    return shunt_reactance(
+        settings.request,
+        resistance=resistance,
+        capacitance=settings.output_capacitance,
+        load=settings.tank_load,
+        carrier=settings.job.carrier,
+    )
 
 
 def point_for(settings: Settings, coefficients: NDArray[np.float64], efficiency: float) -> OperatingPoint:
@@ -141,13 +158,13 @@ def _given(settings: Settings, coefficients: NDArray[np.float64]) -> dict[str, f
 
 
 def _efficiency(settings: Settings, circuit: Circuit) -> float:
-    return tank_efficiency((*circuit.feed, *circuit.tank), settings.load_impedance, settings.job.carrier)
+    return tank_efficiency(circuit.branches, settings.load_impedance, settings.job.carrier)
 
 
 def _efficiency_at_first_sight(settings: Settings) -> float:
-    """Return 1 − loaded over unloaded Q [-], about the efficiency of a pi, as a start."""
+    """Return 1 − loaded over unloaded Q [-], about the efficiency of a tank, as a start."""
     request = settings.request
-    if request.network != "pi" or request.input_q is not None:
+    if request.network in ("l", "l-high-pass") or request.input_q is not None:
         return 1.0
     lost = (request.loaded_q or DEFAULT_LOADED_Q) * (1 / request.coil_q + 1 / request.capacitor_q)
     return 1 - lost if lost < 0.5 else 1.0

@@ -1,9 +1,9 @@
 """Close a network exactly over its own losses.
 
-A closed form knows lossless parts. Here the parts get their Qs, and damped Newton moves their values until
-the network shows the wanted impedance, and a pi also has the loaded Q that was asked. What stands before
-the network (output capacitance, choke, blocking capacitor) is taken off exactly beforehand, so every
-network goes through this one step.
+A closed form knows lossless parts. Here the parts get their Qs, and damped Newton moves the values that are
+free until the network shows the wanted impedance, and has the loaded Q that was asked where a third value is
+free. What stands before the network (output capacitance, choke, blocking capacitor, transformer) is taken off
+exactly beforehand, so every network goes through this one step.
 """
 
 from __future__ import annotations
@@ -11,6 +11,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Sequence
 from dataclasses import replace
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -29,6 +30,24 @@ _GOOD = 0.2  # an iteration that leaves less than this of the miss lets the deri
 Residual = Callable[[NDArray[np.float64]], NDArray[np.float64]]
 
 
+class Free(NamedTuple):
+    """A number of a network that may move: which part, which of its numbers; ``tied`` ones keep their ratio to it."""
+
+    part: int
+    attribute: str = "value"
+    tied: tuple[str, ...] = ()
+
+
+def free_values(tank: Sequence[Branch]) -> tuple[Free, ...]:
+    """Return the values of all parts, both windings of a coupled pair."""
+    found = []
+    for k, branch in enumerate(tank):
+        found.append(Free(k))
+        if branch.kind == "coupled":
+            found.append(Free(k, "second"))
+    return tuple(found)
+
+
 def behind(feed: Sequence[Branch], wanted: complex, carrier: float) -> complex:
     """Return the impedance [ohm] that must follow ``feed`` for the device to see ``wanted`` [ohm]."""
     a, b, c, d = (complex(x) for x in Ladder(feed).chain(carrier))
@@ -37,11 +56,14 @@ def behind(feed: Sequence[Branch], wanted: complex, carrier: float) -> complex:
 
 def with_losses(tank: Sequence[Branch], *, coil_q: float, capacitor_q: float, carrier: float) -> tuple[Branch, ...]:
     """Return the parts with their Qs [-]; an infinite Q is lossless."""
-    given = {"coil": coil_q, "capacitor": capacitor_q}
-    return tuple(
-        branch if math.isinf(given[branch.kind]) else replace(branch, q=given[branch.kind], q_frequency=carrier)
-        for branch in tank
-    )
+    coil, capacitor = (None if math.isinf(q) else q for q in (coil_q, capacitor_q))
+    given: dict[str, dict[str, Any]] = {
+        "capacitor": {"q": capacitor},
+        "coil": {"q": coil},
+        "coupled": {"q": coil, "second_q": coil},
+        "trap": {"q": coil, "second_q": capacitor},
+    }
+    return tuple(replace(branch, q_frequency=carrier, **given[branch.kind]) for branch in tank)
 
 
 def close(
@@ -51,8 +73,8 @@ def close(
     wanted: complex,
     load: complex,
     carrier: float,
+    free: Sequence[Free],
     asked_loaded_q: float | None = None,
-    fixed: int = 0,
 ) -> tuple[Branch, ...]:
     """Return the tank with values that meet the wanted impedance to 1e-12 relative.
 
@@ -66,8 +88,8 @@ def close(
         Hz.
     asked_loaded_q : float or None
         Where three values are free: the loaded Q [-] they must also give.
-    fixed : int
-        How many of the first parts keep their values.
+    free : sequence of Free
+        Two values that move, or three with a loaded Q.
 
     Raises
     ------
@@ -78,12 +100,16 @@ def close(
     target = (d * wanted - b) / (a - c * wanted)
     # relative misses behind the feed show at the device as many times larger as this
     steepness = max(1.0, abs(target / wanted / (c * target + d) ** 2))
-    moving = tank[fixed:]
-    scale = np.array([_scale(branch, target, carrier) for branch in moving])
+    scale = np.array([_scale(tank[f.part], f.attribute, target, carrier) for f in free])
 
     def rebuilt(x: NDArray[np.float64]) -> tuple[Branch, ...]:
-        values = (x * scale).tolist()
-        return (*tank[:fixed], *(replace(branch, value=v) for branch, v in zip(moving, values, strict=True)))
+        parts = list(tank)
+        for f, v in zip(free, (x * scale).tolist(), strict=True):
+            branch = parts[f.part]
+            old = float(getattr(branch, f.attribute))
+            changes = {name: float(getattr(branch, name)) * v / old for name in f.tied}
+            parts[f.part] = replace(branch, **{f.attribute: v}, **changes)
+        return tuple(parts)
 
     def residual(x: NDArray[np.float64]) -> NDArray[np.float64]:
         parts = rebuilt(x)
@@ -97,7 +123,7 @@ def close(
             return np.full(x.size, math.inf)
         return np.array([miss.real, miss.imag, q / asked_loaded_q - 1])
 
-    start = np.array([float(branch.value) for branch in moving]) / scale
+    start = np.array([float(getattr(tank[f.part], f.attribute)) for f in free]) / scale
     parts = rebuilt(_newton(residual, start, tolerance=_TOLERANCE / steepness))
     if not _holds((*feed, *parts), wanted, load, carrier):
         raise ConvergenceError("its Q is beyond what 16 digits can tell")
@@ -112,11 +138,13 @@ def _holds(branches: Sequence[Branch], wanted: complex, load: complex, carrier: 
     return bool(abs(z - wanted) <= _KEPT * abs(wanted) and abs(z.real - taken) <= _KEPT * z.real)
 
 
-def _scale(branch: Branch, target: complex, carrier: float) -> float:
-    """Return the part's own size, or that of a small part where it is next to nothing."""
+def _scale(branch: Branch, attribute: str, target: complex, carrier: float) -> float:
+    """Return the number's own size, or that of a small part where it is next to nothing."""
     omega = 2 * math.pi * carrier
-    least = 0.1 * abs(target) / omega if branch.kind == "coil" else 0.1 / (omega * abs(target))
-    return max(abs(float(branch.value)), least)
+    size = abs(float(getattr(branch, attribute)))
+    if branch.kind == "coupled":
+        return size  # a winding comes from a closed form that has none of no size
+    return max(size, 0.1 * abs(target) / omega if branch.kind == "coil" else 0.1 / (omega * abs(target)))
 
 
 def _newton(residual: Residual, start: NDArray[np.float64], *, tolerance: float) -> NDArray[np.float64]:

@@ -19,6 +19,11 @@ import math
 from rfstage.errors import ImpossibleError
 from rfstage.ladder import Branch
 from rfstage.matching.parts import capacitor, coil, four_figures, parallel_resistance
+from rfstage.matching.pi import too_much_capacitance
+from rfstage.matching.quality import loaded_q
+from rfstage.matching.solving import finish, positive
+from rfstage.matching.task import Task
+from rfstage.quantity import show
 
 
 def l_network(wanted: complex, load: complex, *, carrier: float, high_pass: bool = False) -> tuple[Branch, ...]:
@@ -110,3 +115,34 @@ def _parts(reactance: float, susceptance: float, carrier: float, *, first_shunt:
         else coil("L1", "shunt", -1 / susceptance, carrier)
     )
     return (shunt, series) if first_shunt else (series, shunt)
+
+
+def solve(task: Task) -> tuple[Branch, ...]:
+    """Return the L of a task, exact with its losses; errors as `rfstage.matching.networks.solve_network`."""
+    request, load, carrier = task.request, task.load, task.carrier
+    high_pass = request.network == "l-high-pass"
+    if request.loaded_q is not None or request.input_q is not None:
+        asked = request.loaded_q if request.loaded_q is not None else request.input_q
+        q = loaded_q((), l_network(task.start, load, carrier=carrier, high_pass=high_pass), load, carrier)
+        key = "loaded_q" if request.loaded_q is not None else "input_q"
+        raise ImpossibleError(
+            f"tank.{key}: got {asked:.6g} for network {request.network}, whose Q follows from the resistances: "
+            f"{q:.3g} here; leave the Q out, or ask for network pi"
+        )
+    try:
+        tank = l_network(task.target, load, carrier=carrier, high_pass=high_pass)
+    except ImpossibleError:
+        room = None if high_pass or not task.capacitance else _room_for_output_capacitance(task)
+        if room is not None and room < task.capacitance:
+            raise ImpossibleError(too_much_capacitance(task) + f"; an L leaves room for {show(room, 'F')}") from None
+        raise
+    return positive(finish(task, tank, asked_loaded_q=None))
+
+
+def _room_for_output_capacitance(task: Task) -> float | None:
+    """Return the shunt capacitance [F] at the device of the L without any, or None if it has none there."""
+    try:
+        first = l_network(task.start, task.load, carrier=task.carrier)[0]
+    except ImpossibleError:
+        return None
+    return float(first.value) if first.place == "shunt" else None

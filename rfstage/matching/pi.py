@@ -16,9 +16,13 @@ from __future__ import annotations
 
 import math
 
-from rfstage.errors import ImpossibleError
+from rfstage.errors import ConvergenceError, ImpossibleError
 from rfstage.ladder import Branch
+from rfstage.matching.exact import Free
 from rfstage.matching.parts import four_figures, parallel_resistance
+from rfstage.matching.solving import finish
+from rfstage.matching.task import DEFAULT_LOADED_Q, DEFAULT_Q_MARGIN, Task
+from rfstage.quantity import exact_text, show
 
 
 def least_loaded_q(wanted: complex, load: complex, *, least_input_q: float = 0.0) -> float:
@@ -105,4 +109,96 @@ def pi_network(
         Branch("C1", "shunt", "capacitor", (q1 / r1 + (1 / wanted).imag) / omega),
         Branch("L1", "series", "coil", virtual * (q1 + q2) / omega),
         Branch("C2", "shunt", "capacitor", (q2 / r2 - (1 / load).imag) / omega),
+    )
+
+
+def solve(task: Task) -> tuple[Branch, ...]:
+    """Return the pi of a task, exact with its losses; errors as `rfstage.matching.networks.solve_network`."""
+    request, load, carrier = task.request, task.load, task.carrier
+    asked, input_q = request.loaded_q, request.input_q
+    if asked is None and input_q is None:
+        asked = max(DEFAULT_LOADED_Q, least_for(task) + DEFAULT_Q_MARGIN)
+    elif asked is not None:
+        pi_network(task.start, load, carrier=carrier, loaded_q=asked)  # says so where the Q is too low
+        if asked <= least_loaded_q(task.target, load):
+            raise ImpossibleError(
+                f"tank.loaded_q: behind choke and blocking capacitor a pi has to start from "
+                f"{four_figures(task.target)} ohm and needs a loaded Q above "
+                f"{least_loaded_q(task.target, load):.4g}; "
+                f"got {asked:.6g} (a larger tank.blocking or supply.choke brings it down)"
+            )
+    try:
+        parts = finish(
+            task,
+            first_guess(task, asked),
+            asked_loaded_q=None if input_q is not None else asked,
+            free=(Free(1), Free(2)) if input_q is not None else (Free(0), Free(1), Free(2)),
+        )
+    except ConvergenceError:
+        if task.capacitance and task.taken > (input_q or request.loaded_q or DEFAULT_LOADED_Q):
+            raise ImpossibleError(too_much_capacitance(task)) from None
+        raise
+    _check(task, parts)
+    return parts
+
+
+def least_for(task: Task) -> float:
+    """Return the least loaded Q [-] with which a pi does a task."""
+    return max(least_loaded_q(task.start, task.load, least_input_q=task.taken), least_loaded_q(task.target, task.load))
+
+
+def first_guess(task: Task, loaded_q: float | None) -> tuple[Branch, ...]:
+    """Return the lossless pi behind the feed, for a loaded Q [-] or, where there is none, the asked input-side Q."""
+    input_q = task.request.input_q
+    if input_q is not None:
+        pi_network(task.start, task.load, carrier=task.carrier, input_q=input_q)  # says so where the Q is too low
+        input_q = behind_feed(task, input_q)
+    return pi_network(task.target, task.load, carrier=task.carrier, loaded_q=loaded_q, input_q=input_q)
+
+
+def behind_feed(task: Task, input_q: float) -> float:
+    """Return the input-side Q [-] that the network itself has, output capacitance and reactances taken off."""
+    if task.transformed:
+        return input_q
+    susceptance = input_q * (1 / task.wanted).real - task.omega * task.capacitance
+    return parallel_resistance(task.target) * (susceptance - (1 / task.target).imag)
+
+
+def _check(task: Task, parts: tuple[Branch, ...]) -> None:
+    """Raise where a value came out at nothing or below."""
+    if float(parts[1].value) <= 0:
+        raise ConvergenceError("the coil would have to be negative")
+    if float(parts[0].value) <= 0:
+        if task.capacitance:
+            raise ImpossibleError(too_much_capacitance(task))
+        raise ImpossibleError(
+            f"network {task.request.network}: the input capacitor comes out at nothing; raise the loaded Q or "
+            "tank.blocking"
+        )
+    if float(parts[2].value) <= 0:
+        least = least_loaded_q(task.start, task.load, least_input_q=task.taken)
+        if task.load.imag >= 0:
+            raise ImpossibleError(
+                f"network pi: the output capacitor comes out at nothing, from the losses or from a blocking capacitor "
+                f"with too much reactance; a loaded Q above {least:.3g} by some margin, or a larger tank.blocking, "
+                "helps"
+            )
+        raise ImpossibleError(
+            f"network pi: the load's own capacitance is more than the output capacitor this Q leaves; a loaded Q "
+            f"above about {least:.3g} leaves room"
+        )
+
+
+def too_much_capacitance(task: Task) -> str:
+    """Return what is wrong where the output capacitance is more than a network leaves room for."""
+    capacitance, carrier = task.capacitance, task.carrier
+    fits = least_loaded_q(task.start, task.load, least_input_q=1.05 * task.taken)
+    reactance = show(1 / (task.omega * capacitance), "ohm")
+    coil_q = task.request.coil_q
+    better = f", with coils of far higher Q than {coil_q:.4g}" if fits > coil_q / 3 else ""
+    return (
+        f"device.output_capacitance: {show(capacitance, 'F')} has {reactance} reactance at "
+        f"{exact_text(carrier, 'Hz')}, an input-side Q of {task.taken:.3g} by itself against "
+        f"{four_figures(task.wanted)} ohm, which is more than this Q leaves; a pi of loaded Q {fits:.3g} or "
+        f"more would take it in{better}"
     )

@@ -12,6 +12,7 @@ from collections.abc import Sequence
 
 import numpy as np
 
+from rfstage.kinds import THROUGH
 from rfstage.ladder import Branch, Ladder
 from rfstage.load import Load
 
@@ -37,7 +38,8 @@ def impedance_and_loaded_q(
     stored = 0.0
     for k, (branch, state) in enumerate(zip(branches, walk.branches, strict=True)):
         if k >= len(feed) or branch.origin == "device":
-            stored += branch.stored_energy(carrier, complex(state.current))
+            seen = None if state.seen is None else complex(state.seen)
+            stored += branch.stored_energy(carrier, complex(state.current), seen)
     return z, 2 * math.pi * carrier * stored / (z.real / 2)
 
 
@@ -50,8 +52,13 @@ def loaded_q(feed: Sequence[Branch], tank: Sequence[Branch], load: complex, carr
 
 
 def input_side_q(feed: Sequence[Branch], tank: Sequence[Branch], resistance: float, carrier: float) -> float | None:
-    """Return the input-side Q [-], or None where no capacitor stands across the device."""
-    across = [b for b in (*feed, *tank[:1]) if b.place == "shunt" and b.kind == "capacitor"]
+    """Return the input-side Q [-], or None where no capacitor stands across the device.
+
+    What stands behind a transformer is not across the device.
+    """
+    near = [*feed, *tank[:1]]
+    beyond = next((k for k, b in enumerate(near) if b.place == THROUGH), len(near))
+    across = [b for b in near[:beyond] if b.place == "shunt" and b.kind == "capacitor"]
     return resistance * 2 * math.pi * carrier * sum(float(b.value) for b in across) if across else None
 
 

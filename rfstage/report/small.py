@@ -6,7 +6,7 @@ from collections.abc import Sequence
 
 from rich.text import Text
 
-from rfstage.matching.networks import Tank
+from rfstage.matching.tank import Tank
 from rfstage.quantity import show, show_complex
 from rfstage.report.circuit import circuit
 from rfstage.report.design import tank_lines
