@@ -109,7 +109,8 @@ def about_dip(dip: float, *, network: str, corrected: bool) -> list[Caution]:
     if dip <= DIP_CAUTION:
         return []
     strength = "do not hold" if dip > DIP_STRONG else "are optimistic"
-    cure = "a higher input-side Q shorts them" if network == "pi" else "network pi shorts them"
+    shunt = network in ("pi", "pi-l", "tapped-coil", "link")
+    cure = "a higher Q shorts them" if shunt else "network pi shorts them"
     held = "; the correction to the settled power makes up for it" if corrected else ""
     return [
         Caution(

@@ -19,6 +19,7 @@ from rfstage.load import Load
 
 STRAY_LEAD = 5e-9  # H in each shunt capacitor, to see which harmonics strays decide
 STRAY_DECIDES = 3.0  # dB
+WAVEFORM_ORDERS = 24  # of the textbook current, for the trough dip
 ABSENT = 1e-12  # of the fundamental: below it the ideal pulse has no such harmonic
 _SAMPLES = 1024  # of one cycle, to find the lowest voltage in
 
@@ -134,7 +135,7 @@ def with_settled_levels(
 
 
 def _with_stray_lead(branch: Branch) -> Branch:
-    if branch.place == "shunt" and branch.kind == "capacitor" and branch.origin == "part":
+    if branch.place == "shunt" and branch.kind in ("capacitor", "trap") and branch.origin == "part":
         return replace(branch, lead_inductance=branch.lead_inductance + STRAY_LEAD)
     return branch
 

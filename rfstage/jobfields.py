@@ -73,7 +73,7 @@ SPECIAL: tuple[Field, ...] = (
         1e7,
         True,
         "--middle-resistance",
-        "pi-l: resistance between its pi and its L [5 times the load's]",
+        "pi-l: resistance between its pi and its L [5 times the load's; 2 times from below it]",
     ),
     Field(
         "tank.coupling",

@@ -18,7 +18,6 @@ from rfstage.designs.building import Built, build
 from rfstage.designs.settings import Settings, with_defaults
 from rfstage.designs.textbook import by_the_book, circuit_at
 from rfstage.errors import ImpossibleError, RfstageError
-from rfstage.job import Job
 from rfstage.pulse import pulse_coefficients
 from rfstage.quantity import exact_text, show
 from rfstage.steady import SteadyState, settle, settle_many
@@ -34,8 +33,12 @@ VOLTAGE_RATIO = 3.0  # of the supply, where no rating is given
 EFFICIENCY_LOST = 0.15  # against the textbook's
 
 
-def corrected(settings: Settings, coefficients: NDArray[np.float64], book: Built) -> tuple[Built, SteadyState]:
+def corrected(
+    settings: Settings, coefficients: NDArray[np.float64], book: Built, *, advise: bool = True
+) -> tuple[Built, SteadyState]:
     """Return the stage whose settled power is the asked one within 0.1 %, and its steady state.
+
+    Where it can't be had the way out is looked for, unless not to ``advise``.
 
     Raises
     ------
@@ -47,7 +50,9 @@ def corrected(settings: Settings, coefficients: NDArray[np.float64], book: Built
     try:
         return _search(settings, coefficients, book)
     except ImpossibleError as error:
-        raise ImpossibleError(f"{error}{_way_out(settings.job)}") from None
+        if not advise:
+            raise
+        raise ImpossibleError(f"{error}{_way_out(settings)}") from None
 
 
 def _search(settings: Settings, coefficients: NDArray[np.float64], book: Built) -> tuple[Built, SteadyState]:
@@ -121,9 +126,11 @@ def _judge(settings: Settings, book: Built, state: SteadyState) -> None:
         )
 
 
-def _way_out(job: Job) -> str:
+def _way_out(made: Settings) -> str:
     """Say which network or supply would do it, tried and not guessed; or that --textbook keeps the book's design."""
-    plain = "network pi with its default Q" if job.network in (None, "pi") else "network pi"
+    network = made.request.network
+    job = replace(made.job, network=network)
+    plain = "network pi with its default Q" if network == "pi" else "network pi"
     trials: list[tuple[str, dict[str, object]]] = [
         (plain, {"network": "pi", "loaded_q": None, "input_q": None}),
         ("network pi with an input-side Q of 4", {"network": "pi", "loaded_q": None, "input_q": 4.0}),

@@ -18,24 +18,37 @@ from rfstage.cautions import (
 )
 from rfstage.designs.building import Built, build
 from rfstage.designs.settings import Settings, with_defaults
-from rfstage.designs.textbook import Circuit, by_the_book
+from rfstage.designs.textbook import Circuit, Fitted, by_the_book
 from rfstage.drive import DriveVoltages
-from rfstage.errors import ConvergenceError
-from rfstage.harmonics import Harmonic, harmonics, terminations, trough_dip, with_settled_levels
+from rfstage.errors import ConvergenceError, ImpossibleError, RfstageError
+from rfstage.harmonics import (
+    WAVEFORM_ORDERS,
+    Harmonic,
+    harmonics,
+    terminations,
+    trough_dip,
+    with_settled_levels,
+)
 from rfstage.job import Job
+from rfstage.jobfields import AUTO, NONE
 from rfstage.ladder import Ladder
 from rfstage.load import MeasuredLoad
-from rfstage.matching.tank import Tank, describe
+from rfstage.matching.pil import default_middle
 from rfstage.matching.quality import strongest_resonance_below
+from rfstage.matching.tank import Tank, describe
+from rfstage.matching.task import COUPLINGS
 from rfstage.operating import OperatingPoint, Rating, ratings
 from rfstage.pulse import operating_class, pulse_coefficients
 from rfstage.quantity import show_orders
 from rfstage.stage import Stage
 
 if TYPE_CHECKING:
+    from rfstage.designs.ranking import Ranking
+    from rfstage.filters.choose import Filter
     from rfstage.steady import SteadyState
 
-WAVEFORM_ORDERS = 24  # of the textbook current, for the trough dip
+FILTER_ROUNDS = 5  # in which the filter is chosen again for what the steady state adds
+FILTER_SPARE = 0.2  # dB more than what was short, so that the rounds end
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -46,7 +59,8 @@ class Design:
     order 0; ``point`` holds the book's values for the stage as designed, ``settled`` its steady state, or None
     where that was not asked; ``book_resistance`` [ohm] is the load resistance before any correction;
     ``continued`` names the harmonic orders at which a measured load had to be continued beyond its table;
-    ``assumed`` holds what was not given and taken by default, by key.
+    ``assumed`` holds what was not given and taken by default, by key. ``filter`` is the harmonic filter in the stage,
+    ``ranking`` all networks where they were compared.
     """
 
     job: Job
@@ -65,6 +79,8 @@ class Design:
     stage: Stage
     assumed: dict[str, object]
     settled: SteadyState | None = None
+    filter: Filter | None = None
+    ranking: Ranking | None = None
 
     @property
     def worst(self) -> Harmonic | None:
@@ -106,15 +122,63 @@ def design(job: Job, textbook: bool = False) -> Design:
     settings = with_defaults(job)
     orders = max(WAVEFORM_ORDERS, settings.highest_order)
     coefficients = pulse_coefficients(settings.half_angle, highest_order=orders, exponent=settings.exponent)
-    book = build(settings, *by_the_book(settings, coefficients))
-    if textbook:
-        return _assembled(settings, coefficients, book, "textbook", book.point.load_resistance)
+    ranking = None
+    if settings.request.network == AUTO:
+        from rfstage.designs.ranking import rank
 
+        ranking = rank(settings, coefficients)
+        candidates = ranking.allowed
+    else:
+        candidates = [_fitted(settings, coefficients)]
+    if textbook:
+        made = candidates[0]
+        book = build(made.settings, made.circuit, made.point)
+        resistance = book.point.load_resistance
+        return _assembled(coefficients, made, book, "textbook", resistance, ranking)
+    failed: list[RfstageError] = []
+    for made in candidates:
+        try:
+            found = _to_settled_power(coefficients, made, advise=len(candidates) == 1)
+        except (ImpossibleError, ConvergenceError) as error:
+            failed.append(error)
+            continue
+        if ranking is None:
+            return found
+        return replace(found, ranking=ranking.settled(found.settings.request.network, [str(e) for e in failed]))
+    raise failed[0]
+
+
+def _fitted(settings: Settings, coefficients: NDArray[np.float64], extra: NDArray[np.float64] | None = None) -> Fitted:
+    """Return the book's circuit, with a filter where the job asks for one and the limit needs it."""
+    circuit, point = by_the_book(settings, coefficients)
+    if settings.job.filter in (None, NONE):
+        return Fitted(settings, circuit, point, None)
+    from rfstage.designs.filtering import fitted
+
+    return fitted(settings, coefficients, circuit, point, extra)
+
+
+def _to_settled_power(coefficients: NDArray[np.float64], made: Fitted, *, advise: bool) -> Design:
+    """Return the design whose settled power is the asked one, its filter good for the settled harmonics too."""
     from rfstage.designs.correction import corrected
 
-    built, state = corrected(settings, coefficients, book)
-    made = _assembled(settings, coefficients, built, "settled", book.point.load_resistance)
-    return with_settled(made, state)
+    extra = np.zeros(made.settings.highest_order - 1)
+    for _ in range(FILTER_ROUNDS):
+        book = build(made.settings, made.circuit, made.point)
+        built, state = corrected(made.settings, coefficients, book, advise=advise)
+        resistance = book.point.load_resistance
+        found = with_settled(_assembled(coefficients, made, built, "settled", resistance, None), state)
+        if made.settings.job.filter in (None, NONE):
+            return found
+        short = np.array([made.settings.margin - (h.margin or 0.0) if h.limit else 0.0 for h in found.harmonics])
+        if short.max() <= 0:
+            return found
+        extra += np.where(short > 0, short + FILTER_SPARE, 0.0)
+        made = _fitted(replace(made.settings, filter=()), coefficients, extra)
+    raise ImpossibleError(
+        f"network {made.settings.request.network}: no filter holds the limit in steady state; {short.max():.1f} dB is "
+        f"short at order {int(short.argmax()) + 2}"
+    )
 
 
 def with_settled(made: Design, state: SteadyState | None = None) -> Design:
@@ -164,8 +228,14 @@ def with_settled(made: Design, state: SteadyState | None = None) -> Design:
 
 
 def _assembled(
-    settings: Settings, coefficients: NDArray[np.float64], built: Built, designed_to: str, book_resistance: float
+    coefficients: NDArray[np.float64],
+    made: Fitted,
+    built: Built,
+    designed_to: str,
+    book_resistance: float,
+    ranking: Ranking | None,
 ) -> Design:
+    settings = made.settings
     job, circuit, point = settings.job, built.circuit, built.point
     ladder = Ladder(circuit.branches)
     shown_orders = range(2, settings.highest_order + 1)
@@ -221,6 +291,8 @@ def _assembled(
         cautions=_cautions(built, settings, tank, levels, ladder, continued, designed_to),
         stage=built.stage,
         assumed={**settings.assumed, **_sized(settings, circuit, tank), **built.stand_ins},
+        filter=made.filter,
+        ranking=ranking,
     )
 
 
@@ -232,8 +304,25 @@ def _sized(settings: Settings, circuit: Circuit, tank: Tank) -> dict[str, object
         found["supply.choke"] = circuit.supply.choke
     if job.blocking is None:
         found["tank.blocking"] = float(circuit.coupler[0].value)
-    if settings.request.network == "pi" and job.loaded_q is None and job.input_q is None:
+    request = settings.request
+    if job.network in (None, AUTO):
+        found["tank.network"] = request.network
+    if request.network not in ("l", "l-high-pass") and (job.loaded_q, job.input_q, job.tap) == (None, None, None):
         found["tank.loaded_q"] = tank.loaded_q
+    if request.network == "pi-l" and job.middle_resistance is None:
+        found["tank.middle_resistance"] = default_middle(complex(tank.impedance.real), settings.tank_load)
+    if request.network in COUPLINGS and job.coupling is None:
+        found["tank.coupling"] = COUPLINGS[request.network]
+    if request.network == "link" and job.link is None:
+        found["tank.link"] = "tuned"
+    if job.transformer is not None:
+        transformer = circuit.coupler[1]
+        if job.transformer_magnetizing is None:
+            found["tank.transformer_magnetizing"] = float(transformer.second)
+        if job.transformer_leakage is None:
+            found["tank.transformer_leakage"] = float(transformer.lead_inductance)
+    if settings.limit is not None and job.margin is None and (job.filter or NONE) != NONE:
+        found["limit.margin"] = settings.margin
     return found
 
 

@@ -93,7 +93,7 @@ def with_defaults(job: Job) -> Settings:
     fifty: complex | MeasuredLoad = 50 + 0j
     load = load_over_frequency(use("load.impedance", job.load, fifty), job.carrier)
     request = Request(
-        network=use("tank.network", job.network, "pi"),
+        network=job.network or AUTO,
         coil_q=use("tank.coil_q", job.coil_q, 150.0),
         capacitor_q=use("tank.capacitor_q", job.capacitor_q, 1000.0),
         loaded_q=job.loaded_q,

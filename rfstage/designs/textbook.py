@@ -7,19 +7,22 @@ than the load gets, and R is lower than the lossless one. The loop below is that
 from __future__ import annotations
 
 import math
-from typing import NamedTuple
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
 from rfstage.designs.settings import Settings
-from rfstage.errors import ConvergenceError, ImpossibleError
+from rfstage.errors import ConvergenceError
 from rfstage.ladder import Branch
 from rfstage.matching.networks import shunt_reactance, solve_network
 from rfstage.matching.tank import tank_efficiency
 from rfstage.matching.task import DEFAULT_LOADED_Q
 from rfstage.operating import OperatingPoint, operating_point, operating_point_at
 from rfstage.stage import BLOCKING, TRANSFORMER, Supply, feed
+
+if TYPE_CHECKING:
+    from rfstage.filters.choose import Filter
 
 SMALL_RESISTANCE = 500.0  # ohm: up to here the choke is sized against it, above against the input capacitor
 SETTLED = 1e-13  # relative change of the load resistance
@@ -49,6 +52,15 @@ class Circuit(NamedTuple):
     def branches(self) -> tuple[Branch, ...]:
         """Everything from the device to the load."""
         return (*self.feed, *self.tank, *self.filter)
+
+
+class Fitted(NamedTuple):
+    """A circuit with its operating point and what it was made from, and the filter in it, or None."""
+
+    settings: Settings
+    circuit: Circuit
+    point: OperatingPoint
+    filter: Filter | None
 
 
 def circuit_for(settings: Settings, resistance: float, near: tuple[Branch, ...] = ()) -> Circuit:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import math
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
@@ -11,16 +12,20 @@ from numpy.typing import NDArray
 
 from rfstage.designs.design import Design
 from rfstage.designs.judging import Verdict, ratings_of
+from rfstage.kinds import KEYS, THROUGH, unit
 from rfstage.ladder import Branch
-from rfstage.matching.networks import PartStress, Tank
+from rfstage.matching.tank import PartStress, Tank
 from rfstage.operating import Rating
+from rfstage.stagevalues import has_one_value
 
 if TYPE_CHECKING:
+    from rfstage.designs.ranking import Ranking
+    from rfstage.filters.choose import Filter
     from rfstage.steady import SteadyState
     from rfstage.sweep import Extreme, Sweep
 
 VERSION = 1
-_UNIT = {"capacitor": "F", "coil": "H", "resistor": "ohm"}
+_SUFFIX = {"F": "_f", "H": "_h", "ohm": "_ohm", "": ""}
 
 
 def json_text(record: dict[str, Any]) -> str:
@@ -91,9 +96,43 @@ def design_record(design: Design, files: Sequence[str]) -> dict[str, Any]:
             for h in design.harmonics
         ],
         "settled": None if design.settled is None else settled_record(design.settled),
+        "filter": None if design.filter is None else _filter_record(design.filter),
+        "ranking": None if design.ranking is None else _ranking_record(design.ranking),
         "cautions": [{"topic": c.topic, "text": c.text} for c in design.cautions],
         "files": list(files),
     }
+
+
+def _filter_record(made: Filter) -> dict[str, Any]:
+    return {
+        "kind": made.kind,
+        "order": made.order,
+        "ripple_db": made.ripple_db,
+        "cutoff_hz": made.cutoff,
+        "form": made.form,
+        "line_ohm": made.resistance,
+        "parts": [branch.name for branch in made.parts],
+        "insertion_loss_db": made.insertion_loss_db,
+        "return_loss_db": made.return_loss_db if math.isfinite(made.return_loss_db) else None,
+    }
+
+
+def _ranking_record(ranking: Ranking) -> list[dict[str, Any]]:
+    return [
+        {
+            "network": c.network,
+            "filter": None if c.filter is None else {"kind": c.filter.kind, "order": c.filter.order},
+            "chosen": place == ranking.chosen,
+            "allowed": c.allowed,
+            "refused": c.refused or None,
+            "margin_db": c.margin,
+            "trough_dip": c.trough_dip if c.fitted else None,
+            "efficiency": c.efficiency if c.fitted else None,
+            "parts": c.parts if c.fitted else None,
+            "extremes": [extreme.words for extreme in c.extremes],
+        }
+        for place, c in enumerate(ranking.candidates)
+    ]
 
 
 def numbers(values: NDArray[np.float64]) -> list[float]:
@@ -118,21 +157,31 @@ def tank_record(tank: Tank) -> dict[str, Any]:
 
 def _part_record(part: PartStress) -> dict[str, Any]:
     b: Branch = part.branch
-    return {
+    single, through = has_one_value(b.kind), b.place == THROUGH
+    record = {
         "name": b.name,
         "place": b.place,
         "kind": b.kind,
-        "value": float(b.value),
-        "unit": _UNIT[b.kind],
+        "value": float(b.value) if single else None,
+        "unit": unit(b.kind) if single else None,
         "q": None if b.q is None else float(b.q),
         "series_resistance_ohm": None if b.series_resistance is None else float(b.series_resistance),
-        "lead_inductance_h": float(b.lead_inductance),
+        "lead_inductance_h": 0.0 if through else float(b.lead_inductance),
         "self_capacitance_f": float(b.self_capacitance),
         "origin": b.origin,
         "peak_voltage_v": part.peak_voltage,
         "rms_current_a": part.rms_current,
         "loss_w": part.loss,
     }
+    if single:
+        return record
+    own = {f"{key.name}{_SUFFIX[key.unit]}": getattr(b, key.attribute) for key in KEYS[b.kind]}
+    record |= {name: None if value is None else float(value) for name, value in own.items()}
+    if b.kind == "coupled":
+        record["tap"] = b.tap or None
+    if through:
+        record |= {"secondary_peak_voltage_v": part.far_voltage, "secondary_rms_current_a": part.far_current}
+    return record
 
 
 def match_record(tank: Tank, transfer: Sequence[tuple[int, float]]) -> dict[str, Any]:

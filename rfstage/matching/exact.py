@@ -11,7 +11,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Sequence
 from dataclasses import replace
-from typing import Any, NamedTuple
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -55,15 +55,19 @@ def behind(feed: Sequence[Branch], wanted: complex, carrier: float) -> complex:
 
 
 def with_losses(tank: Sequence[Branch], *, coil_q: float, capacitor_q: float, carrier: float) -> tuple[Branch, ...]:
-    """Return the parts with their Qs [-]; an infinite Q is lossless."""
+    """Return the parts with their Qs [-]; an infinite Q is lossless. A tapped coil has its Q as a whole."""
     coil, capacitor = (None if math.isinf(q) else q for q in (coil_q, capacitor_q))
-    given: dict[str, dict[str, Any]] = {
-        "capacitor": {"q": capacitor},
-        "coil": {"q": coil},
-        "coupled": {"q": coil, "second_q": coil},
-        "trap": {"q": coil, "second_q": capacitor},
-    }
-    return tuple(replace(branch, q_frequency=carrier, **given[branch.kind]) for branch in tank)
+    made = []
+    for branch in tank:
+        q, second = {"capacitor": (capacitor, None), "trap": (coil, capacitor), "coupled": (coil, coil)}.get(
+            branch.kind, (coil, None)
+        )
+        if branch.tap and coil is not None:
+            above, below = float(branch.value), float(branch.second)
+            mutual = float(branch.coupling) * math.sqrt(above * below)
+            q = second = coil * (above + below) / (above + below + 2 * mutual)
+        made.append(replace(branch, q_frequency=carrier, q=q, second_q=second))
+    return tuple(made)
 
 
 def close(

@@ -22,7 +22,7 @@ from rfstage.matching.exact import Free
 from rfstage.matching.parts import capacitor, four_figures, parallel_resistance
 from rfstage.matching.pi import behind_feed
 from rfstage.matching.solving import asked_q, finish, positive
-from rfstage.matching.task import LINK_COUPLING, Task
+from rfstage.matching.task import COUPLINGS, Task
 
 
 def least_tank_q(load: complex, coupling: float) -> float:
@@ -105,7 +105,7 @@ def link_network(
 def solve(task: Task) -> tuple[Branch, ...]:
     """Return the link of a task, exact with its losses; errors as `rfstage.matching.networks.solve_network`."""
     request = task.request
-    coupling = request.coupling or LINK_COUPLING
+    coupling = request.coupling or COUPLINGS["link"]
     tuned = request.link != "untuned"
     room = task.least_shunt_q
     if request.input_q is not None:

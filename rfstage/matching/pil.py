@@ -18,12 +18,14 @@ import math
 from rfstage.errors import ImpossibleError
 from rfstage.ladder import Branch
 from rfstage.matching.exact import Free
-from rfstage.matching.parts import coil, four_figures
+from rfstage.matching.parts import coil, four_figures, parallel_resistance
 from rfstage.matching.pi import behind_feed, least_loaded_q, pi_network
 from rfstage.matching.solving import asked_q, finish, positive
 from rfstage.matching.task import Task
 
-SECTION_Q = 2.0  # of the L where no middle resistance is asked: five times the load's resistance
+# Q of the L where no middle resistance is asked: five times the load's, or twice from a resistance below it, where
+# the pi needs its Q for itself
+SECTION_Q, SECTION_Q_UPWARDS = 2.0, 1.0
 
 
 def pi_l_network(
@@ -91,11 +93,15 @@ def pi_l_network(
     return (*made, coil("L2", "series", last, carrier))
 
 
+def default_middle(wanted: complex, load: complex) -> float:
+    """Return the middle resistance [ohm] where none is asked, with room for a coil beside the load's inductance."""
+    q = SECTION_Q if parallel_resistance(wanted) >= load.real else SECTION_Q_UPWARDS
+    return load.real * (1 + max(q, load.imag / load.real + 1) ** 2)
+
+
 def middle_for(task: Task) -> float:
-    """Return the middle resistance [ohm] of a task: the asked one, or five times the load's and room for a coil."""
-    load = task.load
-    q = max(SECTION_Q, load.imag / load.real + 1)
-    return task.request.middle_resistance or load.real * (1 + q**2)
+    """Return the middle resistance [ohm] of a task."""
+    return task.request.middle_resistance or default_middle(task.start, task.load)
 
 
 def first_guess(task: Task, loaded_q: float | None) -> tuple[Branch, ...]:

@@ -41,7 +41,8 @@ class Tank(NamedTuple):
     """A network as designed, and what it is like.
 
     ``parts`` run from device to load and hold all that shapes the RF; ``impedance`` [ohm] is what the
-    device's current generator sees; ``bandwidth`` in Hz; ``terminations`` are (order, |Z(n)|/R).
+    device's current generator sees; ``bandwidth`` in Hz; ``terminations`` are (order, |Z(n)|/R);
+    ``link_qs`` the Qs of tank and link winding as they stand coupled, None without a link.
     """
 
     network: str
@@ -53,6 +54,15 @@ class Tank(NamedTuple):
     efficiency: float
     terminations: tuple[tuple[int, float], ...]
     trough_dip: float | None
+    link_qs: tuple[float, float] | None = None
+
+
+def stresses(branches: Sequence[Branch], load: complex, carrier: float, current: float) -> tuple[PartStress, ...]:
+    """Return what every part carries at the carrier [Hz] for a peak ``current`` [A] of the device."""
+    walk = Ladder(branches).walk(carrier, load)
+    return tuple(
+        _stress(branch, state, carrier, current) for branch, state in zip(branches, walk.branches, strict=True)
+    )
 
 
 def tank_efficiency(branches: Sequence[Branch], load: complex, carrier: float) -> float:
@@ -79,12 +89,11 @@ def describe(
     """
     branches = (*feed, *tank, *behind)
     at_carrier = complex(load.impedance(carrier))
-    walk = Ladder(branches).walk(carrier, at_carrier)
-    parts = tuple(
-        PartStress(branch, None, None, None) if current is None else _stress(branch, state, carrier, current)
-        for branch, state in zip(branches, walk.branches, strict=True)
-    )
-    z = complex(walk.impedance)
+    if current is None:
+        parts = tuple(PartStress(branch, None, None, None) for branch in branches)
+    else:
+        parts = stresses(branches, at_carrier, carrier, current)
+    z = complex(Ladder(branches).impedance(carrier, at_carrier))
     return Tank(
         network=network,
         parts=parts,
@@ -95,4 +104,17 @@ def describe(
         efficiency=tank_efficiency(branches, at_carrier, carrier),
         terminations=terminations,
         trough_dip=trough_dip,
+        link_qs=_link_qs(branches, at_carrier, carrier),
     )
+
+
+def _link_qs(branches: Sequence[Branch], load: complex, carrier: float) -> tuple[float, float] | None:
+    """Return susceptance over conductance seen at a link's tank, and its winding's reactance over the load's part."""
+    place = next((k for k, b in enumerate(branches) if b.kind == "coupled" and not b.tap), None)
+    if place is None:
+        return None
+    pair = branches[place]
+    near = 1 / complex(Ladder(branches[place:]).impedance(carrier, load))
+    beyond = complex(Ladder(branches[place + 1 :]).impedance(carrier, load))
+    return -near.imag / near.real, 2 * math.pi * carrier * float(pair.second) / beyond.real
+

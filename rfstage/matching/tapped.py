@@ -27,7 +27,7 @@ from rfstage.matching.exact import Free
 from rfstage.matching.parts import four_figures, parallel_resistance
 from rfstage.matching.pi import behind_feed
 from rfstage.matching.solving import asked_q, finish, positive, refuse_q
-from rfstage.matching.task import TAPPED_COUPLING, Task
+from rfstage.matching.task import COUPLINGS, Task
 
 _BISECTIONS = 80
 NEAR_ENDS = 2.0  # ratio of resistances below which a tap may fall outside the coil
@@ -140,9 +140,9 @@ def tapped_coil(
         found = _ratio(low / high, coupling, tank_q)
         if found is None:
             raise ImpossibleError(
-                f"tank.coupling: with {coupling:.4g} between the coil's parts and a Q of {tank_q:.4g} no tap inside the "
-                f"coil joins {four_figures(wanted)} ohm and {four_figures(load)} ohm; a tighter coupling or a higher "
-                "loaded Q does"
+                f"tank.coupling: with {coupling:.4g} between the coil's parts and a Q of {tank_q:.4g} no tap inside "
+                f"the coil joins {four_figures(wanted)} ohm and {four_figures(load)} ohm; a tighter coupling or a "
+                "higher loaded Q does"
             )
         s, w = found
     omega = 2 * math.pi * carrier
@@ -155,7 +155,7 @@ def tapped_coil(
 def solve(task: Task) -> tuple[Branch, ...]:
     """Return the tapped coil of a task, exact with its losses; errors as `rfstage.matching.networks.solve_network`."""
     request = task.request
-    coupling = request.coupling or TAPPED_COUPLING
+    coupling = request.coupling or COUPLINGS["tapped-coil"]
     down = parallel_resistance(task.target) >= parallel_resistance(task.load)
     if not down:
         refuse_q(task, also=", or tank.tap")

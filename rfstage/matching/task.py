@@ -14,9 +14,8 @@ from rfstage.matching.parts import four_figures, parallel_resistance
 
 DEFAULT_LOADED_Q = 10.0
 DEFAULT_Q_MARGIN = 2.0
-TAPPED_COUPLING = 0.4  # between the parts of a tapped air coil
-LINK_COUPLING = 0.35  # of a link at the cold end
-LINKS = ("tuned", "untuned")
+# Of an air coil's parts at a tap, and of a link at the cold end; common practice, no source
+COUPLINGS = {"tapped-coil": 0.4, "link": 0.35}
 
 
 class Request(NamedTuple):

@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+import math
+
 from rich.text import Text
 
 from rfstage.designs.design import Design
 from rfstage.harmonics import Harmonic
-from rfstage.matching.networks import Tank
+from rfstage.matching.tank import Tank
 from rfstage.quantity import exact_text, show, show_complex
 from rfstage.report.circuit import CONTROL, ELECTRODE, FAMILY, circuit
 from rfstage.report.judged import caution_lines, rating_lines, signed, verdict_lines
@@ -25,6 +27,7 @@ def summary(design: Design, look: Look) -> list[Text]:
         *_point(design, look),
         *_tank(design, look),
         *_harmonics(design, look),
+        *_compared_networks(design, look),
         *_assumed(design, look),
         *caution_lines(look, design.cautions),
     ]
@@ -38,6 +41,14 @@ def _title(design: Design, look: Look) -> list[Text]:
         f"{job.conduction_angle:g}° conduction"
     )
     return note(look, words, style="bold", indent=0)
+
+
+def _compared_networks(design: Design, look: Look) -> list[Text]:
+    if design.ranking is None:
+        return []
+    from rfstage.report.ranking import ranking_lines
+
+    return ranking_lines(design.ranking, look)
 
 
 def _circuit(design: Design, look: Look) -> list[Text]:
@@ -128,7 +139,18 @@ def _volts(value: float, unit: str = "V") -> str:
 
 
 def _tank(design: Design, look: Look) -> list[Text]:
-    return heading(look, f"Tank, network {design.tank.network}") + tank_lines(design.tank, look)
+    lines = heading(look, f"Tank, network {design.tank.network}") + tank_lines(design.tank, look)
+    made = design.filter
+    if made is None:
+        return lines
+    ripple = f"{made.ripple_db:g} dB ripple to" if made.ripple_db else "3 dB at"
+    return lines + note(
+        look,
+        f"Filter: {made.kind} of order {made.order}, {made.form}, {ripple} {show(made.cutoff, 'Hz', 4)}, for a line of "
+        f"{show(made.resistance, 'ohm')}; insertion loss {made.insertion_loss_db:.2f} dB and return loss "
+        f"{made.return_loss_db:.1f} dB at the carrier. The tank is closed on what the filter shows it; efficiency and "
+        "bandwidth hold both.",
+    )
 
 
 def tank_lines(tank: Tank, look: Look) -> list[Text]:
@@ -150,8 +172,23 @@ def tank_lines(tank: Tank, look: Look) -> list[Text]:
         meaning += " The device is a current generator; no source resistance stands in parallel."
     return (
         pairs(look, items)
+        + _link_lines(tank, look)
         + note(look, f"Harmonic impedance over the load resistance, by order: {seen}")
         + note(look, meaning, style="dim")
+    )
+
+
+def _link_lines(tank: Tank, look: Look) -> list[Text]:
+    """Return mutual inductance and critical coupling of a link."""
+    if tank.link_qs is None:
+        return []
+    pair = next(p.branch for p in tank.parts if p.branch.kind == "coupled")
+    mutual = float(pair.coupling) * math.sqrt(float(pair.value) * float(pair.second))
+    of_tank, of_link = tank.link_qs
+    return note(
+        look,
+        f"Link: mutual inductance {show(mutual, 'H')}; tank Q {of_tank:.3g} and link Q {of_link:.3g} are at critical "
+        f"coupling with {1 / math.sqrt(of_tank * of_link):.2f}, and {float(pair.coupling):.2f} is fitted.",
     )
 
 
@@ -253,6 +290,10 @@ def _assumed_value(key: str, value: object, exponent: float) -> str:
         "tank.blocking": "F",
         "supply.choke_resistance": "ohm",
         "limit.load": "ohm",
+        "limit.margin": "dB",
+        "tank.middle_resistance": "ohm",
+        "tank.transformer_magnetizing": "H",
+        "tank.transformer_leakage": "H",
         "device.output_capacitance": "F",
         "device.threshold_softness": "V",
         "device.knee_voltage": "V",
