@@ -15,6 +15,7 @@ DIP_CAUTION, DIP_STRONG = 0.03, 0.10
 FAR_ABOVE_SUPPLY = 3.0  # times the supply
 POWER_MISSED = 0.01  # of the asked power: below it a meter shows no difference
 LOSSY_TANK = 0.85  # efficiency below which a tank is mostly heat (common practice, no source)
+LEADS = 10  # times the reactance of its leads that a capacitor should have
 LOW_RESISTANCE = 4.0  # ohm
 LEAD = 5e-9  # H, of an input capacitor; its reactance must stay ten times below the capacitor's
 
@@ -180,19 +181,27 @@ def about_settled(
     return found
 
 
-def about_low_resistance(resistance: float, input_capacitance: float | None, carrier: float) -> list[Caution]:
-    """Return the ways out where load resistance [ohm] or input capacitor [F] is too small to build."""
-    lead = 2 * math.pi * carrier * LEAD
+def short_of_reactance(input_capacitance: float | None, carrier: float) -> bool:
+    """Return whether a capacitor [F] has under ten times the reactance of its own leads at the carrier [Hz]."""
+    omega = 2 * math.pi * carrier
+    return input_capacitance is not None and 1 / (omega * input_capacitance) < LEADS * omega * LEAD
+
+
+def about_low_resistance(
+    resistance: float, input_capacitance: float | None, carrier: float, ways: Sequence[str]
+) -> list[Caution]:
+    """Return what is too small to build of load resistance [ohm] and input capacitor [F], and the ways out."""
     if resistance < LOW_RESISTANCE:
         why = f"a load resistance of {show(resistance, 'ohm')} is hard to build"
-    elif input_capacitance and 1 / (2 * math.pi * carrier * input_capacitance) < 10 * lead:
+    elif input_capacitance is not None and short_of_reactance(input_capacitance, carrier):
         why = (
             f"the input capacitor of {show(input_capacitance, 'F')} has under ten times the reactance of its own "
             f"leads ({show(LEAD, 'H')})"
         )
     else:
         return []
-    return [Caution("low resistance", f"{why}: use a higher supply, two devices, or a wide-band transformer.")]
+    out = "; ".join(ways) or "a higher supply, two devices or a wide-band transformer, none of which does it alone here"
+    return [Caution("low resistance", f"{why}. Ways out, best first: {out}.")]
 
 
 def about_load_file(continued: Sequence[int]) -> list[Caution]:

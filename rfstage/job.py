@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 from rfstage.errors import InputError
 from rfstage.fields import check
@@ -14,12 +14,28 @@ if TYPE_CHECKING:
     from rfstage.load import MeasuredLoad
 
 
+_SLACK = 1e-9  # relative, of a range's ends
+
+
+class Variable(NamedTuple):
+    """A part that can be set: its name, and the least and most of it [F or H]."""
+
+    name: str
+    least: float
+    most: float
+
+    def holds(self, value: float) -> bool:
+        """Return whether the part can be set to a value [F or H]."""
+        return self.least * (1 - _SLACK) <= value <= self.most * (1 + _SLACK)
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Job:
     """What is asked, in SI units, the angle in degrees; None where nothing was given.
 
     The keys, units and ranges are those of `rfstage.jobfields.JOB_FIELDS`. ``load`` is an impedance
-    [ohm] or a measured load; an infinite Q is lossless. ``power_gain`` is in dB.
+    [ohm] or a measured load; an infinite Q is lossless. ``power_gain`` is in dB. ``variable`` holds the
+    parts of the network that can be set, for the loads they match.
 
     Raises
     ------
@@ -82,6 +98,7 @@ class Job:
     limit: str | None = None
     limit_load: float | None = None
     margin: float | None = None
+    variable: tuple[Variable, ...] = ()
 
     def __post_init__(self) -> None:
         problems = []

@@ -464,23 +464,18 @@ def conflicts(values: dict[str, object]) -> list[str]:
             f"stage.minimum_voltage: got {exact_text(lowest, 'V')}; allowed below the supply of "
             f"{exact_text(supply, 'V')}"
         )
-    if values.get("loaded_q") is not None and values.get("input_q") is not None:
-        found.append("tank.input_q: got both a loaded Q and an input-side Q; give one of them")
+    found += misfits(values)
     family = values.get("family") or "bipolar"
     for field in JOB_FIELDS:
         owner = _BELONGS_TO.get(field.name)
         if owner is not None and owner != family and values.get(field.name) is not None:
             found.append(f"{field.path}: is of no use for device.family {family}; it belongs to {owner}")
-    if values.get("tap") is not None and (values.get("loaded_q") or values.get("input_q")) is not None:
-        found.append("tank.tap: got both a tap and a Q, which follows from it; give one of them")
-    network = values.get("network") or AUTO
     for field in JOB_FIELDS:
-        owners = _NETWORKS_OF.get(field.name)
-        if owners and values.get(field.name) is not None and network not in (*owners, AUTO):
-            found.append(f"{field.path}: is of no use for network {network}; it belongs to {' and '.join(owners)}")
         needed = _BESIDE.get(field.name)
         if needed and values.get(field.name) is not None and values.get(needed) in (None, NONE):
             found.append(f"{field.path}: is of no use without tank.{needed}")
+    if values.get("filter") == AUTO and values.get("limit") is None:
+        found.append("tank.filter: auto needs limit.rule, since it fits what a limit wants; or give the filter's order")
     if values.get("trap") is not None and values.get("filter_kind") not in (None, "chebyshev-trap"):
         found.append(f"tank.trap: is of no use for a {values['filter_kind']} filter; it belongs to chebyshev-trap")
     if isinstance(values.get("limit"), str):
@@ -488,4 +483,19 @@ def conflicts(values: dict[str, object]) -> list[str]:
             limit_named(str(values["limit"]))
         except InputError as error:
             found += error.problems
+    return found
+
+
+def misfits(values: dict[str, object]) -> list[str]:
+    """Return one line for each given value of a network that can't stand with another, or is another network's."""
+    found = []
+    if values.get("loaded_q") is not None and values.get("input_q") is not None:
+        found.append("tank.input_q: got both a loaded Q and an input-side Q; give one of them")
+    if values.get("tap") is not None and (values.get("loaded_q"), values.get("input_q")) != (None, None):
+        found.append("tank.tap: got both a tap and a Q, which follows from it; give one of them")
+    network = values.get("network") or AUTO
+    for field in SPECIAL:
+        owners = _NETWORKS_OF[field.name]
+        if values.get(field.name) is not None and network in NETWORKS and network not in owners:
+            found.append(f"{field.path}: is of no use for network {network}; it belongs to {' and '.join(owners)}")
     return found

@@ -1,4 +1,4 @@
-"""SPICE decks: six stages of varied kind, run in ngspice, against the steady state; losses as constant resistances."""
+"""SPICE decks: nine stages of varied kind, run in ngspice, against the steady state; losses as constant resistances."""
 
 from __future__ import annotations
 
@@ -9,6 +9,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
+from reference_circuits import solve_nodes
 
 from rfstage import Job, design
 from rfstage.device import JunctionCapacitance
@@ -36,11 +37,57 @@ def with_constant_losses(stage):
     return replace(stage, branches=tuple(branches), supply=supply)
 
 
+def through(name, kind, value, second, **more):
+    return Branch(name, "through", kind, value, second=second, **more)
+
+
+def tuned(small):
+    """A tapped, a linked and a filtered stage around one device; what has no constant resistance is lossless."""
+    blocking = next(b for b in small.branches if b.name == "Cblock")
+    resistive = {"series_resistance": 0.05}
+    tapped = (
+        blocking,
+        Branch("C1", "shunt", "capacitor", 6e-9, **resistive),
+        through("L1", "coupled", 562e-9, 337e-9, coupling=0.35, tap="device"),
+        Branch("C2", "shunt", "capacitor", 1.38e-9, **resistive),
+    )
+    linked = (
+        blocking,
+        Branch("C1", "shunt", "capacitor", 24.1e-9, **resistive),
+        through("L1", "coupled", 20.8e-9, 0.9e-6, coupling=0.3),
+        Branch("C2", "series", "capacitor", 560e-12, **resistive),
+    )
+    filtered = (
+        *small.branches,
+        Branch("L2", "series", "coil", 635e-9, series_resistance=0.4),
+        Branch("C3", "shunt", "capacitor", 76e-12, **resistive),
+        Branch("F1", "series", "trap", 150e-9, second=780e-12),
+        Branch("F2", "shunt", "trap", 260e-9, second=202e-12, series_resistance=0.2, lead_inductance=5e-9),
+        through("T1", "transformer", 1.2, 8e-6, lead_inductance=60e-9, series_resistance=0.1),
+    )
+    return {
+        "tapped": replace(small, branches=tapped),
+        "linked": replace(small, branches=linked),
+        "filter with traps": replace(small, branches=filtered),
+    }
+
+
 def stages():
-    """Six stages of varied family, network, law and load."""
-    small = design(Job(carrier=7.1e6, power=10.0, conduction_angle=120.0, supply=13.8), textbook=True).stage
+    """Nine stages of varied family, network, law and load."""
+    small = design(
+        Job(carrier=7.1e6, power=10.0, conduction_angle=120.0, supply=13.8, network="pi"), textbook=True
+    ).stage
     fet = design(
-        Job(carrier=14.2e6, power=60.0, conduction_angle=140.0, supply=50.0, family="fet", loaded_q=9.0, load=40 + 15j),
+        Job(
+            carrier=14.2e6,
+            power=60.0,
+            conduction_angle=140.0,
+            supply=50.0,
+            family="fet",
+            network="pi",
+            loaded_q=9.0,
+            load=40 + 15j,
+        ),
         textbook=True,
     ).stage
     fet = replace(
@@ -59,6 +106,7 @@ def stages():
             conduction_angle=150.0,
             supply=1500.0,
             family="tube",
+            network="pi",
             exponent=1.5,
             output_capacitance=12e-12,
         ),
@@ -74,7 +122,15 @@ def stages():
         textbook=True,
     ).stage
     stray = design(
-        Job(carrier=28e6, power=25.0, conduction_angle=180.0, supply=28.0, load=70 - 30j, output_capacitance=60e-12),
+        Job(
+            carrier=28e6,
+            power=25.0,
+            conduction_angle=180.0,
+            supply=28.0,
+            load=70 - 30j,
+            network="pi",
+            output_capacitance=60e-12,
+        ),
         textbook=True,
     ).stage
     stray = replace(
@@ -96,6 +152,7 @@ def stages():
         "coil first": coil_first,
         "strays": stray,
         "overdriven": overdriven,
+        **tuned(small),
     }
 
 
@@ -147,6 +204,62 @@ def test_ngspice_finds_the_same_steady_state(name, tmp_path):
     for h in state.harmonics[:6]:
         if h.level is not None and h.level > -80:
             assert levels[h.order - 1] == pytest.approx(h.level, abs=0.03), h.order
+
+
+LINK = {"q": 150.0, "second_q": 90.0, "coupling": 0.3, "q_frequency": 7.1e6}
+LOSSY = {
+    "trap in series": Branch("X", "series", "trap", 300e-9, second=1e-9, q=150.0, second_q=400.0, q_frequency=7.1e6),
+    "trap to ground": Branch(
+        "X", "shunt", "trap", 300e-9, second=1e-9, second_q=400.0, series_resistance=0.3, lead_inductance=9e-9
+    ),
+    "trap to ground of Q": Branch("X", "shunt", "trap", 300e-9, second=1e-9, q=60.0, q_frequency=7.1e6),
+    "pair": through("X", "coupled", 1.1e-6, 0.4e-6, **LINK),
+    "load at the tap": through("X", "coupled", 1.1e-6, 0.4e-6, tap="load", **LINK),
+    "device at the tap": through("X", "coupled", 1.1e-6, 0.4e-6, tap="device", **LINK),
+    "transformer": through(
+        "X", "transformer", 0.4, 3e-6, second_q=20.0, q_frequency=7.1e6, lead_inductance=70e-9, series_resistance=0.2
+    ),
+    "bare transformer": through("X", "transformer", 2.5, 3e-6, second_q=20.0, q_frequency=7.1e6),
+}
+
+
+@ngspice
+@pytest.mark.parametrize("name", LOSSY)
+def test_each_kind_s_elements_are_the_branch_at_the_carrier(name, tmp_path):
+    # SOURCE: small-signal runs of ngspice with the deck's own lines, for one ampere into them, and node equations
+    before, after = Branch("A", "shunt", "capacitor", 330e-12), Branch("B", "series", "capacitor", 680e-12)
+    stage = replace(STAGES["bipolar pi"], branches=(before, LOSSY[name], after), load=SeriesLoad(33 + 20j, 7.1e6))
+    lines = spice_text(stage).splitlines()
+    network = lines[
+        lines.index("* branches from device to load") : lines.index(
+            "* start-up with the device off; the last periods are measured"
+        )
+    ]
+    # a faint resistance at every node, for the direct current that ngspice looks for first
+    control = [".options rshunt=1e12", f".ac lin 1 {stage.carrier:.12g} {stage.carrier:.12g}", ".control", "run"]
+    control += ["set wr_singlescale", "set numdgt=15", "wrdata out.txt v(out) v(load)", "quit", ".endc", ".end", ""]
+    (tmp_path / "deck.cir").write_text("\n".join(["* one ampere", "Iin 0 out AC 1", *network, *control]))
+    subprocess.run(["ngspice", "-b", "deck.cir"], cwd=tmp_path, capture_output=True, check=True, timeout=60)
+    row = np.atleast_1d(np.loadtxt(tmp_path / "out.txt"))
+    volts, _ = solve_nodes(stage.branches, 33 + 20j, stage.carrier)
+    assert complex(row[1], row[2]) == pytest.approx(complex(volts[0]), rel=1e-6)
+    assert complex(row[3], row[4]) == pytest.approx(complex(volts[-1]), rel=1e-6)
+
+
+def test_what_stands_behind_a_winding_or_the_blocking_capacitor_starts_without_charge():
+    trap = Branch("F1", "shunt", "trap", 90e-9, second=560e-12)
+    link = through("L1", "coupled", 75e-9, 0.9e-6, coupling=0.3)
+    tail = Branch("C2", "series", "capacitor", 560e-12)
+    blocking = STAGES["bipolar pi"].branches[0]
+    text = spice_text(replace(STAGES["bipolar pi"], branches=(trap, blocking, link, trap, tail)))
+    first, block, second, last = (
+        next(line for line in text.splitlines() if line.startswith(f"C{k} ")) for k in (1, 2, 4, 5)
+    )
+    assert first.endswith("ic=13.8")
+    assert block.endswith("ic=13.8")
+    assert "ic=" not in second
+    assert "ic=" not in last
+    assert last.split()[2] == "load"
 
 
 def test_the_deck_says_what_it_holds_and_ends():

@@ -6,15 +6,18 @@ from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
 from rfstage.cli.words import Parser, given, output, targets
-from rfstage.files.job import read_job
+from rfstage.errors import InputError
+from rfstage.files.job import read_jobs
 from rfstage.files.write import check_targets, write_files
 from rfstage.jobfields import JOB_FIELDS
 
 if TYPE_CHECKING:
+    from argparse import Namespace
     from pathlib import Path
 
     from rich.text import Text
 
+    from rfstage.job import Job
     from rfstage.report.page import Look
 
 ABOUT = """\
@@ -57,7 +60,10 @@ def run(words: Sequence[str]) -> int:
     """Run the command and return its exit status."""
     found = parser().read(words)
     wanted = targets(found, "touchstone", "save", "spice")
-    job = read_job(found.job, given(found, JOB_FIELDS))
+    jobs = read_jobs(found.job, given(found, JOB_FIELDS))
+    if len(jobs) > 1 or jobs[0].variable:
+        return _several(found, jobs, wanted)
+    job = jobs[0]
     inputs = {"job file": found.job, "load file": getattr(job.load, "name", None)}
     check_targets(list(wanted.values()), overwrite=found.overwrite, inputs=inputs)
 
@@ -95,3 +101,30 @@ def run(words: Sequence[str]) -> int:
     output(found, record, page, list(wanted.values()))
     failed = made.worst is not None and made.worst.margin is not None and made.worst.margin < 0
     return 1 if failed else 0
+
+
+def _several(found: Namespace, jobs: tuple[Job, ...], wanted: dict[str, str]) -> int:
+    """Design one tank for several carriers, or for variable parts, and return the exit status."""
+    if wanted:
+        options = ", ".join(f"--{name}" for name in wanted)
+        raise InputError(
+            f"{options}: a file holds one stage, and this job has several settings; give one --carrier, and a job "
+            "without tank.variable"
+        )
+    from rfstage.designs.carriers import design_carriers
+
+    tuned = design_carriers(jobs, textbook=found.textbook)
+
+    def record() -> dict[str, Any]:
+        from rfstage.files.carrierrecord import carriers_record
+
+        return carriers_record(tuned)
+
+    def page(look: Look) -> list[Text]:
+        from rfstage.report.carriers import carriers_page
+
+        return carriers_page(tuned, look)
+
+    output(found, record, page, [])
+    margins = [t.design.worst.margin for t in tuned if t.design.worst and t.design.worst.margin is not None]
+    return 1 if min(margins, default=0.0) < 0 else 0

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 from rfstage.cli.words import Parser, given, output, read_all
 from rfstage.fields import Field
 from rfstage.files.job import impedance_or_file, load_file_problem
-from rfstage.jobfields import CAPACITOR_Q, CARRIER, COIL_Q, INPUT_Q, LOADED_Q, NETWORK
+from rfstage.jobfields import CAPACITOR_Q, CARRIER, COIL_Q, INPUT_Q, LOADED_Q, NETWORK, NETWORKS, SPECIAL, misfits
 from rfstage.quantity import QuantityError
 
 if TYPE_CHECKING:
@@ -27,7 +27,8 @@ _WANTED = Field("RESISTANCE", "wanted", "impedance", "ohm", 0, 1e7, True)
 _LOAD = Field("LOAD", "load", "impedance", "ohm", 0, 1e7, True)
 _POWER = Field("", "power", "real", "W", 0, 1e7, True, "--power", "power at the load, to show the parts' stresses")
 _HARMONICS = Field("", "harmonics", "count", "", 2, 100, False, "--harmonics", "highest harmonic order shown [10]")
-_OPTIONS = (CARRIER, NETWORK, LOADED_Q, INPUT_Q, COIL_Q, CAPACITOR_Q, _POWER, _HARMONICS)
+_NETWORK = NETWORK._replace(help="the network [pi]", choices=NETWORKS)
+_OPTIONS = (CARRIER, _NETWORK, LOADED_Q, INPUT_Q, COIL_Q, CAPACITOR_Q, *SPECIAL, _POWER, _HARMONICS)
 
 
 def parser() -> Parser:
@@ -56,8 +57,10 @@ def run(words: Sequence[str]) -> int:
         problems.append(f"LOAD: {wrong}")
     if "carrier" not in texts:
         problems.append("--carrier: missing; a network is designed at one frequency, such as --carrier 7.1MHz")
-    if "loaded_q" in texts and "input_q" in texts:
-        problems.append("--input-q: got both a loaded Q and an input-side Q; give one of them")
+    options = {field.path: field.option for field in _OPTIONS}
+    for line in misfits({"network": "pi", **words_given}):
+        key, colon, rest = line.partition(":")
+        problems.append(options[key] + colon + rest)
     values = read_all(texts, problems)
     values["load"] = load
     if load is None:

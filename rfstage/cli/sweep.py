@@ -31,7 +31,14 @@ circles of standing-wave ratio.
 _POINTS = Field(
     "", "points", "count", "", 2, 100_000, False, "--points", "how many points, evenly spaced [41; 10 along load]"
 )
-ZERO_ALLOWED = ("lead_inductance", "self_capacitance", "choke_resistance", "knee_resistance", "series_resistance")
+ZERO_ALLOWED = (
+    "lead_inductance",
+    "self_capacitance",
+    "choke_resistance",
+    "knee_resistance",
+    "series_resistance",
+    "leakage",
+)
 FAR = 1000.0  # a bare number this many times off the value now set is taken for one that wants a prefix
 PATIENCE = 1.0  # s: past it a progress bar shows
 
@@ -97,6 +104,8 @@ def _ends(path: str, unit: str, first: str, last: str) -> dict[str, tuple[Field,
     low, above, high = (1.0, False, 100.0) if path == "load" else (0.0, True, math.inf)
     if head in ("drive", "device") or key in ZERO_ALLOWED:
         above = False
+    if key == "coupling":
+        high = 0.9999
     if path in ("drive.bias", "device.threshold", "load.reactance"):
         low = -1e6
     return {

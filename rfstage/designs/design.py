@@ -43,11 +43,13 @@ from rfstage.quantity import show_orders
 from rfstage.stage import Stage
 
 if TYPE_CHECKING:
+    from rfstage.designs.lowresistance import Way
     from rfstage.designs.ranking import Ranking
     from rfstage.filters.choose import Filter
     from rfstage.steady import SteadyState
 
 FILTER_ROUNDS = 5  # in which the filter is chosen again for what the steady state adds
+WAYS_SHOWN = 4  # of the ways out of a low resistance
 FILTER_SPARE = 0.2  # dB more than what was short, so that the rounds end
 
 
@@ -60,7 +62,7 @@ class Design:
     where that was not asked; ``book_resistance`` [ohm] is the load resistance before any correction;
     ``continued`` names the harmonic orders at which a measured load had to be continued beyond its table;
     ``assumed`` holds what was not given and taken by default, by key. ``filter`` is the harmonic filter in the stage,
-    ``ranking`` all networks where they were compared.
+    ``ranking`` all networks where they were compared, ``ways_out`` what helps where the load resistance is too low.
     """
 
     job: Job
@@ -81,6 +83,7 @@ class Design:
     settled: SteadyState | None = None
     filter: Filter | None = None
     ranking: Ranking | None = None
+    ways_out: tuple[Way, ...] = ()
 
     @property
     def worst(self) -> Harmonic | None:
@@ -269,6 +272,11 @@ def _assembled(
         output_power=job.power,
         limit=settings.limit,
     )
+    ways: tuple[Way, ...] = ()
+    if circuit.is_low(point.load_resistance):
+        from rfstage.designs.lowresistance import ways_out
+
+        ways = ways_out(settings, coefficients, point.load_resistance)
     load = settings.load
     continued = load.beyond(job.carrier, settings.highest_order) if isinstance(load, MeasuredLoad) else ()
     return Design(
@@ -288,11 +296,12 @@ def _assembled(
         tank=tank,
         harmonics=levels,
         continued=continued,
-        cautions=_cautions(built, settings, tank, levels, ladder, continued, designed_to),
+        cautions=_cautions(built, ways, settings, tank, levels, ladder, continued, designed_to),
         stage=built.stage,
         assumed={**settings.assumed, **_sized(settings, circuit, tank), **built.stand_ins},
         filter=made.filter,
         ranking=ranking,
+        ways_out=ways,
     )
 
 
@@ -328,6 +337,7 @@ def _sized(settings: Settings, circuit: Circuit, tank: Tank) -> dict[str, object
 
 def _cautions(
     made: Built,
+    ways: tuple[Way, ...],
     settings: Settings,
     tank: Tank,
     levels: tuple[Harmonic, ...],
@@ -340,7 +350,12 @@ def _cautions(
     job, point = settings.job, made.point
     found = about_dip(tank.trough_dip or 0.0, network=tank.network, corrected=designed_to == "settled")
     found += about_tank_loss(tank.efficiency, tank.loaded_q)
-    found += about_low_resistance(point.load_resistance, _input_capacitance(made.circuit), job.carrier)
+    found += about_low_resistance(
+        made.circuit.network_resistance(point.load_resistance),
+        made.circuit.input_capacitance,
+        job.carrier,
+        [way.summary for way in ways[:WAYS_SHOWN]],
+    )
     found += about_resonance(strongest_resonance_below(ladder.branches, settings.load, job.carrier))
     found += about_load_file(continued)
     strayed = [h.order for h in levels if h.strays_decide]
@@ -353,14 +368,6 @@ def _cautions(
                 "don't trust.",
             )
         )
-    highest = max(part.peak_voltage or 0.0 for part in tank.parts)
+    highest = max(max(part.peak_voltage or 0.0, part.far_voltage or 0.0) for part in tank.parts)
     safe = safety_cautions(made.stage, dc_current=point.dc_current, highest_rf=highest, power=job.power)
     return (*found, *safe)
-
-
-def _input_capacitance(circuit: Circuit) -> float | None:
-    """Return the network's capacitor across its input [F], or None where it begins otherwise."""
-    first = circuit.tank[0]
-    if len(circuit.coupler) > 1:
-        return None  # behind a transformer
-    return float(first.value) if first.place == "shunt" and first.kind == "capacitor" else None

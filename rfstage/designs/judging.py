@@ -114,10 +114,10 @@ def supply_reaches_load(branches: Sequence[Branch]) -> bool:
     """Return whether the supply reaches the load when the first series capacitor fails as a short."""
     failed = False
     for branch in branches:
-        if branch.place == "series" and branch.kind == "capacitor":
+        if branch.blocks:
             if failed:
                 return False
             failed = True
-        elif branch.place == "shunt" and branch.kind == "coil":
+        elif branch.grounds and branch.kind != "resistor":  # a winding or coil to ground shorts it
             return False
     return True

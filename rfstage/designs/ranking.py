@@ -28,7 +28,12 @@ from rfstage.quantity import show
 
 SHORT_STEP = 3.0  # dB: networks that miss the limit by less than this apart are alike
 LOSS_STEP = 0.02  # of the power: the same for what tank and filter lose
-DIPS = (0.10, 0.20)  # trough dips: a settled stage makes up for the first with 7 % of power, for the second with 18 %
+DIPS = (
+    0.10,
+    0.20,
+    0.50,
+    1.0,
+)  # trough dips: the first costs 7 % of power, the second 18 %
 # What makes a part extreme, and what puts it beyond building; common practice, no source
 LEAD = 5e-9  # H of lead
 LEADS = (10.0, 2.0)  # times its reactance, which a capacitor's or coil's should be at least
@@ -121,7 +126,7 @@ class Ranking(NamedTuple):
         if not others:
             return "the only one that does it"
         first, second = self.winner, others[0]
-        keys = _keys([first, *others])
+        keys = keys_of([first, *others])
         place = next((k for k, (a, b) in enumerate(zip(keys[0], keys[1], strict=True)) if a != b), -1)
         if place < 0:
             return f"as good as {second.name}"
@@ -138,7 +143,7 @@ class Ranking(NamedTuple):
         return words[place]
 
 
-def _keys(candidates: Sequence[Candidate]) -> list[tuple[float, ...]]:
+def keys_of(candidates: Sequence[Candidate]) -> list[tuple[float, ...]]:
     """Return the key of each candidate among all of them."""
     best: dict[tuple[float, float], Candidate] = {}
     for c in candidates:
@@ -166,7 +171,7 @@ def rank(settings: Settings, coefficients: NDArray[np.float64]) -> Ranking:
     for network in NETWORKS:
         found += _tried(settings, coefficients, network)
     fit = [c for c in found if c.fitted]
-    keys = _keys(fit)
+    keys = keys_of(fit)
     made = [fit[k] for k in sorted(range(len(fit)), key=keys.__getitem__)]
     chosen = next((k for k, c in enumerate(made) if c.allowed), None)
     if chosen is None:
@@ -183,21 +188,22 @@ def _tried(settings: Settings, coefficients: NDArray[np.float64], network: str) 
     except RfstageError as error:
         return [Candidate(network, None, None, _plain(str(error), network))]
     forced = settings.job.filter not in (None, AUTO) and wants_filter(settings)
-    found = [_measured(alone, coefficients)._replace(allowed=not forced)]
+    found = [measured(alone, coefficients)._replace(allowed=not forced)]
     if not forced and not found[0].missed:
         return found
     try:
         behind = fitted(own, coefficients, alone.circuit, alone.point, always=not forced)
     except RfstageError as error:
         return [*found, Candidate(f"{network} + filter", None, None, _plain(str(error), network))]
-    return [*found, _measured(behind, coefficients)._replace(allowed=wants_filter(settings))]
+    return [*found, measured(behind, coefficients)._replace(allowed=wants_filter(settings))]
 
 
 def _plain(said: str, network: str) -> str:
     return said.removeprefix(f"network {network}: ")
 
 
-def _measured(made: Fitted, coefficients: NDArray[np.float64]) -> Candidate:
+def measured(made: Fitted, coefficients: NDArray[np.float64]) -> Candidate:
+    """Return what the ranking knows of a circuit."""
     settings, circuit, point = made.settings, made.circuit, made.point
     job, load = settings.job, settings.load_impedance
     own = (*circuit.tank, *circuit.filter)

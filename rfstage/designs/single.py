@@ -36,6 +36,10 @@ def single_network(
     capacitor_q: float = 1000.0,
     power: float | None = None,
     harmonics: int = 10,
+    middle_resistance: float | None = None,
+    coupling: float | None = None,
+    tap: float | None = None,
+    link: str | None = None,
 ) -> SingleNetwork:
     """Return one network that shows ``wanted`` when ``load`` is connected.
 
@@ -48,13 +52,15 @@ def single_network(
     carrier : float
         Hz.
     network : str
-        ``"l"``, ``"l-high-pass"`` or ``"pi"``.
+        One of `rfstage.jobfields.NETWORKS`.
     loaded_q, input_q, coil_q, capacitor_q : float
         Of a pi at most one of the first two [-]; of the parts, infinite for lossless.
     power : float or None
         Power at the load [W], for the parts' stresses.
     harmonics : int
         Highest order of the transfer.
+    middle_resistance, coupling, tap, link : float or str
+        What only some networks have, as in `rfstage.matching.task.Request`.
 
     Returns
     -------
@@ -75,7 +81,7 @@ def single_network(
     """
     over_frequency = load_over_frequency(load, carrier)
     at_carrier = complex(over_frequency.impedance(carrier))
-    request = Request(network, coil_q, capacitor_q, loaded_q, input_q)
+    request = Request(network, coil_q, capacitor_q, loaded_q, input_q, middle_resistance, coupling, tap, link)
     branches = solve_network(request, feed=(), wanted=complex(wanted), load=at_carrier, carrier=carrier)
     ladder = Ladder(branches)
     orders = range(2, harmonics + 1)

@@ -12,10 +12,13 @@ from typing import TYPE_CHECKING, NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
+from rfstage.cautions import LOW_RESISTANCE, short_of_reactance
 from rfstage.designs.settings import Settings
 from rfstage.errors import ConvergenceError
 from rfstage.ladder import Branch
+from rfstage.matching.exact import behind
 from rfstage.matching.networks import shunt_reactance, solve_network
+from rfstage.matching.parts import parallel_resistance
 from rfstage.matching.tank import tank_efficiency
 from rfstage.matching.task import DEFAULT_LOADED_Q
 from rfstage.operating import OperatingPoint, operating_point, operating_point_at
@@ -52,6 +55,23 @@ class Circuit(NamedTuple):
     def branches(self) -> tuple[Branch, ...]:
         """Everything from the device to the load."""
         return (*self.feed, *self.tank, *self.filter)
+
+    @property
+    def input_capacitance(self) -> float | None:
+        """The network's capacitor across its input [F], or None where it begins otherwise."""
+        first = self.tank[0]
+        return float(first.value) if first.place == "shunt" and first.kind == "capacitor" else None
+
+    def network_resistance(self, resistance: float) -> float:
+        """Return what the network begins at [ohm]: the device's, or behind a transformer what that makes of it."""
+        if len(self.coupler) == 1:
+            return resistance
+        return parallel_resistance(behind(self.feed, complex(resistance), self.carrier))
+
+    def is_low(self, resistance: float) -> bool:
+        """Return whether the network begins at too low a resistance [ohm], or with a capacitor that leads decide."""
+        low = self.network_resistance(resistance) < LOW_RESISTANCE
+        return low or short_of_reactance(self.input_capacitance, self.carrier)
 
 
 class Fitted(NamedTuple):

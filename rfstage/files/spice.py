@@ -2,15 +2,24 @@
 
 Losses are written as constant resistances at the carrier, since a transient run knows no Q; a choke's RF loss
 stands as a resistance across it, so that the supply's direct current does not feel it.
+
+::
+
+    trap         series: L, R beside C, R;  shunt: L, C, R and lead one after the other
+    coupled      L, R to ground on both sides, and K;  tapped: the two parts meet at the tap
+    transformer  leakage, R, then magnetizing L, R to ground, and E and F for the ratio
 """
 
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from typing import NamedTuple
 
+from rfstage.branch import Real
 from rfstage.device import Device
 from rfstage.errors import ImpossibleError
+from rfstage.kinds import THROUGH
 from rfstage.ladder import Branch
 from rfstage.load import MeasuredLoad
 from rfstage.quantity import exact_complex, exact_text
@@ -35,13 +44,15 @@ def default_run(stage: Stage) -> Run:
     """Return a run long enough for the choke and the blocking capacitor to settle.
 
     The choke's current settles against the load that the device is to the supply; its time constants are
-    estimated from the choke and the largest capacitor with the load's resistance.
+    estimated from the choke, or a larger winding, and the largest capacitor with the load's resistance.
     """
     period = 1 / stage.carrier
     resistance = complex(stage.load.impedance(stage.carrier)).real
     seen = abs(complex(stage.ladder.impedance(stage.carrier, stage.load)))
     largest = max((float(b.value) for b in stage.branches if b.kind == "capacitor"), default=0.0)
-    slow = max(stage.supply.choke / max(seen, 1e-9) * 2, largest * (resistance + seen))
+    omega = 2 * math.pi * stage.carrier
+    wound = [complex(b.ports(stage.carrier).own).imag / omega for b in stage.branches if b.place == THROUGH]
+    slow = max(max([stage.supply.choke, *wound]) / max(seen, 1e-9) * 2, largest * (resistance + seen))
     periods = math.ceil(SLOWEST * slow / period)
     return Run(min(max(periods, FEWEST_PERIODS), MOST_PERIODS))
 
@@ -192,47 +203,107 @@ def _branches(stage: Stage) -> list[str]:
     """Return the parts from device to load; the first capacitor in series starts charged to the supply."""
     lines = ["", "* branches from device to load"]
     node, blocked = NODE, False
-    last = max((k for k, b in enumerate(stage.branches) if b.place == "series"), default=-1)
+    last = max((k for k, b in enumerate(stage.branches) if b.place != "shunt"), default=-1)
     for k, branch in enumerate(stage.branches):
-        if branch.place == "series":
-            after = "load" if k == last else f"n{k + 1}"
-            charged = branch.kind == "capacitor" and not blocked
-            lines += _part(branch, node, after, k + 1, stage, stage.supply.voltage if charged else 0.0)
-            blocked = blocked or branch.kind == "capacitor"
-            node = after
+        tag, held = f"{k + 1}", 0.0 if blocked else stage.supply.voltage
+        lines.append(f"* {branch.name}")
+        if branch.place == "shunt":
+            lines += _part(branch, node, "0", tag, stage, held)
+            continue
+        after = "load" if k == last else f"n{tag}"
+        if branch.place == THROUGH:
+            two_port = _transformer if branch.kind == "transformer" else _coupled
+            lines += two_port(branch, node, after, tag, stage)
         else:
-            lines += _part(branch, node, "0", k + 1, stage, 0.0 if blocked else stage.supply.voltage)
+            lines += _part(branch, node, after, tag, stage, held if branch.blocks else 0.0)
+        blocked = blocked or branch.blocks or branch.place == THROUGH
+        node = after
     if last < 0:
         lines.append(f"Vthrough {NODE} load 0")
     return lines
 
 
-def _part(branch: Branch, start: str, end: str, number: int, stage: Stage, charged: float) -> list[str]:
+def _part(branch: Branch, start: str, end: str, tag: str, stage: Stage, charged: float) -> list[str]:
     omega = 2 * math.pi * stage.carrier
-    value, tag = float(branch.value), f"{number}"
-    resistance = 0.0 if branch.series_resistance is None else float(branch.series_resistance)
-    if branch.q is not None:
-        reactance = omega * value if branch.kind == "coil" else 1 / (omega * value)
-        resistance += reactance / float(branch.q)
+    value = float(branch.value)
+    own, lead = _series_resistance(branch), ("L", "lead", float(branch.lead_inductance))
+    capacitor = ("C", "", value)
     if branch.kind == "resistor":
-        resistance, value = resistance + value, 0.0
-    elements = []
+        return _chain([("R", "", value + own), lead], start, end, tag)
+    if branch.kind == "capacitor":
+        return _chain(
+            [capacitor, ("R", "", own + _loss(1 / (omega * value), branch.q)), lead], start, end, tag, charged
+        )
+    coil, loss = ("L", "", value), _loss(omega * value, branch.q)
     if branch.kind == "coil":
-        elements.append(("L", value, ""))
-    elif branch.kind == "capacitor":
-        elements.append(("C", value, f" ic={_value(charged)}" if charged else ""))
-    if resistance > 0:
-        elements.append(("R", resistance, ""))
-    if branch.lead_inductance != 0:
-        elements.append(("L", float(branch.lead_inductance), ""))
-    nodes = [start, *(f"n{tag}{letter}" for letter in "abc"[: len(elements) - 1]), end]
-    lines = [f"* {branch.name}"]
-    for k, (letter, amount, extra) in enumerate(elements):
-        suffix = "lead" if letter == "L" and branch.kind != "coil" else ""
-        lines.append(f"{letter}{tag}{suffix} {nodes[k]} {nodes[k + 1]} {_value(amount)}{extra}")
-    if branch.self_capacitance != 0:
-        lines.append(f"C{tag}self {start} {end} {_value(float(branch.self_capacitance))}")
-    return lines
+        lines = _chain([coil, ("R", "", own + loss)], start, end, tag)
+        if branch.self_capacitance != 0:
+            lines.append(f"C{tag}self {start} {end} {_value(float(branch.self_capacitance))}")
+        return lines
+    second = float(branch.second)
+    capacitor, second_loss = ("C", "", second), _loss(1 / (omega * second), branch.second_q)
+    if branch.place == "shunt":
+        return _chain([coil, capacitor, ("R", "", own + loss + second_loss), lead], start, end, tag, charged)
+    beside = [capacitor, ("R", "beside", second_loss)]
+    return _chain([coil, ("R", "", loss)], start, end, tag) + _chain(beside, start, end, tag, letters="xyz")
+
+
+def _coupled(branch: Branch, start: str, end: str, tag: str, stage: Stage) -> list[str]:
+    """Return two windings and their coupling; a tapped coil's first part lies between device and load."""
+    omega = 2 * math.pi * stage.carrier
+    near, far = float(branch.value), float(branch.second)
+    above = [("L", "", near), ("R", "", _loss(omega * near, branch.q))]
+    below = [("L", "far", far), ("R", "far", _loss(omega * far, branch.second_q))]
+    top, foot, second = {"": (start, "0", end), "load": (start, end, end), "device": (end, start, start)}[branch.tap]
+    return [
+        *_chain(above, top, foot, tag),
+        *_chain(below, second, "0", tag, letters="xyz"),
+        f"K{tag} L{tag} L{tag}far {_value(float(branch.coupling))}",
+    ]
+
+
+def _transformer(branch: Branch, start: str, end: str, tag: str, stage: Stage) -> list[str]:
+    """Return leakage and winding, the core, and an ideal ratio: a voltage made there, its current fed back."""
+    second, share = float(branch.second), _value(1 / float(branch.value))
+    core, behind = f"n{tag}core", f"n{tag}far"
+    winding = [("L", "leak", float(branch.lead_inductance)), ("R", "", _series_resistance(branch))]
+    magnetizing = [("L", "", second), ("R", "core", _loss(2 * math.pi * stage.carrier * second, branch.second_q))]
+    return [
+        *_chain(winding, start, core, tag),
+        *_chain(magnetizing, core, "0", tag, letters="xyz"),
+        f"E{tag} {behind} 0 {core} 0 {share}",
+        f"V{tag} {behind} {end} 0",
+        f"F{tag} {core} 0 V{tag} {share}",
+    ]
+
+
+def _series_resistance(branch: Branch) -> float:
+    return 0.0 if branch.series_resistance is None else float(branch.series_resistance)
+
+
+def _loss(reactance: float, q: Real | None) -> float:
+    return 0.0 if q is None else reactance / float(q)
+
+
+def _chain(
+    elements: Sequence[tuple[str, str, float]],
+    start: str,
+    end: str,
+    tag: str,
+    charged: float = 0.0,
+    letters: str = "abc",
+) -> list[str]:
+    """Return elements one after the other, as letter, what their name ends in, and amount; one of 0 is left out.
+
+    A capacitor among them starts with its charge; if nothing is left a source of 0 V stands for the wire.
+    """
+    there = [element for element in elements if element[2] != 0] or [("V", "wire", 0.0)]
+    nodes = [start, *(f"n{tag}{letter}" for letter in letters[: len(there) - 1]), end]
+    return [
+        f"{letter}{tag}{name} {nodes[k]} {nodes[k + 1]} {_value(amount)}"
+        + (f" ic={_value(charged)}" if letter == "C" and charged else "")
+        for k, (letter, name, amount) in enumerate(there)
+    ]
 
 
 def _load(stage: Stage) -> list[str]:

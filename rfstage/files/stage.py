@@ -19,20 +19,23 @@ from rfstage.files.stagefields import (
     JUNCTION,
     LIMIT,
     LOAD,
+    OWN,
+    OWN_QS,
     PAIR,
     REVERSE,
     SUPPLY,
     TABLES,
     TOP,
-    VALUE_UNIT,
     WINDING,
 )
 from rfstage.files.tables import kind_of, parse_toml, read_table
+from rfstage.kinds import BETWEEN, KEYS, THROUGH, Key, stands, unit
 from rfstage.ladder import Branch
 from rfstage.limits import limit_named
 from rfstage.load import Load, SeriesLoad
 from rfstage.quantity import QuantityError, exact_text, parse_real
 from rfstage.stage import CHOKE, OUTPUT_CAPACITANCE, Asked, Drive, PartData, Stage, Supply
+from rfstage.stagevalues import LOSSES_AND_STRAYS, has_one_value, losses_and_strays
 
 NAME = re.compile(r"[A-Za-z0-9_-]{1,12}", re.ASCII)
 RESERVED = ("load", "carrier", "drive", "supply", "device")  # what else a sweep or a page may name
@@ -152,44 +155,65 @@ def _read_branches(
     for k, table in enumerate(raw, start=1):
         where = f"{prefix}[{k}]."
         before = len(problems)
-        values = read_table(table, BRANCH, prefix=where, problems=problems, also=("value", "trim", "winding"))
-        unit = VALUE_UNIT.get(values.get("kind", ""), "")
+        values = read_table(table, BRANCH, prefix=where, problems=problems, also=(*OWN, "trim", "winding"))
+        kind, place = values.get("kind", ""), values.get("place", "")
         for key in ("name", "place", "kind"):
             if key not in values and len(problems) == before:
                 problems.append(f"{where}{key}: missing")
-        if not isinstance(table, dict) or not unit:
+        if not isinstance(table, dict) or not kind:
             continue
-        value = _positive(table.get("value"), unit, f"{where}value", problems)
-        q = values.get("q")
-        if q is not None and "series_resistance" in values:
+        if place and not stands(kind, place):
+            may = " | ".join(BETWEEN) if place == THROUGH else THROUGH
+            problems.append(f"{where}place: got {shown(place)} for kind {kind}; allowed {may}")
+        _refuse_other_keys(table, kind, place, where, problems)
+        numbers = {key.attribute: _own_number(table, key, values, where, problems) for key in KEYS[kind]}
+        if "q" in values and "series_resistance" in values:
             problems.append(f"{where}q: got both a Q and a series resistance; give one of them")
         name = values.get("name", "")
         if "name" in values:
             _check_name(name, (*data, CHOKE, OUTPUT_CAPACITANCE), f"{where}name", problems)
-        trim = _read_trim(table.get("trim"), unit, f"{where}trim", problems)
-        if trim is not None and not trim[0] <= value <= trim[1] and len(problems) == before:
-            low, high = (exact_text(end, unit) for end in trim)
-            problems.append(f"{where}value: got {exact_text(value, unit)}; allowed by its own trim {low} to {high}")
+        trim = None
+        if has_one_value(kind):
+            trim = _read_trim(table.get("trim"), KEYS[kind][0], f"{where}trim", problems)
+        value = numbers["value"]
+        if trim is not None and value is not None and not trim[0] <= value <= trim[1] and len(problems) == before:
+            got, low, high = (exact_text(number, unit(kind)) for number in (value, *trim))
+            problems.append(f"{where}value: got {got}; allowed by its own trim {low} to {high}")
         winding = None
         if "winding" in table:
             wound = read_table(table["winding"], WINDING, prefix=f"{where}winding.", problems=problems)
             winding = tuple(wound.items())
         data[name] = PartData(trim, values.get("tolerance"), winding)
         if len(problems) == before:
-            branches.append(
-                Branch(
-                    name,
-                    values["place"],
-                    values["kind"],
-                    value,
-                    q=None if q is None or math.isinf(q) else q,
-                    q_frequency=carrier,
-                    series_resistance=values.get("series_resistance"),
-                    lead_inductance=values.get("lead_inductance", 0.0),
-                    self_capacitance=values.get("self_capacitance", 0.0),
-                )
-            )
+            given: dict[str, Any] = {key: values[key] for key in ("tap", *LOSSES_AND_STRAYS) if key in values}
+            given |= {key: number for key, number in numbers.items() if number is not None}
+            finite = {key: number for key, number in given.items() if number != math.inf}  # a lossless Q is none
+            branches.append(Branch(name, place, kind, q_frequency=carrier, **finite))
     return tuple(branches), data
+
+
+def _refuse_other_keys(table: dict[str, Any], kind: str, place: str, where: str, problems: list[str]) -> None:
+    """Refuse the keys that other kinds of branch have, or the same kind in another place."""
+    own = (*(key.name for key in KEYS[kind]), *losses_and_strays(kind, place))
+    own = (*own, "trim") if has_one_value(kind) else (*own, "tap") if kind == "coupled" else own
+    standing = f" in {place}" if kind == "trap" and place in BETWEEN else ""
+    for key in (*OWN, *LOSSES_AND_STRAYS, "tap", "trim"):
+        if key in table and key not in own:
+            problems.append(
+                f"{where}{key}: got {shown(table[key])}, but kind {kind}{standing} has no such key; "
+                f"allowed {', '.join(own)}"
+            )
+
+
+def _own_number(
+    table: dict[str, Any], key: Key, values: dict[str, Any], where: str, problems: list[str]
+) -> float | None:
+    """Return a number of the branch's own kind; None where it may be left out and is, or is wrong."""
+    if key.name in OWN_QS:
+        return values.get(key.name)
+    if key.needed or key.name in table:
+        return _number(table.get(key.name), key, f"{where}{key.name}", problems)
+    return None
 
 
 def _check_name(name: str, taken: tuple[str, ...], where: str, problems: list[str]) -> None:
@@ -202,29 +226,34 @@ def _check_name(name: str, taken: tuple[str, ...], where: str, problems: list[st
         problems.append(f"{where}: {name!r} is taken; give each branch a name of its own, whatever its capitals")
 
 
-def _positive(raw: object, unit: str, where: str, problems: list[str]) -> float:
+def _number(raw: object, key: Key, where: str, problems: list[str]) -> float | None:
     if raw is None:
         problems.append(f"{where}: missing")
-        return math.nan
+        return None
+    allowed = f"above 0 {key.unit}".rstrip() if key.needed else f"0 {key.unit} or more"
+    if key.high < math.inf:
+        allowed += f" and below {exact_text(key.high, key.unit)}"
     try:
         if isinstance(raw, bool) or not isinstance(raw, str | int | float):
-            raise QuantityError(f"got {shown(raw)}; wanted a number above 0 {unit}")
-        value = parse_real(raw, unit) if isinstance(raw, str) else float(raw)
-        if not 0 < value < math.inf:
-            raise QuantityError(f"got {exact_text(value, unit)}; allowed above 0 {unit}")
+            raise QuantityError(f"got {shown(raw)}; wanted a number {allowed}")
+        value = parse_real(raw, key.unit) if isinstance(raw, str) else float(raw)
+        if not 0 <= value < key.high or (key.needed and value == 0):
+            raise QuantityError(f"got {exact_text(value, key.unit)}; allowed {allowed}")
     except (QuantityError, OverflowError) as error:
         problems.append(f"{where}: {error}")
-        return math.nan
+        return None
     return value
 
 
-def _read_trim(raw: object, unit: str, where: str, problems: list[str]) -> tuple[float, float] | None:
+def _read_trim(raw: object, key: Key, where: str, problems: list[str]) -> tuple[float, float] | None:
     if raw is None:
         return None
     if not isinstance(raw, list) or len(raw) != 2:
         problems.append(f"{where}: got {shown(raw)}; wanted the least and the most that can be set, as a list of two")
         return None
-    low, high = (_positive(value, unit, where, problems) for value in raw)
+    low, high = (_number(value, key, where, problems) for value in raw)
+    if low is None or high is None:
+        return None
     if low >= high:
         problems.append(f"{where}: the least must be below the most")
     return low, high

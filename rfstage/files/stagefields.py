@@ -6,9 +6,11 @@ from rfstage.device import PAIRS
 from rfstage.fields import Field
 from rfstage.files.tables import STAGE_FORMAT
 from rfstage.jobfields import CARRIER, FAMILIES
+from rfstage.kinds import KEYS, PLACES, TAPS
 
 VERSION = 1
-VALUE_UNIT = {"capacitor": "F", "coil": "H", "resistor": "ohm"}
+OWN = tuple(dict.fromkeys(key.name for keys in KEYS.values() for key in keys))  # of some kind of branch, not of all
+OWN_QS = tuple(name for name in OWN if name.endswith("_q"))
 
 TOP = (
     Field("format", "format", "choice", choices=(STAGE_FORMAT,)),
@@ -55,13 +57,15 @@ SUPPLY = (
 )
 BRANCH = (
     Field("name", "name", "text"),
-    Field("place", "place", "choice", choices=("series", "shunt")),
-    Field("kind", "kind", "choice", choices=tuple(VALUE_UNIT)),
+    Field("place", "place", "choice", choices=PLACES),
+    Field("kind", "kind", "choice", choices=tuple(KEYS)),
     Field("q", "q", "q", "", 1, 1e7),
     Field("series_resistance", "series_resistance", "real", "ohm", 0, 1e7),
     Field("lead_inductance", "lead_inductance", "real", "H", 0, 1.0),
     Field("self_capacitance", "self_capacitance", "real", "F", 0, 1e-3),
+    Field("tap", "tap", "choice", choices=TAPS),
     Field("tolerance", "tolerance", "real", "%", 0, 100),
+    *(Field(name, name, "q", "", 1, 1e7) for name in OWN_QS),
 )
 LOAD = (
     Field("impedance", "impedance", "impedance", "ohm", 0, 1e7, True),

@@ -18,15 +18,16 @@ from rfstage.files.stagefields import (
     PAIR,
     REVERSE,
     SUPPLY,
-    VALUE_UNIT,
     VERSION,
     WINDING,
 )
 from rfstage.files.tables import STAGE_FORMAT
+from rfstage.kinds import KEYS, unit
 from rfstage.ladder import Branch
 from rfstage.load import Load, MeasuredLoad, SeriesLoad
 from rfstage.quantity import exact_complex, exact_text
 from rfstage.stage import PartData, Stage
+from rfstage.stagevalues import LOSSES_AND_STRAYS, losses_and_strays
 
 DIGITS = 12  # of every number written: enough for any part, and 200 mV stays 200 mV
 
@@ -111,19 +112,19 @@ def _branch_lines(branch: Branch, data: PartData) -> list[str]:
         f'name = "{branch.name}"',
         f'place = "{branch.place}"',
         f'kind = "{branch.kind}"',
-        f'value = "{exact_text(float(branch.value), VALUE_UNIT[branch.kind])}"',
     ]
-    if branch.q is not None:
-        lines.append(f"q = {float(branch.q)!r}")
-    if branch.series_resistance is not None:
-        lines.append(f'series_resistance = "{exact_text(float(branch.series_resistance), "ohm")}"')
-    if branch.lead_inductance != 0:
-        lines.append(f'lead_inductance = "{exact_text(float(branch.lead_inductance), "H")}"')
-    if branch.self_capacitance != 0:
-        lines.append(f'self_capacitance = "{exact_text(float(branch.self_capacitance), "F")}"')
+    numbers = [(key.name, getattr(branch, key.attribute), key.unit, key.needed) for key in KEYS[branch.kind]]
+    for name in losses_and_strays(branch.kind, branch.place):
+        numbers.append((name, getattr(branch, name), LOSSES_AND_STRAYS[name], name == "series_resistance"))
+    lines += [
+        f'{name} = "{exact_text(float(value), of)}"' if of else f"{name} = {float(value)!r}"
+        for name, value, of, even_zero in numbers
+        if value is not None and (even_zero or value != 0)
+    ]
+    if branch.tap:
+        lines.append(f'tap = "{branch.tap}"')
     if data.trim is not None:
-        unit = VALUE_UNIT[branch.kind]
-        lines.append("trim = [" + ", ".join(f'"{exact_text(v, unit)}"' for v in data.trim) + "]")
+        lines.append("trim = [" + ", ".join(f'"{exact_text(v, unit(branch.kind))}"' for v in data.trim) + "]")
     if data.tolerance is not None:
         lines.append(f'tolerance = "{exact_text(data.tolerance, "%")}"')
     if data.winding is not None:

@@ -21,7 +21,8 @@ from rfstage.fields import plain
 from rfstage.files.tables import unreadable
 from rfstage.ladder import Ladder
 from rfstage.load import MeasuredLoad
-from rfstage.quantity import exact_complex, exact_text, show
+from rfstage.quantity import exact_complex, exact_text
+from rfstage.stagevalues import described, losses_described
 
 PORT_RESISTANCE = 50.0  # ohm
 _UNITS = ("hz", "khz", "mhz", "ghz")
@@ -217,12 +218,9 @@ def _comments(design: Design) -> list[str]:
     ]
     for part in design.tank.parts:
         branch = part.branch
-        unit = {"coil": "H", "capacitor": "F", "resistor": "ohm"}[branch.kind]
-        loss = "lossless" if branch.q is None else f"Q {branch.q:.6g}"
+        words = ", ".join((*described(branch, 6), *losses_described(branch)))
         left = ", left out" if branch.origin == "device" else ""
-        lines.append(
-            f"{branch.name} {branch.place} {branch.kind} {_ascii(show(float(branch.value), unit, 6))}, {loss}{left}"
-        )
+        lines.append(f"{branch.name} {branch.place} {branch.kind} {_ascii(words)}{left}")
     return lines
 
 

@@ -13,16 +13,8 @@ def ranking_lines(ranking: Ranking, look: Look) -> list[Text]:
     """Return the table of networks, the reason of the first, and what was said of those refused."""
     judged = any(c.margin is not None for c in ranking.candidates)
     filtered = any(c.filter for c in ranking.candidates)
-    titles = [
-        "",
-        "network",
-        *(["filter"] if filtered else []),
-        *(["margin"] if judged else []),
-        "dip",
-        "efficiency",
-        "parts",
-        "extreme",
-    ]
+    titles = ["", "network", *(["filter"] if filtered else []), *(["margin"] if judged else [])]
+    titles += ["dip", "efficiency", "parts", "extreme"]
     left = ("", "network", "filter")
     rows = [[Cell(title, "dim", right=title not in left) for title in titles]]
     made = [c for c in ranking.candidates if c.fitted]
@@ -33,6 +25,8 @@ def ranking_lines(ranking: Ranking, look: Look) -> list[Text]:
     lines += note(look, f"{ranking.winner.name} is taken: {ranking.reason}.")
     for words in (extreme.words for extreme in ranking.winner.extremes):
         lines += note(look, f"extreme: {words}", hanging=2)
+    if any(extreme.beyond for c in made for extreme in c.extremes):
+        lines += note(look, "! among the extremes one that is beyond building", style="dim")
     if not all(c.allowed for c in made):
         outlook = any(not c.allowed and c.filter for c in made)
         words = (

@@ -182,10 +182,5 @@ def check(stage: Stage) -> None:
 
 def _blocked(stage: Stage) -> bool:
     """Whether a series capacitor stands before anything that conducts to ground: no need to look closer."""
-    for branch in stage.branches:
-        if branch.kind == "capacitor":
-            if branch.place == "series":
-                return True
-        elif branch.place == "shunt":
-            return False
-    return False
+    first = next((branch for branch in stage.branches if branch.blocks or branch.grounds), None)
+    return first is not None and first.blocks

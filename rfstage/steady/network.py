@@ -19,21 +19,21 @@ from numpy.typing import NDArray
 
 from rfstage.devicelaw import Array
 from rfstage.errors import ImpossibleError
-from rfstage.ladder import Branch, Ladder
+from rfstage.ladder import SAMPLED, Branch, BranchState, Ladder
 from rfstage.load import Load
 from rfstage.stage import Stage
 
 Complex = NDArray[np.complex128]
 
-_VALUES = ("value", "q", "series_resistance", "lead_inductance", "self_capacitance")
-_TRAITS = ("name", "place", "kind", "q_frequency", "origin")
+_TRAITS = ("name", "place", "kind", "q_frequency", "origin", "tap")
 
 
 class Network(NamedTuple):
     """Stages of one build: what 1 A peak from the device does at orders 1 … N, with a stage axis S in front.
 
     ``frequencies`` [Hz] (N,); ``impedance`` at the device [ohm] (S, N); ``gain`` load power over squared peak
-    current [ohm] (S, N); ``currents`` [A/A] (B, S, N) and ``losses`` [W/A²] (B, S, N) of the B ``branches``.
+    current [ohm] (S, N); ``currents`` [A/A] (B, S, N) and ``losses`` [W/A²] (B, S, N) of the B ``branches``, and
+    what each of them has ``seen`` [ohm] (S, N) if it is a through branch, else None.
     """
 
     frequencies: Array
@@ -42,6 +42,7 @@ class Network(NamedTuple):
     branches: tuple[Branch, ...]
     currents: Complex
     losses: Array
+    seen: tuple[Complex | None, ...]
 
     @classmethod
     def of(cls, stages: Sequence[Stage], branches: Sequence[Branch], orders: int) -> Network:
@@ -71,7 +72,8 @@ class Network(NamedTuple):
         gain = np.broadcast_to(squared / 2 * (1 / walk.load_impedance).real, shape)
         currents = np.array([np.broadcast_to(state.current, shape) for state in walk.branches])
         losses = np.array([np.broadcast_to(state.loss, shape) for state in walk.branches])
-        return cls(frequencies, z, gain, tuple(branches), currents, losses)
+        seen = tuple(None if s.seen is None else np.broadcast_to(s.seen, shape) for s in walk.branches)
+        return cls(frequencies, z, gain, tuple(branches), currents, losses, seen)
 
     def first(self, orders: int) -> Network:
         """Return the first orders only."""
@@ -84,12 +86,17 @@ class Network(NamedTuple):
             self.branches,
             self.currents[:, :, :orders],
             self.losses[:, :, :orders],
+            tuple(None if seen is None else seen[:, :orders] for seen in self.seen),
         )
 
     def branch_impedances(self) -> Complex:
-        """Return the impedance of every branch [ohm], shape (B, S, N)."""
+        """Return the impedance [ohm] of every branch, of a through branch that at its device's side, (B, S, N)."""
         shape = self.impedance.shape
-        return np.array([np.broadcast_to(branch.impedance(self.frequencies), shape) for branch in self.branches])
+        drops = [
+            BranchState(current, loss, seen).drop(branch, self.frequencies)
+            for branch, current, loss, seen in zip(self.branches, self.currents, self.losses, self.seen, strict=True)
+        ]
+        return np.array([np.broadcast_to(drop, shape) for drop in drops])
 
 
 def network(stage: Stage, orders: int) -> Network:
@@ -120,7 +127,7 @@ def _merged(ladders: Sequence[Sequence[Branch]]) -> tuple[Branch, ...] | None:
         if any(getattr(other, trait) != getattr(branch, trait) for trait in _TRAITS for other in same):
             return None
         changed: dict[str, Any] = {}
-        for name in _VALUES:
+        for name in SAMPLED:
             values = [getattr(other, name) for other in same]
             if any(value != values[0] for value in values):
                 if None in values:

@@ -24,9 +24,10 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from rfstage.branch import Branch, Real
 from rfstage.device import PUSH_PULL, Device
 from rfstage.devicelaw import Law
-from rfstage.ladder import Branch
+from rfstage.kinds import KEYS
 from rfstage.load import Load
 from rfstage.stage import Stage
 from rfstage.steady.circuit import Circuit, sources
@@ -94,15 +95,21 @@ def feed_alone(stage: Stage) -> Stage:
 
 
 def _halved(branch: Branch) -> Branch:
-    """Return a branch of half the impedance."""
+    """Return a branch of half the impedance; a ratio and a coupling stay."""
     resistance = branch.series_resistance
+    unit = {key.attribute: key.unit for key in KEYS[branch.kind]}
     return replace(
         branch,
-        value=branch.value * 2 if branch.kind == "capacitor" else branch.value / 2,
+        value=_halved_value(branch.value, unit["value"]),
         series_resistance=None if resistance is None else resistance / 2,
         lead_inductance=branch.lead_inductance / 2,
         self_capacitance=branch.self_capacitance * 2,
+        second=_halved_value(branch.second, unit.get("second", "")),
     )
+
+
+def _halved_value(value: Real, unit: str) -> Real:
+    return value * 2 if unit == "F" else value if unit == "" else value / 2
 
 
 @dataclass(frozen=True, slots=True)

@@ -16,6 +16,7 @@ from typing import Any, NamedTuple
 import numpy as np
 
 from rfstage.devicelaw import Array, junction_charge
+from rfstage.kinds import THROUGH
 from rfstage.ladder import Branch
 from rfstage.stage import Stage
 from rfstage.steady.balance import spectrum, voltage
@@ -214,13 +215,15 @@ def _stresses(
 
 
 def dc_across(branches: Sequence[Branch], held: Array) -> Array:
-    """Return the direct voltage across every branch [V] (B, S), of what is held at the first (S,)."""
+    """Return the direct voltage across every branch [V] (B, S), of what is held at the first (S,).
+
+    A through branch has none across a winding, and passes none on.
+    """
     volts = np.zeros((len(branches), held.size))
     for row, branch in enumerate(branches):
-        blocks = branch.place == "series" and branch.kind == "capacitor"
-        if blocks or branch.place == "shunt":
+        if branch.blocks or branch.place == "shunt":
             volts[row] = held
-        if blocks:
+        if branch.blocks or branch.place == THROUGH:
             held = np.zeros_like(held)
     return volts
 
