@@ -179,7 +179,7 @@ def touchstone_text(design: Design) -> str:
     Choke and blocking capacitor are in it; the output capacitance is left out, as it belongs to the
     device's own model.
     """
-    branches = [part.branch for part in design.tank.parts if part.branch.origin != "device"]
+    branches = [branch for branch in design.stage.ladder.branches if branch.origin != "device"]
     frequencies = grid(design.job.carrier, design.settings.highest_order)
     s = two_port(Ladder(branches), frequencies)
     if not np.all(np.isfinite(s)):
@@ -216,8 +216,7 @@ def _comments(design: Design) -> list[str]:
         f"device's load resistance {design.point.load_resistance:.6g} ohm, designed to the {design.designed_to} power",
         f"load {exact_complex(design.settings.load_impedance)} ohm at the carrier; harmonics lie exactly on the grid",
     ]
-    for part in design.tank.parts:
-        branch = part.branch
+    for branch in design.stage.ladder.branches:
         words = ", ".join((*described(branch, 6), *losses_described(branch)))
         left = ", left out" if branch.origin == "device" else ""
         lines.append(f"{branch.name} {branch.place} {branch.kind} {_ascii(words)}{left}")

@@ -15,12 +15,12 @@ from __future__ import annotations
 import math
 from typing import NamedTuple
 
+from rfstage.constants import SAFE_VOLTAGE
 from rfstage.errors import ImpossibleError
 from rfstage.parts.preferred import neighbours
 from rfstage.parts.ranges import need
 from rfstage.quantity import show
 
-SAFE_VOLTAGE = 60.0  # V dc: above it a touch is dangerous (common practice, no source)
 POWER_MARGIN = 2.0  # rating over loss: a bleeder runs all the time (common practice, no source)
 # W: resistors that are sold (common practice, no source)
 POWER_RATINGS = (0.25, 0.5, 1.0, 2.0, 3.0, 5.0, 7.0, 10.0, 17.0, 25.0, 50.0, 100.0, 200.0, 300.0)
