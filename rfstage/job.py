@@ -34,7 +34,8 @@ class Job:
     """What is asked, in SI units, the angle in degrees; None where nothing was given.
 
     The keys, units and ranges are those of `rfstage.jobfields.JOB_FIELDS`. ``load`` is an impedance
-    [ohm] or a measured load; an infinite Q is lossless. ``power_gain`` is in dB. ``variable`` holds the
+    [ohm] or a measured load; an infinite Q is lossless. ``power_gain`` is in dB, ``antenna_gain`` in dBi,
+    temperatures in degrees Celsius, ``duty`` in percent. ``variable`` holds the
     parts of the network that can be set, for the loads they match.
 
     Raises
@@ -76,6 +77,7 @@ class Job:
     grid_current: float | None = None
     load: complex | MeasuredLoad | None = None
     load_file: str | None = None
+    antenna_gain: float | None = None
     network: str | None = None
     loaded_q: float | None = None
     input_q: float | None = None
@@ -94,10 +96,26 @@ class Job:
     choke: float | None = None
     choke_q: float | None = None
     choke_resistance: float | None = None
+    choke_self_capacitance: float | None = None
+    choke_max_current: float | None = None
+    reservoir: float | None = None
+    bleeder: float | None = None
     blocking: float | None = None
     limit: str | None = None
     limit_load: float | None = None
     margin: float | None = None
+    ambient: float | None = None
+    junction_limit: float | None = None
+    junction_to_case: float | None = None
+    case_to_sink: float | None = None
+    sink_to_ambient: float | None = None
+    duty: float | None = None
+    former: float | None = None
+    wire: float | None = None
+    series: str | None = None
+    voltage_margin: float | None = None
+    current_margin: float | None = None
+    lead: float | None = None
     variable: tuple[Variable, ...] = ()
 
     def __post_init__(self) -> None:

@@ -43,13 +43,18 @@ _UNITS: dict[str, tuple[str, tuple[str, ...], bool, str]] = {
     "m": ("a length", (), True, "50 mm"),
     "deg": ("an angle", ("°", "degree", "degrees"), False, "120 deg"),
     "dB": ("a ratio in decibels", ("db",), False, "43 dB"),
+    "dBi": ("an antenna gain", ("dB", "db"), False, "2.15 dBi"),
+    "degC": ("a temperature", ("°C",), False, "40 degC"),
+    "K/W": ("a thermal resistance", ("°C/W", "degC/W", "C/W"), False, "1.2 K/W"),
+    "s": ("a time", (), True, "30 s"),
+    "J": ("an energy", (), True, "10 J"),
     "%": ("a percentage", ("percent",), False, "5 %"),
     "": ("a plain number", (), False, "10"),
 }
 
 # read in capitals or not: no prefix and no other unit could be meant. F is left out (f is femto), S (s is a
 # second) and m (M is mega)
-_ANY_CASE = ("Hz", "V", "A", "W", "ohm", "H", "deg", "dB")
+_ANY_CASE = ("Hz", "V", "A", "W", "ohm", "H", "deg", "dB", "dBi", "degC", "K/W")
 
 # patterns are compiled when a quantity is first read: a refused file or option never gets that far
 _NUMBER = r"(?P<digits>\d+(?:\.\d*)?|\.\d+)(?:[eE](?P<exponent>[+-]?\d+))?"
@@ -98,6 +103,8 @@ def _read_tail(tail: str | None, unit: str, text: str) -> int:
     exponent = _tail_exponent(tail, unit)
     if exponent is not None:
         return exponent
+    if unit == "degC" and tail in ("C", "c", "K"):
+        raise QuantityError(f"read {text!r}, whose {tail!r} could be another unit; write degrees Celsius as 40 degC")
     for other, (what, _, _, _) in _UNITS.items():
         if other and other != unit and _tail_exponent(tail, other) is not None and tail not in _PREFIXES:
             raise QuantityError(f"read {text!r}, which is {what}; {_wanted(unit)}")
@@ -122,7 +129,7 @@ def parse_real(text: str, unit: str) -> float:
         For example ``"7.1 MHz"``, ``"100p"``, ``"4k7"``; a bare number is SI (degrees for an angle).
     unit : str
         ``"Hz"``, ``"V"``, ``"A"``, ``"W"``, ``"ohm"``, ``"F"``, ``"H"``, ``"S"``, ``"m"``, ``"deg"``,
-        ``"dB"``, ``"%"`` or ``""``.
+        ``"dB"``, ``"dBi"``, ``"degC"``, ``"K/W"``, ``"s"``, ``"J"``, ``"%"`` or ``""``.
 
     Returns
     -------

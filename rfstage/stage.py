@@ -54,11 +54,12 @@ class Supply:
 
 @dataclass(frozen=True, slots=True)
 class PartData:
-    """What a stage file says of a part beyond its circuit: setting range, tolerance [%], winding."""
+    """What a stage file says of a part beyond its circuit: setting range, tolerance [%], winding, rating [V dc]."""
 
     trim: tuple[float, float] | None = None
     tolerance: float | None = None
     winding: tuple[tuple[str, float | str], ...] | None = None
+    max_voltage: float | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -23,7 +23,7 @@ FIELDS = {field.name: field for field in JOB_FIELDS}
         ("power", "above 0 W, to 10 MW"),
         ("transfer_factor", "above 0, to 1 million"),
         ("load", "R+jX with a resistance above 0 ohm, to 10 Mohm"),
-        ("network", "l | l-high-pass | pi"),
+        ("network", "l | l-high-pass | pi | pi-l | t | tapped-coil | link | capacitive-divider | auto"),
     ],
 )
 def test_a_range_reads_as_a_person_would_say_it(name, words):

@@ -35,6 +35,7 @@ _GROUPS = {
     "tank": "tank",
     "supply": "supply",
     "limit": "limit",
+    "parts": "parts, with --parts",
 }
 
 
@@ -49,6 +50,11 @@ def parser() -> Parser:
         "--textbook",
         action="store_true",
         help="keep the book's design instead of correcting it to the settled power",
+    )
+    files.add_argument(
+        "--parts",
+        action="store_true",
+        help="choose coils to wind and capacitors to buy, and settle the stage with them",
     )
     files.add_argument("--touchstone", metavar="FILE.s2p", help="write the two-port from device node to load")
     files.add_argument("--spice", metavar="FILE", help="write the stage as a SPICE deck")
@@ -70,45 +76,62 @@ def run(words: Sequence[str]) -> int:
     from rfstage.designs.design import design, with_settled
 
     made = with_settled(design(job, textbook=True)) if found.textbook else design(job)
+    fitting = None
+    if found.parts:
+        from rfstage.fitting.fitted import fit_parts
+        from rfstage.fitting.request import request_of
+
+        fitting = fit_parts(made, request_of(job))
+    stage = made.stage if fitting is None else fitting.stage
     contents: list[tuple[str | Path, str]] = []
     if "touchstone" in wanted:
+        from dataclasses import replace
+
         from rfstage.files.touchstone import touchstone_text
 
-        contents.append((wanted["touchstone"], touchstone_text(made)))
+        contents.append((wanted["touchstone"], touchstone_text(replace(made, stage=stage))))
     if "save" in wanted:
         from pathlib import Path
 
         from rfstage.files.stagetext import stage_text
 
-        contents.append((wanted["save"], stage_text(made.stage, Path(wanted["save"]).parent)))
+        contents.append((wanted["save"], stage_text(stage, Path(wanted["save"]).parent)))
     if "spice" in wanted:
         from rfstage.files.spice import spice_text
         from rfstage.files.stagetext import rounded
 
-        contents.append((wanted["spice"], spice_text(rounded(made.stage))))
+        contents.append((wanted["spice"], spice_text(rounded(stage))))
     write_files(contents, overwrite=found.overwrite, inputs=inputs)
 
     def record() -> dict[str, Any]:
         from rfstage.files.records import design_record
 
-        return design_record(made, list(wanted.values()))
+        record = design_record(made, list(wanted.values()))
+        if fitting is not None:
+            from rfstage.files.partsrecord import parts_record
+
+            record["parts"] = parts_record(fitting)
+        return record
 
     def page(look: Look) -> list[Text]:
         from rfstage.report.design import summary
 
-        return summary(made, look)
+        return summary(made, look, fitting)
 
     output(found, record, page, list(wanted.values()))
     failed = made.worst is not None and made.worst.margin is not None and made.worst.margin < 0
+    if fitting is not None:
+        failed = fitting.misses_limit
     return 1 if failed else 0
 
 
 def _several(found: Namespace, jobs: tuple[Job, ...], wanted: dict[str, str]) -> int:
     """Design one tank for several carriers, or for variable parts, and return the exit status."""
-    if wanted:
+    if wanted or found.parts:
+        wanted = {**wanted, **({"parts": ""} if found.parts else {})}
         options = ", ".join(f"--{name}" for name in wanted)
         raise InputError(
-            f"{options}: a file holds one stage, and this job has several settings; give one --carrier, and a job "
+            f"{options}: is for one stage, and this job has several settings; give one --carrier, and a job "
             "without tank.variable"
         )
     from rfstage.designs.carriers import design_carriers

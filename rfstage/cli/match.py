@@ -8,8 +8,9 @@ from typing import TYPE_CHECKING, Any
 from rfstage.cli.words import Parser, given, output, read_all
 from rfstage.fields import Field
 from rfstage.files.job import impedance_or_file, load_file_problem
-from rfstage.jobfields import CAPACITOR_Q, CARRIER, COIL_Q, INPUT_Q, LOADED_Q, NETWORK, NETWORKS, SPECIAL, misfits
+from rfstage.jobfields import CARRIER
 from rfstage.quantity import QuantityError
+from rfstage.tankfields import CAPACITOR_Q, COIL_Q, INPUT_Q, LOADED_Q, NETWORK, NETWORKS, SPECIAL, misfits
 
 if TYPE_CHECKING:
     from rich.text import Text

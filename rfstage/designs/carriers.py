@@ -19,13 +19,13 @@ from rfstage.designs.design import Design, design
 from rfstage.designs.settings import with_defaults
 from rfstage.errors import ConvergenceError, ImpossibleError, InputError, RfstageError
 from rfstage.job import Job, Variable
-from rfstage.jobfields import AUTO
 from rfstage.kinds import unit
 from rfstage.ladder import Branch, Ladder
 from rfstage.matching.exact import Free, close
 from rfstage.matching.networks import solve_network
 from rfstage.pulse import pulse_coefficients
 from rfstage.quantity import show
+from rfstage.tankfields import AUTO
 
 VSWRS = (1.0, 1.5, 2.0, 3.0)
 PHASES = tuple(range(0, 360, 30))  # degrees of the reflection coefficient

@@ -20,11 +20,11 @@ from collections.abc import Sequence
 from dataclasses import replace
 from typing import NamedTuple
 
+from rfstage.constants import SAFE_VOLTAGE
 from rfstage.designs.judging import supply_reaches_load
 from rfstage.ladder import Branch
 from rfstage.load import Load
 from rfstage.matching.quality import strongest_resonance_below
-from rfstage.parts.bleeder import SAFE_VOLTAGE
 from rfstage.parts.ranges import need
 from rfstage.quantity import show
 from rfstage.stage import CHOKE, Stage

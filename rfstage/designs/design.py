@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
@@ -9,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from rfstage.cautions import (
+    RESONANCE,
     Caution,
     about_dip,
     about_load_file,
@@ -30,7 +32,6 @@ from rfstage.harmonics import (
     with_settled_levels,
 )
 from rfstage.job import Job
-from rfstage.jobfields import AUTO, NONE
 from rfstage.ladder import Ladder
 from rfstage.load import MeasuredLoad
 from rfstage.matching.pil import default_middle
@@ -41,8 +42,10 @@ from rfstage.operating import OperatingPoint, Rating, ratings
 from rfstage.pulse import operating_class, pulse_coefficients
 from rfstage.quantity import show_orders
 from rfstage.stage import Stage
+from rfstage.tankfields import AUTO, NONE
 
 if TYPE_CHECKING:
+    from rfstage.designs.heat import Heat
     from rfstage.designs.lowresistance import Way
     from rfstage.designs.ranking import Ranking
     from rfstage.filters.choose import Filter
@@ -62,7 +65,8 @@ class Design:
     where that was not asked; ``book_resistance`` [ohm] is the load resistance before any correction;
     ``continued`` names the harmonic orders at which a measured load had to be continued beyond its table;
     ``assumed`` holds what was not given and taken by default, by key. ``filter`` is the harmonic filter in the stage,
-    ``ranking`` all networks where they were compared, ``ways_out`` what helps where the load resistance is too low.
+    ``ranking`` all networks where they were compared, ``ways_out`` what helps where the load resistance is too low;
+    ``heat`` that of the stage in four conditions where it was asked (`with_heat`).
     """
 
     job: Job
@@ -84,6 +88,16 @@ class Design:
     filter: Filter | None = None
     ranking: Ranking | None = None
     ways_out: tuple[Way, ...] = ()
+    heat: Heat | None = None
+
+    @property
+    def filter_terminations(self) -> tuple[tuple[int, complex], ...]:
+        """What the filter with its load shows the tank [ohm] at the harmonics, by order; empty without a filter."""
+        if self.filter is None:
+            return ()
+        orders = np.arange(2, self.settings.highest_order + 1)
+        z = Ladder(self.filter.parts).impedance(self.job.carrier * orders, self.settings.load)
+        return tuple(zip(orders.tolist(), z.tolist(), strict=True))
 
     @property
     def worst(self) -> Harmonic | None:
@@ -202,6 +216,7 @@ def with_settled(made: Design, state: SteadyState | None = None) -> Design:
         textbook design comes back as it was, with a caution that says so.
     """
     from rfstage.designs.judging import in_line, settled_cautions
+    from rfstage.designs.safety import choke_cautions, station_of
     from rfstage.steady import settle
 
     shown = made.settings.highest_order
@@ -226,8 +241,34 @@ def with_settled(made: Design, state: SteadyState | None = None) -> Design:
         settled=state,
         harmonics=levels,
         ratings=tuple(r._replace(value=max(r.value, most[r.name])) for r in made.ratings),
-        cautions=(*settled_cautions(state), *made.cautions),
+        cautions=(*settled_cautions(state), *choke_cautions(state, station_of(made.job)), *_damped(made, state)),
     )
+
+
+def with_heat(made: Design, progress: Callable[[int, int], None] | None = None) -> Design:
+    """Return a design with the heat of its stage in four conditions; ``progress`` as in `heat_of`.
+
+    Raises
+    ------
+    OutOfRangeError, ImpossibleError
+        If the stage's values make no circuit.
+    """
+    from rfstage.designs.heat import heat_of
+    from rfstage.safetyfields import HEAT
+
+    values = {field.name: getattr(made.job, field.name) for field in HEAT}
+    heat = heat_of(made.stage, values, state=made.settled, progress=progress)
+    return replace(made, heat=heat, assumed={**made.assumed, **heat.assumed})
+
+
+def _damped(made: Design, state: SteadyState) -> tuple[Caution, ...]:
+    """Return a design's cautions, that of a choke resonance with what damps it in steady state."""
+    if not any(caution.topic == RESONANCE for caution in made.cautions):
+        return made.cautions
+    from rfstage.designs.safety import resonance_cautions
+
+    damped = resonance_cautions(state)
+    return tuple(c for caution in made.cautions for c in (damped if caution.topic == RESONANCE else (caution,)))
 
 
 def _assembled(
@@ -345,7 +386,7 @@ def _cautions(
     continued: tuple[int, ...],
     designed_to: str,
 ) -> tuple[Caution, ...]:
-    from rfstage.designs.judging import safety_cautions
+    from rfstage.designs.safety import blocking_cautions, most_exposed, safety_cautions, station_of
 
     job, point = settings.job, made.point
     found = about_dip(tank.trough_dip or 0.0, network=tank.network, corrected=designed_to == "settled")
@@ -357,6 +398,7 @@ def _cautions(
         [way.summary for way in ways[:WAYS_SHOWN]],
     )
     found += about_resonance(strongest_resonance_below(ladder.branches, settings.load, job.carrier))
+    found += blocking_cautions(made.stage, point.load_resistance)
     found += about_load_file(continued)
     strayed = [h.order for h in levels if h.strays_decide]
     if strayed:
@@ -368,6 +410,15 @@ def _cautions(
                 "don't trust.",
             )
         )
-    highest = max(max(part.peak_voltage or 0.0, part.far_voltage or 0.0) for part in tank.parts)
-    safe = safety_cautions(made.stage, dc_current=point.dc_current, highest_rf=highest, power=job.power)
+    exposed = most_exposed(
+        (
+            part.branch.name,
+            max(part.peak_voltage or 0.0, part.far_voltage or 0.0),
+            max(part.rms_current or 0.0, part.far_current or 0.0),
+        )
+        for part in tank.parts
+    )
+    safe = safety_cautions(
+        made.stage, dc_current=point.dc_current, exposed=exposed, power=job.power, station=station_of(job)
+    )
     return (*found, *safe)

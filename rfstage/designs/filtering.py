@@ -20,10 +20,10 @@ from rfstage.designs.textbook import Circuit, Fitted, by_the_book
 from rfstage.errors import ImpossibleError
 from rfstage.filters.choose import choose_filter
 from rfstage.harmonics import decibels, load_powers
-from rfstage.jobfields import AUTO, NONE
 from rfstage.ladder import Branch, Ladder
 from rfstage.matching.tank import tank_efficiency
 from rfstage.operating import OperatingPoint
+from rfstage.tankfields import AUTO, NONE
 
 ROUNDS = 6
 SPARE = 0.2  # dB more than what was short, so that the rounds end

@@ -1,4 +1,4 @@
-"""What a settled stage is held against: ratings, the limit in a resistive line, and what can hurt someone."""
+"""What a settled stage is held against: ratings, the limit in a resistive line, and what its figures warn of."""
 
 from __future__ import annotations
 
@@ -6,7 +6,7 @@ from collections.abc import Sequence
 from dataclasses import replace
 from typing import NamedTuple
 
-from rfstage.cautions import Caution, about_load_file, about_settled, safety
+from rfstage.cautions import Caution, about_load_file, about_settled
 from rfstage.ladder import Branch
 from rfstage.limits import limit_named
 from rfstage.load import MeasuredLoad, SeriesLoad
@@ -95,19 +95,6 @@ def load_file_cautions(stage: Stage) -> list[Caution]:
     """Return what was done where a measured load does not reach the orders shown."""
     load = stage.load
     return about_load_file(load.beyond(stage.carrier, SHOWN) if isinstance(load, MeasuredLoad) else ())
-
-
-def safety_cautions(stage: Stage, *, dc_current: float, highest_rf: float, power: float) -> list[Caution]:
-    """Return what can hurt someone in a stage of these amperes, peak volts and watts."""
-    return safety(
-        family=stage.device.family,
-        supply=stage.supply.voltage,
-        dc_current=dc_current,
-        highest_rf=highest_rf,
-        power=power,
-        reaches_load=supply_reaches_load(stage.branches),
-        carrier=stage.carrier,
-    )
 
 
 def supply_reaches_load(branches: Sequence[Branch]) -> bool:

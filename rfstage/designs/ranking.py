@@ -21,10 +21,10 @@ from rfstage.designs.textbook import Fitted, by_the_book
 from rfstage.errors import ImpossibleError, RfstageError
 from rfstage.filters.choose import Filter
 from rfstage.harmonics import WAVEFORM_ORDERS, trough_dip
-from rfstage.jobfields import AUTO, NETWORKS
 from rfstage.ladder import Branch, Ladder
 from rfstage.matching.tank import PartStress, stresses, tank_efficiency
 from rfstage.quantity import show
+from rfstage.tankfields import AUTO, NETWORKS
 
 SHORT_STEP = 3.0  # dB: networks that miss the limit by less than this apart are alike
 LOSS_STEP = 0.02  # of the power: the same for what tank and filter lose

@@ -13,12 +13,12 @@ from typing import TypeVar
 
 from rfstage.errors import InputError
 from rfstage.job import Job
-from rfstage.jobfields import AUTO
 from rfstage.ladder import Branch, Ladder
 from rfstage.limits import Limit, limit_named
 from rfstage.load import Load, MeasuredLoad, SeriesLoad
 from rfstage.matching.task import Request
 from rfstage.quantity import exact_text
+from rfstage.tankfields import AUTO
 
 BIPOLAR_THRESHOLD = 0.7  # V
 T = TypeVar("T")

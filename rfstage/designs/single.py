@@ -52,7 +52,7 @@ def single_network(
     carrier : float
         Hz.
     network : str
-        One of `rfstage.jobfields.NETWORKS`.
+        One of `rfstage.tankfields.NETWORKS`.
     loaded_q, input_q, coil_q, capacitor_q : float
         Of a pi at most one of the first two [-]; of the parts, infinite for lossless.
     power : float or None

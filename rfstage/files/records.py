@@ -96,14 +96,15 @@ def design_record(design: Design, files: Sequence[str]) -> dict[str, Any]:
             for h in design.harmonics
         ],
         "settled": None if design.settled is None else settled_record(design.settled),
-        "filter": None if design.filter is None else _filter_record(design.filter),
+        "filter": None if design.filter is None else _filter_record(design.filter, design.filter_terminations),
         "ranking": None if design.ranking is None else _ranking_record(design.ranking),
+        "parts": None,
         "cautions": [{"topic": c.topic, "text": c.text} for c in design.cautions],
         "files": list(files),
     }
 
 
-def _filter_record(made: Filter) -> dict[str, Any]:
+def _filter_record(made: Filter, terminations: Sequence[tuple[int, complex]]) -> dict[str, Any]:
     return {
         "kind": made.kind,
         "order": made.order,
@@ -112,6 +113,7 @@ def _filter_record(made: Filter) -> dict[str, Any]:
         "form": made.form,
         "line_ohm": made.resistance,
         "parts": [branch.name for branch in made.parts],
+        "impedance_ohm": [[order, *complex_pair(z)] for order, z in terminations],
         "insertion_loss_db": made.insertion_loss_db,
         "return_loss_db": made.return_loss_db if math.isfinite(made.return_loss_db) else None,
     }

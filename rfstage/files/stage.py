@@ -183,7 +183,7 @@ def _read_branches(
         if "winding" in table:
             wound = read_table(table["winding"], WINDING, prefix=f"{where}winding.", problems=problems)
             winding = tuple(wound.items())
-        data[name] = PartData(trim, values.get("tolerance"), winding)
+        data[name] = PartData(trim, values.get("tolerance"), winding, values.get("max_voltage"))
         if len(problems) == before:
             given: dict[str, Any] = {key: values[key] for key in ("tap", *LOSSES_AND_STRAYS) if key in values}
             given |= {key: number for key, number in numbers.items() if number is not None}

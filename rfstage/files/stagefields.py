@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from rfstage.device import PAIRS
+from rfstage.devicefields import FAMILIES
 from rfstage.fields import Field
 from rfstage.files.tables import STAGE_FORMAT
-from rfstage.jobfields import CARRIER, FAMILIES
+from rfstage.jobfields import CARRIER
 from rfstage.kinds import KEYS, PLACES, TAPS
 
 VERSION = 1
@@ -65,6 +66,7 @@ BRANCH = (
     Field("self_capacitance", "self_capacitance", "real", "F", 0, 1e-3),
     Field("tap", "tap", "choice", choices=TAPS),
     Field("tolerance", "tolerance", "real", "%", 0, 100),
+    Field("max_voltage", "max_voltage", "real", "V", 0, 1e7, True),
     *(Field(name, name, "q", "", 1, 1e7) for name in OWN_QS),
 )
 LOAD = (

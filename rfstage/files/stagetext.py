@@ -127,6 +127,8 @@ def _branch_lines(branch: Branch, data: PartData) -> list[str]:
         lines.append("trim = [" + ", ".join(f'"{exact_text(v, unit(branch.kind))}"' for v in data.trim) + "]")
     if data.tolerance is not None:
         lines.append(f'tolerance = "{exact_text(data.tolerance, "%")}"')
+    if data.max_voltage is not None:
+        lines.append(f'max_voltage = "{exact_text(data.max_voltage, "V")}"')
     if data.winding is not None:
         kinds = {field.name: field for field in WINDING}
         lines.append("winding = { " + ", ".join(f"{k} = {_written(kinds[k], v)}" for k, v in data.winding) + " }")

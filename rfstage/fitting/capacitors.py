@@ -4,15 +4,16 @@ from __future__ import annotations
 
 from typing import NamedTuple
 
-from rfstage.errors import RfstageError
+from rfstage.errors import ImpossibleError, RfstageError
 from rfstage.fitting.request import PartsRequest
-from rfstage.parts.capacitor import TrimmerRange, best_pair, fixed_and_trimmer, nearest_single
+from rfstage.parts.capacitor import FixedAndTrimmer, TrimmerRange, best_pair, fixed_and_trimmer, nearest_single
 from rfstage.parts.leads import nominal_capacitance
 from rfstage.parts.preferred import preferred_range
 from rfstage.parts.stress import Burden, PartStress, stresses
 
 NEAR_ENOUGH = 2.0  # %: one part serves, where it is so near; else two side by side
-TRIM = 10.0  # % around the wanted value that a trimmer must reach, for the parts' tolerances
+# % around the wanted value that a trimmer should reach, for the parts' tolerances; less where no trimmer reaches more
+TRIM = (10.0, 7.0, 5.0)
 FIXED, TRIMMED, BLOCKING = "fixed", "trimmed", "blocking"
 
 
@@ -82,7 +83,7 @@ def choose_capacitor(
         if role == BLOCKING:
             values = (preferred_range(wanted * (1 - 1e-9), 2 * wanted, series="E6")[0],)
         elif role == TRIMMED:
-            found = fixed_and_trimmer(nominal, percent=TRIM, series=asked.series)
+            found = _trimmer(nominal, asked.series)
             values, trimmer, setting = found.fixed, found.trimmer, found.setting
         else:
             values = _fixed(nominal, asked.series)
@@ -101,6 +102,15 @@ def choose_capacitor(
         wanted=wanted,
         stresses=stresses(highest, burden, holds_for=nominal, q=q, margins=asked.margins, lead_inductance=asked.lead),
     )
+
+
+def _trimmer(wanted: float, series: str) -> FixedAndTrimmer:
+    for percent in TRIM[:-1]:
+        try:
+            return fixed_and_trimmer(wanted, percent=percent, series=series)
+        except ImpossibleError:
+            continue
+    return fixed_and_trimmer(wanted, percent=TRIM[-1], series=series)
 
 
 def _fixed(wanted: float, series: str) -> tuple[float, ...]:

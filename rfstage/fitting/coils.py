@@ -19,7 +19,7 @@ from rfstage.parts.medhurst import resistance_ratio
 from rfstage.parts.wire import MU_0, ac_resistance
 from rfstage.quantity import show
 
-FORMERS = np.array([5, 6, 8, 10, 12, 16, 20, 25, 32, 40, 50, 63, 80, 100, 125, 160]) * 1e-3  # m
+FORMERS = np.array([4, 5, 6, 7, 8, 10, 12, 16, 20, 25, 32, 40, 50, 63, 80, 100, 125, 160]) * 1e-3  # m
 WIRES = np.array([0.5, 0.8, 1.0, 1.2, 1.5, 2.0, 2.5, 3.0, 4.0, 5.0, 6.0, 8.0]) * 1e-3  # m
 PER_AMPERE = 0.25e-3  # m of wire diameter for each ampere rms
 THINNER, THICKER = 0.6, 2.1  # times that: the wires tried
@@ -27,7 +27,7 @@ STIFFEST = 0.25  # of the coil's diameter: thicker wire is not wound on it
 CLOSEST, WIDEST = 1.15, 4.0  # pitch over wire
 LONGEST, SHORTEST = 2.5, 0.3  # length over diameter
 TRIED = 8  # of the candidates, best first
-_TURNS = np.arange(1.0, 61.0)
+_TURNS = np.concatenate((np.arange(1.0, 6.0, 0.5), np.arange(6.0, 61.0)))  # legs on opposite sides: half a turn
 
 
 Array = NDArray[np.float64]

@@ -28,6 +28,8 @@ from rfstage.stage import BLOCKING as BLOCKER
 from rfstage.stage import PartData, Stage
 from rfstage.steady import SteadyState, settle
 
+RETRIMS = 6
+NEAR = 1e-3  # of the load resistance: how near the impedance comes back
 TOLERANCE = 5.0  # % of fixed capacitors (common practice, no source)
 
 
@@ -124,36 +126,42 @@ def _trims(made: Design) -> list[tuple[str, str]]:
 def _retrimmed(
     made: Design, before: Sequence[Branch], branches: Sequence[Branch], chosen: Chosen, trims: tuple[str, str]
 ) -> tuple[tuple[Branch, ...], Chosen]:
-    """Return the branches and parts with trimmer and coil set so that the device sees what it is to see."""
+    """Return the branches and parts with trimmer and coil set so that the device sees what it is to see.
+
+    Squeezing a coil changes its Q and self-capacitance, so it is done again with those until the rest is small.
+    """
+    wanted, load, carrier = complex(made.point.load_resistance), made.settings.load_impedance, made.job.carrier
     places = {branch.name: k for k, branch in enumerate(branches)}
     capacitor, coil = (places[name] for name in trims)
     tied = ("second",) if branches[coil].kind == "coupled" else ()
-    closed = close(
-        before,
-        branches,
-        wanted=complex(made.point.load_resistance),
-        load=made.settings.load_impedance,
-        carrier=made.job.carrier,
-        free=(Free(capacitor), Free(coil, "value", tied)),
-    )
-    bought, wound = dict(chosen.bought), dict(chosen.wound)
-    name = trims[0]
+    free = (Free(capacitor), Free(coil, "value", tied))
+    now = tuple(branches)
+    for _ in range(RETRIMS):
+        closed = close(before, now, wanted=wanted, load=load, carrier=carrier, free=free)
+        chosen = _set(chosen, trims, float(closed[capacitor].value), float(closed[coil].value), wound=not tied)
+        now = tuple(real(branch, chosen) for branch in closed)
+        if abs(complex(Ladder((*before, *now)).impedance(carrier, load)) / wanted - 1) <= NEAR:
+            return now, chosen
+    raise ConvergenceError(f"{trims[0]} and {trims[1]} do not settle against each other")
+
+
+def _set(chosen: Chosen, trims: tuple[str, str], capacitance: float, inductance: float, *, wound: bool) -> Chosen:
+    """Return the parts with the trimmed capacitor at a capacitance [F] and the coil at an inductance [H]."""
+    name, coil = trims
+    bought, windings = dict(chosen.bought), dict(chosen.wound)
     if name in bought:
-        total = float(closed[capacitor].value)
         low, high = bought[name].reach or (0.0, 0.0)
-        if not low <= total <= high:
+        if not low <= capacitance <= high:
             raise ImpossibleError(
-                f"{name} would have to be {show(total, 'F')}, and its trimmer reaches from {show(low, 'F')} to "
+                f"{name} would have to be {show(capacitance, 'F')}, and its trimmer reaches from {show(low, 'F')} to "
                 f"{show(high, 'F')}"
             )
-        bought[name] = bought[name].retrimmed(total)
-    if float(closed[coil].value) <= 0:
-        raise ConvergenceError(f"{trims[1]} would have to be negative")
-    if trims[1] in wound and branches[coil].kind == "coil":
-        # squeezing changes Q and self-capacitance a little; once more with those, and the rest is below a millesimal
-        wound[trims[1]] = wound[trims[1]].retrimmed(float(closed[coil].value))
-    again = Chosen(bought, wound, chosen.ideal)
-    return tuple(real(branch, again) for branch in closed), again
+        bought[name] = bought[name].retrimmed(capacitance)
+    if inductance <= 0:
+        raise ConvergenceError(f"{coil} would have to be negative")
+    if coil in windings and wound:
+        windings[coil] = windings[coil].retrimmed(inductance)
+    return chosen._replace(bought=bought, wound=windings)
 
 
 def _compared(

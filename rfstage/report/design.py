@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from typing import TYPE_CHECKING
 
 from rich.text import Text
 
@@ -14,13 +15,16 @@ from rfstage.report.circuit import CONTROL, ELECTRODE, FAMILY, circuit
 from rfstage.report.judged import caution_lines, rating_lines, signed, verdict_lines
 from rfstage.report.page import NO_BREAK, Cell, Look, columns, heading, note, pairs
 
+if TYPE_CHECKING:
+    from rfstage.fitting.fitted import Fitting
+
 WIDE = 100  # columns, from which device current and power in the load are shown too
 BAR_FLOOR = -100.0  # dBc at the left end of a bar; the right end is the carrier
 _ORDER_NAMES = ("dc", "fundamental", "second", "third")
 
 
-def summary(design: Design, look: Look) -> list[Text]:
-    """Return the whole summary as lines of text."""
+def summary(design: Design, look: Look, fitting: Fitting | None = None) -> list[Text]:
+    """Return the whole summary as lines of text, with the parts where they were chosen."""
     return [
         *_title(design, look),
         *_circuit(design, look),
@@ -28,6 +32,7 @@ def summary(design: Design, look: Look) -> list[Text]:
         *_tank(design, look),
         *_harmonics(design, look),
         *_compared_networks(design, look),
+        *_parts(fitting, look),
         *_assumed(design, look),
         *caution_lines(look, design.cautions),
     ]
@@ -41,6 +46,14 @@ def _title(design: Design, look: Look) -> list[Text]:
         f"{job.conduction_angle:g}° conduction"
     )
     return note(look, words, style="bold", indent=0)
+
+
+def _parts(fitting: Fitting | None, look: Look) -> list[Text]:
+    if fitting is None:
+        return []
+    from rfstage.report.parts import parts_lines
+
+    return parts_lines(fitting, look)
 
 
 def _compared_networks(design: Design, look: Look) -> list[Text]:
@@ -143,13 +156,14 @@ def _tank(design: Design, look: Look) -> list[Text]:
     made = design.filter
     if made is None:
         return lines
+    shown = "  ".join(f"{n}:{NO_BREAK}{show_complex(z)}" for n, z in design.filter_terminations[:3])
     ripple = f"{made.ripple_db:g} dB ripple to" if made.ripple_db else "3 dB at"
     return lines + note(
         look,
         f"Filter: {made.kind} of order {made.order}, {made.form}, {ripple} {show(made.cutoff, 'Hz', 4)}, for a line of "
         f"{show(made.resistance, 'ohm')}; insertion loss {made.insertion_loss_db:.2f} dB and return loss "
         f"{made.return_loss_db:.1f} dB at the carrier. The tank is closed on what the filter shows it; efficiency and "
-        "bandwidth hold both.",
+        f"bandwidth hold both. It shows the tank, by order: {shown}",
     )
 
 

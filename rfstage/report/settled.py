@@ -17,7 +17,7 @@ from rfstage.designs.judging import (
 )
 from rfstage.device import PARALLEL, PUSH_PULL
 from rfstage.limits import limit_named
-from rfstage.matching.networks import PartStress
+from rfstage.matching.tank import PartStress
 from rfstage.quantity import show, show_complex
 from rfstage.report.circuit import ELECTRODE, FAMILY, circuit
 from rfstage.report.judged import caution_lines, rating_lines, signed, verdict_lines
