@@ -117,4 +117,3 @@ def _link_qs(branches: Sequence[Branch], load: complex, carrier: float) -> tuple
     near = 1 / complex(Ladder(branches[place:]).impedance(carrier, load))
     beyond = complex(Ladder(branches[place + 1 :]).impedance(carrier, load))
     return -near.imag / near.real, 2 * math.pi * carrier * float(pair.second) / beyond.real
-

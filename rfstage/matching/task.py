@@ -74,9 +74,12 @@ class Task(NamedTuple):
         except ZeroDivisionError:
             target = complex(-1)
         if not target.real > 0:
+            through = any(branch.place == THROUGH for branch in feed)
+            lossy = "choke, blocking capacitor and transformer" if through else "choke and blocking capacitor"
+            cure = "leave the transformer out, or " if through else ""
             raise ImpossibleError(
-                f"the losses of choke and blocking capacitor alone are more than the {four_figures(wanted)} ohm "
-                "asked at the device leave room for; raise tank.blocking, or supply.choke and supply.choke_q"
+                f"the losses of {lossy} alone are more than the {four_figures(wanted)} ohm asked at the device leave "
+                f"room for; {cure}raise tank.blocking, or supply.choke and supply.choke_q"
             )
         return cls(request, tuple(feed), wanted, target, load, carrier, tuple(near))
 
