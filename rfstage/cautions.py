@@ -6,11 +6,12 @@ import math
 from collections.abc import Sequence
 from typing import NamedTuple
 
+from rfstage.constants import SAFE_VOLTAGE
 from rfstage.quantity import show, show_orders
 
-DC_SHOCK = 60.0  # V: above it direct current is treated as dangerous to touch (common practice, no source)
 RF_BURN = 30.0  # V peak: RF above about this burns skin on contact (common practice, no source)
 HIGH_CURRENT = 10.0  # A: a low-voltage supply that gives this heats rings and tools (common practice, no source)
+RESONANCE, FAILED_BLOCKING = "choke resonance", "blocking capacitor"  # topics that others look for
 DIP_CAUTION, DIP_STRONG = 0.03, 0.10
 FAR_ABOVE_SUPPLY = 3.0  # times the supply
 POWER_MISSED = 0.01  # of the asked power: below it a meter shows no difference
@@ -32,14 +33,19 @@ def safety(
     family: str,
     supply: float,
     dc_current: float,
-    highest_rf: float,
+    volts: tuple[float, str],
+    amperes: tuple[float, str],
     power: float,
-    reaches_load: bool,
+    output: str,
     carrier: float,
 ) -> list[Caution]:
-    """Return what can hurt someone in a stage of these volts, amperes, watts and hertz."""
+    """Return what can hurt someone in a stage of these volts, amperes, watts and hertz.
+
+    ``volts`` (peak) and ``amperes`` (rms) are the most RF in the open, with the name of the part that carries it;
+    ``output`` says what to do where a failed blocking capacitor puts the supply on the load, else it is empty.
+    """
     found = []
-    if supply > DC_SHOCK:
+    if supply > SAFE_VOLTAGE:
         found.append(
             Caution(
                 "high voltage",
@@ -60,24 +66,22 @@ def safety(
                 ),
             )
         )
-    if highest_rf > RF_BURN:
+    if volts[0] > RF_BURN:
         found.append(
             Caution(
                 "RF burns",
                 (
-                    f"{show(highest_rf, 'V')} peak RF stands on tank parts; it burns deeply, at low supply voltages "
-                    "too. Enclose the tank and never adjust it by bare hand with power on."
+                    f"{show(volts[0], 'V')} peak RF stands on {volts[1]}, {show(amperes[0], 'A')} rms flow in "
+                    f"{amperes[1]}; it burns deeply, at low supply voltages too. Enclose the tank and never adjust it "
+                    "by bare hand with power on."
                 ),
             )
         )
-    if reaches_load and supply > DC_SHOCK:
+    if output:
         found.append(
             Caution(
-                "blocking capacitor",
-                (
-                    f"if the blocking capacitor fails, {show(supply, 'V')} reaches the antenna: put an RF choke across "
-                    "the output, so that the fuse blows instead."
-                ),
+                FAILED_BLOCKING,
+                f"if the blocking capacitor fails, {show(supply, 'V')} reaches the antenna: {output}.",
             )
         )
     found.append(
@@ -230,16 +234,16 @@ def about_tank_loss(efficiency: float, loaded_q: float) -> list[Caution]:
     ]
 
 
-def about_resonance(resonance: tuple[float, float] | None) -> list[Caution]:
-    """Return the warning of a choke resonance (Hz, dB) that stands above the carrier's level."""
+def about_resonance(resonance: tuple[float, float] | None, cure: str = "") -> list[Caution]:
+    """Return the warning of a choke resonance (Hz, dB) that stands above the carrier's level, and its cure."""
     if resonance is None or resonance[1] <= 0:
         return []
     return [
         Caution(
-            "choke resonance",
+            RESONANCE,
             (
                 f"the choke resonates with the capacitors behind it at {show(resonance[0], 'Hz')}, "
-                f"{resonance[1]:.0f} dB above the carrier's level: damp it, or the stage may oscillate there."
+                f"{resonance[1]:.0f} dB above the carrier's level, where the stage may oscillate: {cure or 'damp it'}."
             ),
         )
     ]

@@ -158,5 +158,5 @@ def heat_misfits(values: dict[str, object]) -> list[str]:
             if field.name != "duty" and values.get(field.name) is not None
         ]
     if values.get("bleeder") is not None and values.get("reservoir") is None:
-        found.append("supply.bleeder: is of no use without supply.reservoir")
+        found.append("supply.bleeder: is of no use without supply.reservoir (--reservoir)")
     return found

@@ -19,7 +19,7 @@ from rfstage.quantity import (
     show_complex,
 )
 
-UNITS = ["Hz", "V", "A", "W", "ohm", "F", "H", "S", "m", "deg", "dB", "%", ""]
+UNITS = ["Hz", "V", "A", "W", "ohm", "F", "H", "S", "m", "deg", "dB", "dBi", "degC", "K/W", "s", "J", "%", ""]
 
 
 @pytest.mark.parametrize(
@@ -48,6 +48,15 @@ UNITS = ["Hz", "V", "A", "W", "ohm", "F", "H", "S", "m", "deg", "dB", "%", ""]
         ("120°", "deg", 120.0),
         ("120", "deg", 120.0),
         ("43 dB", "dB", 43.0),
+        ("2.15 dBi", "dBi", 2.15),
+        ("-3dB", "dBi", -3.0),
+        ("40degC", "degC", 40.0),
+        ("-12.5 °C", "degC", -12.5),
+        ("0.3K/W", "K/W", 0.3),
+        ("1.2 °C/W", "K/W", 1.2),
+        ("1.2 C/W", "K/W", 1.2),
+        ("250 ms", "s", 0.25),
+        ("3 kJ", "J", 3000.0),
         ("5 %", "%", 5.0),
         ("20 mS", "S", 0.02),
         ("12", "", 12.0),
@@ -156,6 +165,10 @@ def test_decimal_comma_is_refused_showing_the_point(text):
         ("100 pF", "H", "a capacitance", "an inductance, such as 1.2 uH"),
         ("3 dB", "W", "a ratio in decibels", "a power, such as 10 W"),
         ("120 deg", "A", "an angle", "a current, such as 2.5 A"),
+        ("40 deg", "degC", "an angle", "a temperature, such as 40 degC"),
+        ("104 F", "degC", "a capacitance", "a temperature, such as 40 degC"),
+        ("40 degC", "deg", "a temperature", "an angle, such as 120 deg"),
+        ("2 dBi", "dB", "an antenna gain", "a ratio in decibels, such as 43 dB"),
     ],
 )
 def test_wrong_unit_says_what_was_read_and_what_is_wanted(text, unit, read, wanted):
@@ -176,6 +189,18 @@ def test_what_is_not_finite_is_refused_by_that_name(text):
         QuantityError, match=rf"read '.{{0,1}}{text.lstrip('+-')}', which is not a finite number; wanted"
     ):
         parse_real(text, "V")
+
+
+@pytest.mark.parametrize("text", ["40 C", "40c", "313 K"])
+def test_a_temperature_with_a_unit_of_two_meanings_is_refused_with_the_one_to_write(text):
+    with pytest.raises(QuantityError, match=r"could be another unit; write degrees Celsius as 40 degC"):
+        parse_real(text, "degC")
+
+
+@pytest.mark.parametrize(("text", "unit"), [("40 kdegC", "degC"), ("1.2 W/K", "K/W"), ("3 mK/W", "K/W")])
+def test_a_unit_without_prefixes_takes_none_and_none_upside_down(text, unit):
+    with pytest.raises(QuantityError, match="is no unit known here"):
+        parse_real(text, unit)
 
 
 @pytest.mark.parametrize("text", ["", "   ", "\t\n"])

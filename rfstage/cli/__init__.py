@@ -21,6 +21,9 @@ COMMANDS = {
     "match": ("match", "one network by itself, between any two impedances"),
     "settle": ("settle", "the steady state of an as-built stage"),
     "sweep": ("sweep", "the steady state along one value: tuning, drive, supply, load"),
+    "retune": ("retune", "what to change for a new carrier, or because of meter readings"),
+    "coil": ("coil", "a coil to wind, in air or on a ring core: turns, Q, resonance, taps"),
+    "verify": ("verify", "measured against predicted and the limit: levels, waveforms, tank"),
     "pulse": ("pulse", "Fourier coefficients of the current pulse of a conduction angle"),
 }
 OK, CHECK_FAILED, BAD_INPUT, STOPPED = 0, 1, 2, 130
@@ -94,7 +97,7 @@ def _in_ascii_units(message: str) -> str:
     'grün.s1p: 12.0 - j3.20 ohm at 20.0 deg, 4.70 uH; at most 1250 ohm'
     """
     message = re.sub(r"−(?=[\dj]| j?\d)", "-", message)
-    message = re.sub(r"(?<=\d) ?°(?!\w)", " deg", message)
+    message = re.sub(r"(?<=\d) ?°(C?)(?!\w)", r" deg\1", message)
     message = re.sub(r"(?<=\d )[µμ](?=[VAWFHSmΩ]|Hz|ohm)", "u", message)
     message = re.sub(r"(?<=\d )([munpkMGT]?)Ω(?!\w)", r"\1ohm", message)
     return re.sub(r"(?<![\w.'\"])\d(?:\.\d+)?e\+0[0-6](?![\w.])", lambda found: f"{float(found[0]):.12g}", message)

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
+from rfstage.cli.heatoptions import add_heat, check_heat
 from rfstage.cli.words import Parser, given, output, targets
 from rfstage.errors import InputError
 from rfstage.files.job import read_jobs
@@ -36,6 +37,7 @@ _GROUPS = {
     "supply": "supply",
     "limit": "limit",
     "parts": "parts, with --parts",
+    "heat": "heat, with --heat",
 }
 
 
@@ -56,6 +58,7 @@ def parser() -> Parser:
         action="store_true",
         help="choose coils to wind and capacitors to buy, and settle the stage with them",
     )
+    add_heat(files)
     files.add_argument("--touchstone", metavar="FILE.s2p", help="write the two-port from device node to load")
     files.add_argument("--spice", metavar="FILE", help="write the stage as a SPICE deck")
     files.add_argument("--save", metavar="STAGE.toml", help="write the stage file")
@@ -66,6 +69,7 @@ def run(words: Sequence[str]) -> int:
     """Run the command and return its exit status."""
     found = parser().read(words)
     wanted = targets(found, "touchstone", "save", "spice")
+    check_heat(found)
     jobs = read_jobs(found.job, given(found, JOB_FIELDS))
     if len(jobs) > 1 or jobs[0].variable:
         return _several(found, jobs, wanted)
@@ -83,6 +87,12 @@ def run(words: Sequence[str]) -> int:
 
         fitting = fit_parts(made, request_of(job))
     stage = made.stage if fitting is None else fitting.stage
+    if found.heat:
+        from rfstage.cli.progress import progress
+        from rfstage.designs.design import with_heat
+
+        state = made.settled if fitting is None else fitting.state
+        made = with_heat(made, stage=stage, state=state, progress=progress())
     contents: list[tuple[str | Path, str]] = []
     if "touchstone" in wanted:
         from dataclasses import replace
@@ -127,8 +137,9 @@ def run(words: Sequence[str]) -> int:
 
 def _several(found: Namespace, jobs: tuple[Job, ...], wanted: dict[str, str]) -> int:
     """Design one tank for several carriers, or for variable parts, and return the exit status."""
-    if wanted or found.parts:
-        wanted = {**wanted, **({"parts": ""} if found.parts else {})}
+    asked = [name for name in ("parts", "heat") if getattr(found, name)]
+    if wanted or asked:
+        wanted = {**wanted, **dict.fromkeys(asked, "")}
         options = ", ".join(f"--{name}" for name in wanted)
         raise InputError(
             f"{options}: is for one stage, and this job has several settings; give one --carrier, and a job "

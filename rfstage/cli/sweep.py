@@ -3,11 +3,10 @@
 from __future__ import annotations
 
 import math
-import sys
-import time
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
+from rfstage.cli.progress import progress
 from rfstage.cli.words import Parser, given, output, read_all, targets
 from rfstage.errors import InputError
 from rfstage.fields import Field
@@ -40,7 +39,6 @@ ZERO_ALLOWED = (
     "leakage",
 )
 FAR = 1000.0  # a bare number this many times off the value now set is taken for one that wants a prefix
-PATIENCE = 1.0  # s: past it a progress bar shows
 
 
 def parser() -> Parser:
@@ -78,7 +76,7 @@ def run(words: Sequence[str]) -> int:
     )
     now = None if path == "load" else fitted_value(stage, path)
     _check_ends(path, now, {name: (field, text, values[name]) for name, (field, text) in ends.items()})
-    swept = sweep(stage, path, list(np.linspace(values["first"], values["last"], values["points"])), _progress())
+    swept = sweep(stage, path, list(np.linspace(values["first"], values["last"], values["points"])), progress())
     if wanted:
         from rfstage.files.records import sweep_table
 
@@ -137,23 +135,3 @@ def _check_ends(path: str, now: float | None, ends: dict[str, tuple[Field, str, 
         problems.append(f"{field.option}: got {exact_text(last, field.unit)}, the same as --from")
     if problems:
         raise InputError(*problems)
-
-
-def _progress() -> Callable[[int, int], None]:
-    """Return a progress report on stderr, silent for the first second and where that is no terminal."""
-    began = time.monotonic()
-    shown: list[object] = []
-
-    def report(done: int, of: int) -> None:
-        if sys.stderr is None or not sys.stderr.isatty() or (not shown and time.monotonic() - began < PATIENCE):
-            return
-        from rich.console import Console
-        from rich.progress_bar import ProgressBar
-
-        console = Console(file=sys.stderr)
-        shown.append(done)
-        console.print(ProgressBar(total=of, completed=done, width=40), f" {done} of {of} points", end="\r")
-        if done == of:
-            console.print(" " * 78, end="\r")
-
-    return report

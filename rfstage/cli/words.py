@@ -26,8 +26,8 @@ _FILE = re.compile(r"\.s\d+p\Z", re.IGNORECASE)
 class Parser(argparse.ArgumentParser):
     """What a command takes; argparse writes its help, and `read` reads its words.
 
-    No option may be abbreviated or given twice, a value such as ``-10W`` or ``-j10`` stays a value, and all
-    problems of a command line come at once.
+    No option may be abbreviated, or given twice unless it is `repeatable`; a value such as ``-10W`` or ``-j10``
+    stays a value, and all problems of a command line come at once.
     """
 
     def __init__(self, command: str, about: str) -> None:
@@ -38,6 +38,7 @@ class Parser(argparse.ArgumentParser):
             formatter_class=lambda prog: argparse.RawDescriptionHelpFormatter(prog, width=HELP_WIDTH),
         )
         self._fields: list[Field] = []
+        self._repeatable: set[str] = set()
         # in a group of its own: an argument added to the parser itself loads what only --help needs
         self._given = self.add_argument_group("given")
         everywhere = self.add_argument_group("output")
@@ -50,6 +51,10 @@ class Parser(argparse.ArgumentParser):
     def positional(self, name: str, metavar: str, about: str, *, optional: bool = False) -> None:
         """Add an argument that is known by its place."""
         self._given.add_argument(name, metavar=metavar, help=about, nargs="?" if optional else None)
+
+    def repeatable(self, group: argparse._ArgumentGroup, option: str, metavar: str, about: str) -> None:
+        """Add an option that may be given more than once; its value is a tuple of texts, in their order."""
+        self._repeatable.add(group.add_argument(option, metavar=metavar, help=about, default=()).dest)
 
     def add_fields(self, title: str, fields: Sequence[Field]) -> argparse._ArgumentGroup:
         """Add one option for each field; its text is read later, so that all errors come at once."""
@@ -98,10 +103,11 @@ class Parser(argparse.ArgumentParser):
             else:
                 if value is None:
                     problems.append(f"{name}: wants a value")
-                if name in seen:
+                many = action.dest in self._repeatable
+                if name in seen and not many:
                     problems.append(f"{name} is given twice")
                 seen.add(name)
-                setattr(found, action.dest, value)
+                setattr(found, action.dest, (*getattr(found, action.dest), value) if many else value)
         wanted = []
         for action in self._actions:
             if not action.option_strings:

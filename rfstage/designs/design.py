@@ -245,8 +245,25 @@ def with_settled(made: Design, state: SteadyState | None = None) -> Design:
     )
 
 
-def with_heat(made: Design, progress: Callable[[int, int], None] | None = None) -> Design:
-    """Return a design with the heat of its stage in four conditions; ``progress`` as in `heat_of`.
+def with_heat(
+    made: Design,
+    *,
+    stage: Stage | None = None,
+    state: SteadyState | None = None,
+    progress: Callable[[int, int], None] | None = None,
+) -> Design:
+    """Return a design with the heat of its stage in four conditions.
+
+    Parameters
+    ----------
+    made : Design
+        Any design.
+    stage : Stage or None
+        The stage with its real parts, to be heated instead.
+    state : SteadyState or None
+        The steady state of that stage, if known already; else the design's own is taken, or it is settled.
+    progress : callable or None
+        Called with the number of mismatched points done and of all, now and then.
 
     Raises
     ------
@@ -257,7 +274,9 @@ def with_heat(made: Design, progress: Callable[[int, int], None] | None = None) 
     from rfstage.safetyfields import HEAT
 
     values = {field.name: getattr(made.job, field.name) for field in HEAT}
-    heat = heat_of(made.stage, values, state=made.settled, progress=progress)
+    if stage is None:
+        stage, state = made.stage, state or made.settled
+    heat = heat_of(stage, values, state=state, progress=progress)
     return replace(made, heat=heat, assumed={**made.assumed, **heat.assumed})
 
 

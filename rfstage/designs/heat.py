@@ -73,9 +73,9 @@ class Heat(NamedTuple):
 
     ``conditions`` are normal, detuned, mismatched and undriven, ``worst`` the hottest of them. ``sink`` [K/W] is the
     one fitted, else the one that the worst needs, or None. With it the hotter device stands ``most`` [W], which falls
-    by ``per_kelvin`` [W/K] of ambient above the one given; ``rating`` [W] is the device's, ``derated_rating`` [W] what
-    is left of it at the case's temperature in the worst condition. ``missing`` says what isn't known; ``assumed`` holds
-    the defaults by key.
+    by ``per_kelvin`` [W/K] of ambient above the one given. ``rating`` [W] is the device's, ``derated_rating`` [W] what
+    is left of it at the case's temperature in the worst condition, and ``sink_for_rating`` [K/W] the sink that keeps
+    within it, None where none does. ``missing`` says what isn't known; ``assumed`` holds the defaults by key.
     """
 
     family: str
@@ -87,6 +87,7 @@ class Heat(NamedTuple):
     per_kelvin: float | None
     rating: float | None
     derated_rating: float | None
+    sink_for_rating: float | None
     missing: str
     assumed: dict[str, object]
 
@@ -157,7 +158,7 @@ def heat_of(
     rows = [_heated(condition, found.undriven, cooling, device.max_dissipation) for condition in found]
     worst = max((row for row in rows if row.mean is not None), key=lambda row: row.mean or 0.0, default=None)
     path = None if worst is None else _path(worst, cooling)
-    sink = most = per_kelvin = derated_rating = None
+    sink = most = per_kelvin = derated_rating = sink_for_rating = None
     if path is not None and worst is not None:
         sink = cooling.sink_to_ambient if cooling.sink_to_ambient is not None else worst.sink_needed
         most = largest_dissipation(path, junction_limit=cooling.junction_limit, ambient=cooling.ambient)
@@ -165,12 +166,11 @@ def heat_of(
         rows = [_warmed(row, cooling, sink) for row in rows]
         worst = next(row for row in rows if row.condition is worst.condition)
         if device.max_dissipation is not None and worst.case is not None and cooling.junction_limit > RATED_AT:
+            implied = _implied(device.max_dissipation, cooling)
             derated_rating = derated(
-                device.max_dissipation,
-                at=RATED_AT,
-                per_kelvin=1 / _implied(device.max_dissipation, cooling),
-                temperature=worst.case,
+                device.max_dissipation, at=RATED_AT, per_kelvin=1 / implied, temperature=worst.case
             )
+            sink_for_rating, _ = _sink_for(worst.mean, worst.stage_mean, cooling, implied)
     return Heat(
         family=device.family,
         cooling=cooling,
@@ -181,6 +181,7 @@ def heat_of(
         per_kelvin=per_kelvin,
         rating=device.max_dissipation,
         derated_rating=derated_rating,
+        sink_for_rating=sink_for_rating,
         missing=_missing(device.family, device.max_dissipation, cooling),
         assumed=assumed,
     )
@@ -191,23 +192,29 @@ def _heated(condition: Condition, undriven: Condition, cooling: Cooling, rating:
     mean = _mean(condition.device_dissipation, undriven.device_dissipation, cooling.duty)
     stage_mean = _mean(condition.dissipation, undriven.dissipation, cooling.duty)
     use = None if mean is None or rating is None else rating_use(mean, rating=rating)
-    needed, reason = None, ""
-    if mean is not None and stage_mean is not None and cooling.junction_to_case is not None:
-        if mean > 0:
-            try:
-                # both devices of a pair warm the one sink
-                needed = (mean / stage_mean) * sink_for(
-                    mean,
-                    junction_limit=cooling.junction_limit,
-                    ambient=cooling.ambient,
-                    junction_to_case=cooling.junction_to_case,
-                    case_to_sink=cooling.case_to_sink,
-                )
-            except ImpossibleError as error:
-                reason = str(error)
-        else:
-            reason = "nothing to carry away"
+    needed, reason = _sink_for(mean, stage_mean, cooling, cooling.junction_to_case)
     return Heated(condition, mean, stage_mean, needed, reason, None, None, use)
+
+
+def _sink_for(
+    mean: float | None, stage_mean: float | None, cooling: Cooling, junction_to_case: float | None
+) -> tuple[float | None, str]:
+    """Return the most from sink to ambient [K/W], or None and why; both devices of a pair warm the one sink."""
+    if mean is None or stage_mean is None or junction_to_case is None:
+        return None, ""
+    if mean == 0:
+        return None, "nothing to carry away"
+    try:
+        alone = sink_for(
+            mean,
+            junction_limit=cooling.junction_limit,
+            ambient=cooling.ambient,
+            junction_to_case=junction_to_case,
+            case_to_sink=cooling.case_to_sink,
+        )
+    except ImpossibleError as error:
+        return None, str(error)
+    return mean / stage_mean * alone, ""
 
 
 def _mean(keyed: float | None, resting: float | None, duty: float) -> float | None:

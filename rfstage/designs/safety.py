@@ -101,9 +101,21 @@ def safety_cautions(
     return found
 
 
-def fault_cautions(state: SteadyState, station: Station | None = None) -> list[Caution]:
-    """Return what is wrong with choke and blocking capacitor of a settled stage."""
-    return [*choke_cautions(state, station or Station()), *_blocking(state)]
+def settled_safety(state: SteadyState, station: Station | None = None) -> list[Caution]:
+    """Return what is wrong with choke and blocking capacitor of a settled stage, and what can hurt someone in it."""
+    station = station or Station()
+    return [
+        *choke_cautions(state, station),
+        *resonance_cautions(state),
+        *_blocking(state),
+        *safety_cautions(
+            state.stage,
+            dc_current=state.dc_current,
+            exposed=exposed_when_settled(state),
+            power=state.output_power,
+            station=station,
+        ),
+    ]
 
 
 def choke_cautions(state: SteadyState, station: Station) -> list[Caution]:
@@ -212,7 +224,7 @@ def _reservoir(capacitance: float, resistance: float | None, voltage: float) -> 
     found = asked if resistance is None else bleeder(resistance, capacitance=capacitance, voltage=voltage)
     assert found is not None
     rated = (
-        f"that stands {show(found.power_to_stand, 'W')} in all, of several resistors"
+        f"made of resistors that stand {show(found.power_to_stand, 'W')} together"
         if found.power_rating is None
         else f"rated {show(found.power_rating, 'W')} or more"
     )
@@ -241,7 +253,9 @@ def _exposure(carrier: float, power: float, gain: float) -> Caution:
         for population in ("general", "occupational")
     )
     sent = f"{show(power, 'W')} into an antenna of {gain:.3g} dBi".replace("-", "−")
-    if general.distance is None:  # the occupational limit would be nearer still
+    if general.limit is None:
+        words = f"no distance for {sent}: {general.reason}"
+    elif general.distance is None:  # the occupational limit would be nearer still
         words = f"no distance is given by the general limit of {SOURCE} for {sent}: {general.reason}"
     else:
         near = f"that of the occupational limit lies inside λ/2π = {show(general.near_field, 'm')}"

@@ -21,6 +21,7 @@ def parts_record(fitting: Fitting) -> dict[str, Any]:
                 "total_f": b.total,
                 "wanted_f": b.wanted,
                 "lead_inductance_h": b.lead,
+                "spare_percent": None if b.trimmer is None else b.spare,
                 "stresses": [
                     {
                         "value_f": s.value,
@@ -50,6 +51,9 @@ def parts_record(fitting: Fitting) -> dict[str, Any]:
                 "self_capacitance_f": w.coil.self_capacitance,
                 "self_resonance_hz": w.coil.self_resonance,
                 "unloaded_q": w.coil.unloaded_q,
+                "rms_current_a": w.current,
+                "loss_w": w.loss,
+                "tap_turns": w.tap,
                 "note": w.note or None,
             }
             for w in fitting.wound

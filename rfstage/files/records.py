@@ -19,6 +19,8 @@ from rfstage.operating import Rating
 from rfstage.stagevalues import has_one_value
 
 if TYPE_CHECKING:
+    from rfstage.cautions import Caution
+    from rfstage.designs.heat import Heat
     from rfstage.designs.ranking import Ranking
     from rfstage.filters.choose import Filter
     from rfstage.steady import SteadyState
@@ -96,12 +98,19 @@ def design_record(design: Design, files: Sequence[str]) -> dict[str, Any]:
             for h in design.harmonics
         ],
         "settled": None if design.settled is None else settled_record(design.settled),
+        "heat": None if design.heat is None else _heat_record(design.heat),
         "filter": None if design.filter is None else _filter_record(design.filter, design.filter_terminations),
         "ranking": None if design.ranking is None else _ranking_record(design.ranking),
         "parts": None,
-        "cautions": [{"topic": c.topic, "text": c.text} for c in design.cautions],
+        "cautions": _cautions(design.cautions),
         "files": list(files),
     }
+
+
+def _heat_record(heat: Heat) -> dict[str, Any]:
+    from rfstage.files.heatrecord import heat_record
+
+    return heat_record(heat)
 
 
 def _filter_record(made: Filter, terminations: Sequence[tuple[int, complex]]) -> dict[str, Any]:
@@ -212,8 +221,14 @@ def pulse_record(
     }
 
 
-def settle_record(state: SteadyState, verdicts: Sequence[Verdict]) -> dict[str, Any]:
-    """Return a steady state as ``rfstage.settle``, version 1, with its limit's verdicts and its ratings."""
+def _cautions(cautions: Sequence[Caution]) -> list[dict[str, str]]:
+    return [{"topic": c.topic, "text": c.text} for c in cautions]
+
+
+def settle_record(
+    state: SteadyState, verdicts: Sequence[Verdict], cautions: Sequence[Caution] = (), heat: Heat | None = None
+) -> dict[str, Any]:
+    """Return a steady state as ``rfstage.settle``, version 1, with all that was found about it."""
     return {
         "format": "rfstage.settle",
         "version": VERSION,
@@ -223,6 +238,8 @@ def settle_record(state: SteadyState, verdicts: Sequence[Verdict]) -> dict[str, 
             for v in verdicts
         ],
         "ratings": [_rating(r) for r in ratings_of(state)],
+        "heat": None if heat is None else _heat_record(heat),
+        "cautions": _cautions(cautions),
     }
 
 

@@ -23,6 +23,7 @@ from rfstage.ladder import Ladder
 from rfstage.load import MeasuredLoad
 from rfstage.quantity import exact_complex, exact_text
 from rfstage.stagevalues import described, losses_described
+from rfstage.verify.scattering import two_port
 
 PORT_RESISTANCE = 50.0  # ohm
 _UNITS = ("hz", "khz", "mhz", "ghz")
@@ -161,18 +162,6 @@ def grid(carrier: float, highest_order: int) -> NDArray[np.float64]:
     return np.unique(np.concatenate([others[apart], exact]))
 
 
-def two_port(ladder: Ladder, frequencies: NDArray[np.float64]) -> NDArray[np.complex128]:
-    """Return S-parameters, shape (frequencies, 2, 2), against 50 Ω at both ports; port 1 at the device."""
-    a, b, c, d = ladder.chain(frequencies)
-    r = PORT_RESISTANCE
-    total = a + b / r + c * r + d
-    s = np.empty((frequencies.size, 2, 2), dtype=np.complex128)
-    s[:, 0, 0] = (a + b / r - c * r - d) / total
-    s[:, 0, 1] = s[:, 1, 0] = 2 / total
-    s[:, 1, 1] = (-a + b / r - c * r + d) / total
-    return s
-
-
 def touchstone_text(design: Design) -> str:
     """Return the Touchstone text of a design's two-port, from device node to load, with its comments.
 
@@ -181,7 +170,7 @@ def touchstone_text(design: Design) -> str:
     """
     branches = [branch for branch in design.stage.ladder.branches if branch.origin != "device"]
     frequencies = grid(design.job.carrier, design.settings.highest_order)
-    s = two_port(Ladder(branches), frequencies)
+    s = two_port(Ladder(branches), frequencies, PORT_RESISTANCE)
     if not np.all(np.isfinite(s)):
         raise FileError("the two-port is not finite at every frequency; nothing to export")
     return _network_text(frequencies, s, _comments(design))

@@ -21,12 +21,13 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import NamedTuple
 
+from rfstage.constants import JUNCTION_LIMIT
 from rfstage.errors import ImpossibleError
 from rfstage.parts.ranges import need
 
 COLDEST = -273.15  # °C
 # °C, of silicon: as in the worked examples of Boylestad & Nashelsky (200) and Sedra & Smith (150)
-JUNCTION_LIMITS = {"metal can": 200.0, "plastic": 150.0}
+JUNCTION_LIMITS = {"metal can": 200.0, "plastic": JUNCTION_LIMIT}
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -6,7 +6,7 @@ from collections.abc import Sequence
 
 from rich.text import Text
 
-from rfstage.cautions import Caution
+from rfstage.cautions import FAILED_BLOCKING, Caution
 from rfstage.designs.carriers import PHASES, VSWRS, Matched, Tuned
 from rfstage.quantity import exact_text, show, show_complex
 from rfstage.report.circuit import FAMILY, circuit
@@ -168,12 +168,23 @@ def _mark(load: Matched) -> Cell:
     return Cell(_MARKS[place], ("green", "yellow", "bold red")[place], right=True)
 
 
+def _for_all_carriers(tuned: Sequence[Tuned]) -> Caution:
+    """Return the caution of a failed blocking capacitor that asks for the largest choke across the output."""
+    from rfstage.designs.choke import safety_choke
+
+    largest = max(tuned, key=lambda t: safety_choke(t.design.stage).least_inductance or 0.0)
+    return next(caution for caution in largest.design.cautions if caution.topic == FAILED_BLOCKING)
+
+
 def _cautions(tuned: Sequence[Tuned]) -> list[Caution]:
     """Return the cautions of all carriers, each once, with its carrier where it is one's own."""
     found: dict[Caution, list[float]] = {}
     for t in tuned:
         for caution in t.design.cautions:
-            found.setdefault(caution, []).append(t.design.job.carrier)
+            if caution.topic == FAILED_BLOCKING:  # one choke across the output, the largest of all, serves them
+                found[_for_all_carriers(tuned)] = [u.design.job.carrier for u in tuned]
+            else:
+                found.setdefault(caution, []).append(t.design.job.carrier)
     return [
         c if len(at) == len(tuned) else Caution(f"{c.topic}, {', '.join(show(f, 'Hz', 5) for f in at)}", c.text)
         for c, at in found.items()

@@ -33,6 +33,7 @@ def summary(design: Design, look: Look, fitting: Fitting | None = None) -> list[
         *_harmonics(design, look),
         *_compared_networks(design, look),
         *_parts(fitting, look),
+        *_heat(design, look, "Heat" if fitting is None else "Heat with these parts"),
         *_assumed(design, look),
         *caution_lines(look, design.cautions),
     ]
@@ -62,6 +63,14 @@ def _compared_networks(design: Design, look: Look) -> list[Text]:
     from rfstage.report.ranking import ranking_lines
 
     return ranking_lines(design.ranking, look)
+
+
+def _heat(design: Design, look: Look, title: str) -> list[Text]:
+    if design.heat is None:
+        return []
+    from rfstage.report.heat import heat_lines
+
+    return heat_lines(design.heat, look, title)
 
 
 def _circuit(design: Design, look: Look) -> list[Text]:
@@ -314,6 +323,10 @@ def _assumed_value(key: str, value: object, exponent: float) -> str:
         "device.knee_resistance": "ohm",
         "device.reverse_conduction": "S",
         "device.transfer_factor": "A/V",
+        "heat.ambient": "degC",
+        "heat.junction_limit": "degC",
+        "heat.case_to_sink": "K/W",
+        "heat.duty": "%",
     }.get(key)
     if unit == "A/V":
         return f"{value:.4g} A/V" + ("" if exponent == 1 else f"^{exponent:g}")

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import TYPE_CHECKING
 
 from rich.text import Text
 
@@ -11,10 +12,10 @@ from rfstage.designs.judging import (
     Verdict,
     load_file_cautions,
     ratings_of,
-    safety_cautions,
     settled_cautions,
     worst,
 )
+from rfstage.designs.safety import Station, settled_safety
 from rfstage.device import PARALLEL, PUSH_PULL
 from rfstage.limits import limit_named
 from rfstage.matching.tank import PartStress
@@ -24,6 +25,9 @@ from rfstage.report.judged import caution_lines, rating_lines, signed, verdict_l
 from rfstage.report.page import Cell, Look, columns, heading, note, pairs
 from rfstage.steady import SteadyState
 from rfstage.steady.pair import shared_node
+
+if TYPE_CHECKING:
+    from rfstage.designs.heat import Heat
 
 BETWEEN = (
     "Branches and load stand between the two outputs, and their volts are from one side to the other. Output "
@@ -35,8 +39,15 @@ LEFT_OUT = (
 )
 
 
-def settled_page(state: SteadyState, look: Look, verdicts: Sequence[Verdict]) -> list[Text]:
-    """Return the page of an as-built stage, with the verdicts on its limit."""
+def settled_page(
+    state: SteadyState,
+    look: Look,
+    verdicts: Sequence[Verdict],
+    *,
+    station: Station | None = None,
+    heat: Heat | None = None,
+) -> list[Text]:
+    """Return the page of an as-built stage: verdicts on its limit, heat where asked, cautions for what is around it."""
     stage = state.stage
     electrode = ELECTRODE[stage.device.family]
     pair = stage.device.pair
@@ -67,10 +78,11 @@ def settled_page(state: SteadyState, look: Look, verdicts: Sequence[Verdict]) ->
     if pair == PUSH_PULL:
         lines += note(look, BETWEEN, style="dim")
     lines += heading(look, "Harmonics") + _harmonics(state, look, verdicts) + _limit(state, look, verdicts)
-    lines += _trust(state, look)
-    highest = max((b.peak_voltage for b in state.branches), default=0.0)
-    safe = safety_cautions(stage, dc_current=state.dc_current, highest_rf=highest, power=state.output_power)
-    return lines + caution_lines(look, safe)
+    if heat is not None:
+        from rfstage.report.heat import heat_lines
+
+        lines += heat_lines(heat, look)
+    return lines + _trust(state, look) + caution_lines(look, settled_safety(state, station))
 
 
 def meters(state: SteadyState) -> list[tuple[str, str]]:
