@@ -14,7 +14,7 @@ from rfstage.designs.design import with_settled
 from rfstage.errors import ConvergenceError, ImpossibleError
 from rfstage.steady import settle
 
-JOB = Job(carrier=7.1e6, power=10.0, conduction_angle=120.0, supply=13.8)
+JOB = Job(network="pi", carrier=7.1e6, power=10.0, conduction_angle=120.0, supply=13.8)
 
 
 def random_pi_jobs(count, seed=20):
@@ -30,6 +30,7 @@ def random_pi_jobs(count, seed=20):
             continue
         count -= 1
         yield Job(
+            network="pi",
             carrier=carrier,
             power=power,
             conduction_angle=float(rng.uniform(90, 180)),
@@ -138,6 +139,7 @@ def test_a_textbook_design_without_a_steady_state_says_so(monkeypatch):
 
 
 TRIODE = Job(
+    network="pi",
     carrier=3.6e6,
     power=300.0,
     conduction_angle=140.0,

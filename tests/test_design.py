@@ -17,11 +17,13 @@ from rfstage.errors import ImpossibleError, InputError, RfstageError
 from rfstage.job import Job
 from rfstage.ladder import Branch
 from rfstage.load import MeasuredLoad
+from rfstage.tankfields import NETWORKS
 
 LOSSLESS = math.inf
-BASE = {"carrier": 7.1e6, "power": 10.0, "conduction_angle": 120.0, "supply": 13.8}
-TUBE = {"carrier": 3.6e6, "power": 400.0, "conduction_angle": 130.0, "supply": 2500.0, "family": "tube"}
-FET = {"carrier": 28.5e6, "power": 100.0, "conduction_angle": 180.0, "supply": 50.0, "family": "fet"}
+# pi throughout: what the ranked default makes of a job has its own tests
+BASE = {"network": "pi", "carrier": 7.1e6, "power": 10.0, "conduction_angle": 120.0, "supply": 13.8}
+TUBE = {**BASE, "carrier": 3.6e6, "power": 400.0, "conduction_angle": 130.0, "supply": 2500.0, "family": "tube"}
+FET = {**BASE, "carrier": 28.5e6, "power": 100.0, "conduction_angle": 180.0, "supply": 50.0, "family": "fet"}
 
 
 def designed(**job: object) -> Design:
@@ -56,7 +58,7 @@ def numbers_in(thing: object, path: str = "") -> Iterator[tuple[str, complex]]:
             yield from numbers_in(value, f"{path}[{index}]")
 
 
-MAY_BE_INFINITE = ("coil_q", "capacitor_q", "choke_q")
+MAY_BE_INFINITE = ("coil_q", "capacitor_q", "choke_q", "return_loss_db", ".filter.margins")
 
 
 def broken_invariants(d: Design) -> list[str]:
@@ -116,6 +118,7 @@ def test_lossless_stage_has_the_benchmark_operating_point(
     supply, lowest, half, power, i1, peak, dc, resistance, dc_power, percent, volts
 ):
     p = designed(
+        network="pi",
         carrier=3.5e6,
         power=power,
         conduction_angle=2 * half,
@@ -141,6 +144,7 @@ def test_lossless_stage_with_a_huge_choke_has_the_tabled_pi():
     # SOURCE: the row 4000/50/12 of the recomputed pi table at 3.5 MHz: 136.4 pF, 16.184 uH, 819.8 pF. A supply of
     # 1000 V down to 105.573 V (swing 894.427 V) at 100 W asks for exactly 4000 ohm.
     d = designed(
+        network="pi",
         carrier=3.5e6,
         power=100.0,
         conduction_angle=120.0,
@@ -359,7 +363,7 @@ def test_two_qs_at_once_are_refused():
 
 def test_unknown_network_is_refused_with_the_known_ones():
     with pytest.raises(InputError, match=r"tank\.network: got 'pie'; allowed l \| l-high-pass \| pi"):
-        Job(**BASE, network="pie")
+        Job(**{**BASE, "network": "pie"})
 
 
 def test_loaded_q_below_what_the_ratio_needs_is_refused_with_one_that_works():
@@ -402,10 +406,10 @@ sane = st.fixed_dictionaries(
         "power": decades(0.01, 2000),
         "conduction_angle": st.floats(20, 360),
         "supply": decades(3, 4000),
+        "network": st.sampled_from(NETWORKS),
     },
     optional={
         "family": st.sampled_from(["bipolar", "fet", "tube"]),
-        "network": st.sampled_from(["l", "l-high-pass", "pi"]),
         "load": st.builds(complex, decades(5, 1000), st.floats(-200, 200)),
         "loaded_q": st.floats(1, 40),
         "coil_q": qs,
@@ -418,6 +422,7 @@ sane = st.fixed_dictionaries(
         "transfer_factor": decades(1e-3, 100),
         "harmonics": st.integers(2, 30),
         "limit": st.sampled_from(["us-amateur", "43+10log", "60dB", "25uW"]),
+        "transformer": decades(0.2, 5),
     },
 )
 
@@ -428,6 +433,7 @@ absurd = st.fixed_dictionaries(
         "power": st.one_of(decades(1e-12, 1e7), any_size),
         "conduction_angle": st.one_of(decades(1e-9, 360), any_size),
         "supply": st.one_of(decades(1e-9, 1e6), any_size),
+        "network": st.sampled_from([*NETWORKS, "x"]),
     },
     optional={
         "minimum_voltage": any_size,
@@ -444,7 +450,10 @@ absurd = st.fixed_dictionaries(
         "bias": any_size,
         "grid_current": any_size,
         "load": st.builds(complex, any_size, any_size),
-        "network": st.sampled_from(["l", "l-high-pass", "pi", "t"]),
+        "middle_resistance": any_size,
+        "coupling": any_size,
+        "tap": any_size,
+        "transformer": any_size,
         "loaded_q": any_size,
         "input_q": any_size,
         "coil_q": any_size,
@@ -459,7 +468,8 @@ absurd = st.fixed_dictionaries(
 )
 
 
-@settings(max_examples=1500, deadline=None, suppress_health_check=list(HealthCheck))
+# each job below 4 ohm also has its ways out tried, some designs more
+@settings(max_examples=500, deadline=None, suppress_health_check=list(HealthCheck))
 @given(job=sane)
 def test_any_sane_job_ends_in_a_sound_design_or_in_an_error_for_people(job):
     try:

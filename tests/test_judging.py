@@ -15,7 +15,7 @@ from rfstage.ladder import Branch
 from rfstage.limits import limit_named
 from rfstage.steady import settle
 
-JOB = Job(carrier=7.1e6, power=10.0, conduction_angle=120.0, supply=28.0)
+JOB = Job(network="pi", carrier=7.1e6, power=10.0, conduction_angle=120.0, supply=28.0)
 
 
 @pytest.fixture(scope="module")
@@ -126,7 +126,8 @@ def test_everything_that_stands_in_for_the_device_is_listed_as_assumed():
 
 def test_a_dip_s_caution_knows_the_network_and_the_correction():
     assert about_dip(0.02, network="pi", corrected=False) == []
-    assert "higher input-side Q" in about_dip(0.05, network="pi", corrected=False)[0].text
+    for network in ("pi", "pi-l", "tapped-coil", "link"):
+        assert "a higher Q shorts them" in about_dip(0.05, network=network, corrected=False)[0].text
     assert "makes up for it" in about_dip(0.05, network="pi", corrected=True)[0].text
     assert "do not hold; network pi" in about_dip(0.5, network="l", corrected=False)[0].text
 

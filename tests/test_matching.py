@@ -17,10 +17,10 @@ from rfstage.load import SeriesLoad
 from rfstage.matching.exact import behind, with_losses
 from rfstage.matching.l import l_network
 from rfstage.matching.networks import solve_network
-from rfstage.matching.tank import describe, tank_efficiency
-from rfstage.matching.task import Request
 from rfstage.matching.pi import least_loaded_q, pi_network, virtual_resistance
 from rfstage.matching.quality import bandwidth, loaded_q, strongest_resonance_below
+from rfstage.matching.tank import describe, tank_efficiency
+from rfstage.matching.task import Request
 
 LOSSLESS = math.inf
 

@@ -12,7 +12,7 @@ import pytest
 from rfstage import Job, design, load_job, load_stage
 from rfstage.device import JunctionCapacitance
 from rfstage.errors import InputError, OutOfRangeError
-from rfstage.files.records import sweep_record, sweep_table
+from rfstage.files.sweeprecord import sweep_record, sweep_table
 from rfstage.stagevalues import fitted_value, paths, with_value
 from rfstage.steady import settle
 from rfstage.sweep import mismatched, modulation, sweep
@@ -85,7 +85,8 @@ def test_drive_below_the_threshold_is_a_clean_no_output(tower):
 def test_the_supply_power_of_class_a_stays_and_that_of_class_b_falls_with_the_signal(angle, stays):
     # SOURCE: textbook law of the classes: a class-A device draws its bias current whatever the signal,
     # a class-B device in proportion to it (common practice, no source)
-    stage = design(Job(carrier=7.1e6, power=10.0, conduction_angle=angle, supply=28.0, family="fet")).stage
+    job = Job(network="pi", carrier=7.1e6, power=10.0, conduction_angle=angle, supply=28.0, family="fet")
+    stage = design(job).stage
     full = stage.drive.amplitude
     half, whole = sweep(stage, "drive.amplitude", [full / 2, full]).points
     ratio = half.dc_power / whole.dc_power

@@ -78,12 +78,12 @@ def run(words: Sequence[str]) -> int:
     _check_ends(path, now, {name: (field, text, values[name]) for name, (field, text) in ends.items()})
     swept = sweep(stage, path, list(np.linspace(values["first"], values["last"], values["points"])), progress())
     if wanted:
-        from rfstage.files.records import sweep_table
+        from rfstage.files.sweeprecord import sweep_table
 
         write_files([(wanted[0], sweep_table(swept))], overwrite=found.overwrite, inputs=inputs)
 
     def record() -> dict[str, Any]:
-        from rfstage.files.records import sweep_record
+        from rfstage.files.sweeprecord import sweep_record
 
         return sweep_record(swept)
 

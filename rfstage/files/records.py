@@ -24,7 +24,6 @@ if TYPE_CHECKING:
     from rfstage.designs.ranking import Ranking
     from rfstage.filters.choose import Filter
     from rfstage.steady import SteadyState
-    from rfstage.sweep import Extreme, Sweep
 
 VERSION = 1
 _SUFFIX = {"F": "_f", "H": "_h", "ohm": "_ohm", "": ""}
@@ -251,7 +250,7 @@ def settled_record(state: SteadyState) -> dict[str, Any]:
     """Return a steady state, with its waveform."""
     change = state.change_from_half_the_orders
     return {
-        **_meters(state),
+        **meters(state),
         "dc_power_w": state.dc_power,
         "devices": [
             {
@@ -291,7 +290,8 @@ def settled_record(state: SteadyState) -> dict[str, Any]:
     }
 
 
-def _meters(state: SteadyState) -> dict[str, Any]:
+def meters(state: SteadyState) -> dict[str, Any]:
+    """Return what the meters of a settled stage read."""
     return {
         "dc_current_a": state.dc_current,
         "output_power_w": state.output_power,
@@ -302,55 +302,3 @@ def _meters(state: SteadyState) -> dict[str, Any]:
         "peak_current_a": state.peak_current,
         "conduction_angle_deg": state.conduction_angle_deg,
     }
-
-
-def sweep_record(swept: Sweep) -> dict[str, Any]:
-    """Return a sweep as ``rfstage.sweep``, version 1; a turning point is its value or null.
-
-    For a sweep of the load each point is the hottest of its circle, with the worst of the circle beside it.
-    """
-    points = []
-    for k, state in enumerate(swept.points):
-        point = {
-            **_meters(state),
-            "dc_power_w": state.dc_power,
-            "harmonics_dbc": [[h.order, h.level] for h in state.harmonics],
-        }
-        if swept.circles:
-            circle = swept.circles[k]
-            point["circle"] = {
-                "dissipation_w": circle.dissipation,
-                "dissipation_phase_deg": circle.dissipation_phase,
-                "peak_voltage_v": circle.peak_voltage,
-                "peak_voltage_phase_deg": circle.peak_voltage_phase,
-                "least_output_w": circle.least_output,
-                "greatest_output_w": circle.greatest_output,
-            }
-        points.append(point)
-    return {
-        "format": "rfstage.sweep",
-        "version": VERSION,
-        "path": swept.path,
-        "unit": swept.unit,
-        "values": list(swept.values),
-        "points": points,
-        "dip": _turning(swept.dip),
-        "efficiency_peak": _turning(swept.efficiency_peak),
-        "output_peak": _turning(swept.output_peak),
-    }
-
-
-def _turning(extreme: Extreme | None) -> float | None:
-    return None if extreme is None else extreme.value
-
-
-def sweep_table(swept: Sweep) -> str:
-    """Return a sweep as CSV: a line of names with units, a line a point."""
-    unit = f"_{swept.unit}" if swept.unit else ""
-    names = [f"{swept.path}{unit}", *_meters(swept.points[0]), "dc_power_w"]
-    names += [f"harmonic_{h.order}_dbc" for h in swept.points[0].harmonics[:9]]
-    lines = [",".join(names)]
-    for value, state in zip(swept.values, swept.points, strict=True):
-        row = [value, *_meters(state).values(), state.dc_power, *(h.level for h in state.harmonics[:9])]
-        lines.append(",".join("" if cell is None else repr(float(cell)) for cell in row))
-    return "\n".join(lines) + "\n"

@@ -13,7 +13,8 @@ from rfstage.parts.stress import Burden, PartStress, stresses
 
 NEAR_ENOUGH = 2.0  # %: one part serves, where it is so near; else two side by side
 # % around the wanted value that a trimmer should reach, for the parts' tolerances; less where no trimmer reaches more
-TRIM = (10.0, 7.0, 5.0)
+TRIM = (10.0, 7.0, 5.0, 2.0, 1.0)
+TIGHT = 5.0  # %, the tolerance of usual parts: where less is left to either side, the fixed ones are to be measured
 FIXED, TRIMMED, BLOCKING = "fixed", "trimmed", "blocking"
 
 
@@ -42,13 +43,30 @@ class Bought(NamedTuple):
             return None
         return sum(self.values) + self.trimmer.least, sum(self.values) + self.trimmer.most
 
+    @property
+    def spare(self) -> float:
+        """How far the whole can be set to either side of its setting [%]: nothing without a trimmer."""
+        low, high = self.reach or (self.total, self.total)
+        return 100 * min(self.total - low, high - self.total) / self.total
+
     def retrimmed(self, total: float) -> Bought:
         """Return the same with its trimmer set so that all together are ``total`` [F]."""
         return self._replace(setting=total - sum(self.values), total=total)
 
+    def bearing(self, burden: Burden, q: float | None, asked: PartsRequest) -> Bought:
+        """Return the same under a burden that was found for these parts as they are set."""
+        return self._replace(stresses=_stresses(self.values, self.trimmer, burden, self.total, q, asked))
+
 
 def choose_capacitor(
-    name: str, wanted: float, role: str, burden: Burden, q: float | None, asked: PartsRequest
+    name: str,
+    wanted: float,
+    role: str,
+    burden: Burden,
+    q: float | None,
+    asked: PartsRequest,
+    *,
+    total: float | None = None,
 ) -> Bought:
     """Return the capacitors for a wanted capacitance [F] at the carrier, its leads counted.
 
@@ -66,6 +84,8 @@ def choose_capacitor(
         Of the parts [-].
     asked : PartsRequest
         Series, margins, leads.
+    total : float or None
+        What the parts are to be together [F], leads not counted, where that is known already.
 
     Raises
     ------
@@ -75,11 +95,9 @@ def choose_capacitor(
     values: tuple[float, ...] = ()
     trimmer, setting = None, None
     for count in (1, 2, 3):  # parts side by side share their leads; how many there are is known only afterwards
-        nominal = (
-            wanted
-            if role == BLOCKING
-            else nominal_capacitance(wanted, frequency=burden.carrier, lead_inductance=asked.lead / count)
-        )
+        nominal = wanted if total is None else total
+        if role != BLOCKING and total is None:
+            nominal = nominal_capacitance(wanted, frequency=burden.carrier, lead_inductance=asked.lead / count)
         if role == BLOCKING:
             values = (preferred_range(wanted * (1 - 1e-9), 2 * wanted, series="E6")[0],)
         elif role == TRIMMED:
@@ -90,7 +108,6 @@ def choose_capacitor(
         if len(values) + (trimmer is not None) <= count:
             break
     parts = len(values) + (trimmer is not None)
-    highest = (*values, trimmer.most) if trimmer is not None else values
     return Bought(
         name=name,
         role=role,
@@ -100,8 +117,20 @@ def choose_capacitor(
         total=sum(values) + (setting or 0.0),
         lead=asked.lead / parts,
         wanted=wanted,
-        stresses=stresses(highest, burden, holds_for=nominal, q=q, margins=asked.margins, lead_inductance=asked.lead),
+        stresses=_stresses(values, trimmer, burden, nominal, q, asked),
     )
+
+
+def _stresses(
+    values: tuple[float, ...],
+    trimmer: TrimmerRange | None,
+    burden: Burden,
+    holds_for: float,
+    q: float | None,
+    asked: PartsRequest,
+) -> tuple[PartStress, ...]:
+    highest = (*values, trimmer.most) if trimmer is not None else values
+    return stresses(highest, burden, holds_for=holds_for, q=q, margins=asked.margins, lead_inductance=asked.lead)
 
 
 def _trimmer(wanted: float, series: str) -> FixedAndTrimmer:

@@ -8,17 +8,15 @@ from dataclasses import replace
 from typing import NamedTuple
 
 from rfstage.designs.design import Design
-from rfstage.errors import ImpossibleError, RfstageError
+from rfstage.errors import RfstageError
 from rfstage.fitting.capacitors import BLOCKING, FIXED, TRIMMED, Bought, choose_capacitor
-from rfstage.fitting.coils import Winding, choose_coil, flaw, tap_for
+from rfstage.fitting.coils import Winding, choose_coil, tap_for, tapped
 from rfstage.fitting.request import PartsRequest
 from rfstage.kinds import THROUGH
 from rfstage.ladder import Branch
-from rfstage.matching.exact import with_losses
 from rfstage.parts.stress import Burden
 from rfstage.stage import BLOCKING as BLOCKER
-
-COUPLING_OFF = 0.03  # from the designed coupling: what a made coil may be off before it is to be designed again
+from rfstage.steady import SteadyState
 
 
 class Chosen(NamedTuple):
@@ -46,6 +44,35 @@ def burdens(made: Design) -> dict[str, Burden]:
     return found
 
 
+def as_settled(
+    chosen: Chosen, state: SteadyState, branches: Sequence[Branch], borne: dict[str, Burden], asked: PartsRequest
+) -> Chosen:
+    """Return the parts with the stresses and currents of the steady state they make."""
+    bought, wound = dict(chosen.bought), dict(chosen.wound)
+    found = {stress.name: stress for stress in state.branches}
+    for branch in branches:
+        stress, before = found[branch.name], borne[branch.name]
+        now = replace(
+            before,
+            rms_current=stress.rms_current,
+            rf_peak_voltage=max(stress.peak_voltage - before.dc_voltage, 0.0),
+        )
+        if branch.name in bought:
+            part, q = bought[branch.name], branch.second_q if branch.kind == "trap" else branch.q
+            if branch.kind == "trap":
+                now, current = _within_trap(branch, now)
+                wound[branch.name] = wound[branch.name]._replace(current=current)
+            else:  # with leads the capacitor itself has more than is seen across the two
+                own = stress.rms_current * math.sqrt(2) / (2 * math.pi * now.carrier * part.total)
+                now = replace(now, rf_peak_voltage=max(now.rf_peak_voltage, own))
+            bought[branch.name] = part.bearing(now, None if q is None else float(q), asked)
+        elif branch.name in wound and branch.kind == "coil":
+            wound[branch.name] = wound[branch.name]._replace(current=stress.rms_current, heat=stress.loss)
+        elif branch.name in wound and branch.tap:
+            wound[branch.name] = wound[branch.name]._replace(heat=stress.loss)
+    return chosen._replace(bought=bought, wound=wound)
+
+
 def chosen_parts(
     made: Design, branches: Sequence[Branch], borne: dict[str, Burden], asked: PartsRequest, trimmed: str
 ) -> Chosen:
@@ -59,7 +86,7 @@ def chosen_parts(
                 role = BLOCKING if branch.name == BLOCKER else TRIMMED if branch.name == trimmed else FIXED
                 found.bought[branch.name] = choose_capacitor(branch.name, value, role, burden, q, asked)
             elif branch.kind == "coil":
-                found.wound[branch.name] = _coil_for(made, branch.name, value, burden.rms_current, asked)
+                found.wound[branch.name] = coil_for(made, branch.name, value, burden.rms_current, asked)
             elif branch.kind == "trap":
                 _trap(made, branch, burden, asked, found)
             elif branch.kind == "coupled":
@@ -72,9 +99,10 @@ def chosen_parts(
     return found
 
 
-def _coil_for(made: Design, name: str, value: float, current: float, asked: PartsRequest) -> Winding:
+def coil_for(made: Design, name: str, value: float, current: float, asked: PartsRequest) -> Winding:
+    """Return a coil for an inductance [H] and a current [A rms], of the Q that the design counts on."""
     q = made.settings.request.coil_q
-    wound = choose_coil(
+    return choose_coil(
         name,
         value,
         current,
@@ -83,47 +111,52 @@ def _coil_for(made: Design, name: str, value: float, current: float, asked: Part
         former=asked.former,
         wire=asked.wire,
     )
-    if wrong := flaw(wound.coil):
-        raise ImpossibleError(wrong)
-    return wound
 
 
 def _trap(made: Design, branch: Branch, burden: Burden, asked: PartsRequest, found: Chosen) -> None:
     """Choose a trap's capacitor, and the coil that keeps its resonance with it."""
-    capacitance, omega = float(branch.second), 2 * math.pi * burden.carrier
-    through = burden.rf_peak_voltage * omega * capacitance / math.sqrt(2) if branch.place == "series" else None
-    own = Burden(
-        carrier=burden.carrier,
-        rms_current=burden.rms_current if through is None else through,
-        rf_peak_voltage=burden.rf_peak_voltage
-        if through is not None
-        else burden.rms_current * math.sqrt(2) / (omega * capacitance),
-    )
+    capacitance = float(branch.second)
+    own, current = _within_trap(branch, burden)
     q = None if branch.second_q is None else float(branch.second_q)
-    bought = choose_capacitor(branch.name, capacitance, FIXED, own, q, asked)
     # its leads are not in the ladder: what they add is tuned out with the coil, on the trap's resonance
-    current = abs(burden.rms_current) + (through or 0.0)
-    wound = _coil_for(made, branch.name, float(branch.value) * capacitance / bought.total, current, asked)
+    bought = choose_capacitor(branch.name, capacitance, FIXED, own, q, asked, total=capacitance)
+    wound = coil_for(made, branch.name, float(branch.value) * capacitance / bought.total, current, asked)
     found.bought[branch.name] = bought._replace(lead=0.0)
     found.wound[branch.name] = wound._replace(note="squeeze or spread it until the trap is on its harmonic")
 
 
+def _within_trap(branch: Branch, burden: Burden) -> tuple[Burden, float]:
+    """Return what a trap's capacitor bears, and its coil's current [A rms]."""
+    reactance = 1 / (2 * math.pi * burden.carrier * float(branch.second))
+    current, peak = burden.rms_current, burden.rf_peak_voltage
+    if branch.place == "series":  # the two circulate, besides what passes
+        current = peak / reactance / math.sqrt(2)
+        return replace(burden, rms_current=current), burden.rms_current + current
+    return replace(burden, rf_peak_voltage=current * math.sqrt(2) * reactance), current
+
+
 def _pair(made: Design, branch: Branch, asked: PartsRequest) -> list[Winding]:
-    """Return the windings of a tapped coil or a link: what is made has a coupling of its own, which is said."""
+    """Return the windings of a tapped coil or a link."""
     part = next(p for p in made.tank.parts if p.branch.name == branch.name)
     first, second, k = float(branch.value), float(branch.second), float(branch.coupling)
     near, far = part.rms_current or 0.0, part.far_current or 0.0
     if branch.tap:
         whole = first + second + 2 * k * math.sqrt(first * second)
-        wound = _coil_for(made, branch.name, whole, near + far, asked)
-        turns, coupling = tap_for(wound.coil, second)
-        note = f"tap at {turns:.2f} turns from the grounded end; coupling of its parts {coupling:.2f}, designed {k:.2f}"
-        if abs(coupling - k) > COUPLING_OFF:
-            note += f": design again with --coupling {coupling:.2f}"
-        return [wound._replace(note=note)]
-    primary = _coil_for(made, branch.name, first, near, asked)
-    link = _coil_for(made, f"{branch.name} link", second, far, asked)
-    return [primary, link._replace(note=f"at the grounded end of {branch.name}, moved until the coupling is {k:.2f}")]
+        wound = coil_for(made, branch.name, whole, near + far, asked)
+        return [wound._replace(tap=tap_for(wound.coil, second))]
+    primary = coil_for(made, branch.name, first, near, asked)
+    link = coil_for(made, link_of(branch.name), second, far, asked)
+    return [primary, link._replace(note=moved_until(branch.name, k))]
+
+
+def link_of(name: str) -> str:
+    """Return what the second winding of a coil is called."""
+    return f"{name} link"
+
+
+def moved_until(name: str, coupling: float) -> str:
+    """Return how a link is set to its coupling [-]."""
+    return f"at the grounded end of {name}, moved until the coupling is {coupling:.3f}"
 
 
 def real(branch: Branch, chosen: Chosen) -> Branch:
@@ -132,11 +165,22 @@ def real(branch: Branch, chosen: Chosen) -> Branch:
     if branch.kind == "trap" and bought and winding:
         return replace(branch, value=winding.coil.rf_inductance, q=winding.coil.unloaded_q, second=bought.total)
     if branch.kind == "coupled" and winding:
-        link = chosen.wound.get(f"{branch.name} link", winding)
-        ends = with_losses(
-            [branch], coil_q=winding.coil.unloaded_q or math.inf, capacitor_q=1.0, carrier=winding.coil.carrier
-        )
-        return ends[0] if branch.tap else replace(ends[0], second_q=link.coil.unloaded_q)
+        coil = winding.coil
+        assert coil.unloaded_q is not None
+        if winding.tap is None:
+            link = chosen.wound[link_of(branch.name)].coil
+            return replace(
+                branch,
+                value=coil.rf_inductance,
+                q=coil.unloaded_q,
+                q_frequency=coil.carrier,
+                second=link.rf_inductance,
+                second_q=link.unloaded_q,
+            )
+        above, below, coupling = tapped(coil, winding.tap)
+        # the wire's resistance goes with its turns, and the parts take it by their own inductance
+        q = coil.unloaded_q * (above + below) / coil.rf_inductance
+        return replace(branch, value=above, second=below, coupling=coupling, q=q, second_q=q, q_frequency=coil.carrier)
     if bought:
         return replace(branch, value=bought.total, lead_inductance=bought.lead)
     if winding:

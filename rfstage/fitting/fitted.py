@@ -17,18 +17,32 @@ from typing import NamedTuple
 from rfstage.designs.design import Design
 from rfstage.designs.judging import in_line
 from rfstage.errors import ConvergenceError, ImpossibleError, RfstageError
-from rfstage.fitting.capacitors import Bought
-from rfstage.fitting.choosing import Chosen, burdens, chosen_parts, real
-from rfstage.fitting.coils import Winding
+from rfstage.fitting.capacitors import TRIMMED, Bought, choose_capacitor
+from rfstage.fitting.choosing import (
+    Chosen,
+    as_settled,
+    burdens,
+    chosen_parts,
+    coil_for,
+    link_of,
+    moved_until,
+    real,
+)
+from rfstage.fitting.coils import Winding, tap_for, tapped
 from rfstage.fitting.request import PartsRequest
 from rfstage.ladder import Branch, Ladder
 from rfstage.matching.exact import Free, close
+from rfstage.parts.stress import Burden
 from rfstage.quantity import show
 from rfstage.stage import BLOCKING as BLOCKER
 from rfstage.stage import PartData, Stage
 from rfstage.steady import SteadyState, settle
 
-RETRIMS = 6
+RETRIMS = 12
+CHOSEN_AGAIN = 3  # of these, in which a trimmer that is left near its end is chosen again
+NEAR_END = 3.0  # % of the capacitance left to one side
+PART_WAY = 0.7  # of the way to where a tap would be best, were the rest of the coil not to follow
+CLOSEST_LINK = 0.9  # coupling that no link over another coil exceeds (common practice, no source)
 NEAR = 1e-3  # of the load resistance: how near the impedance comes back
 TOLERANCE = 5.0  # % of fixed capacitors (common practice, no source)
 
@@ -99,11 +113,11 @@ def fit_parts(made: Design, asked: PartsRequest) -> Fitting:
         branches = tuple(real(branch, chosen) for branch in stage.branches)
         seen = complex(Ladder((*before, *branches)).impedance(carrier, made.settings.load_impedance))
         try:
-            trimmed = _retrimmed(made, before, branches, chosen, (capacitor, coil))
+            trimmed = _retrimmed(made, before, branches, chosen, (capacitor, coil), borne, asked)
         except RfstageError as error:
             trouble.append(str(error))
             continue
-        return _compared(made, before, *trimmed, seen, (capacitor, coil))
+        return _compared(made, before, *trimmed, seen, (capacitor, coil), borne, asked)
     said = trouble[0] if trouble else "it has no capacitor and coil to trim"
     raise ImpossibleError(
         f"--parts: no trimmer and coil length bring {show(made.point.load_resistance, 'ohm')} back to the device: "
@@ -124,44 +138,76 @@ def _trims(made: Design) -> list[tuple[str, str]]:
 
 
 def _retrimmed(
-    made: Design, before: Sequence[Branch], branches: Sequence[Branch], chosen: Chosen, trims: tuple[str, str]
+    made: Design,
+    before: Sequence[Branch],
+    branches: Sequence[Branch],
+    chosen: Chosen,
+    trims: tuple[str, str],
+    borne: dict[str, Burden],
+    asked: PartsRequest,
 ) -> tuple[tuple[Branch, ...], Chosen]:
     """Return the branches and parts with trimmer and coil set so that the device sees what it is to see.
 
-    Squeezing a coil changes its Q and self-capacitance, so it is done again with those until the rest is small.
+    Of a coil the length moves, of a tapped one the tap, of a link the coupling. Squeezing a coil changes its Q and
+    self-capacitance, moving a tap the coupling, so it is done again with those until the rest is small.
     """
     wanted, load, carrier = complex(made.point.load_resistance), made.settings.load_impedance, made.job.carrier
     places = {branch.name: k for k, branch in enumerate(branches)}
     capacitor, coil = (places[name] for name in trims)
-    tied = ("second",) if branches[coil].kind == "coupled" else ()
-    free = (Free(capacitor), Free(coil, "value", tied))
+    attribute = "value" if branches[coil].kind == "coil" else "second" if branches[coil].tap else "coupling"
+    free = (Free(capacitor), Free(coil, attribute))
     now = tuple(branches)
-    for _ in range(RETRIMS):
+    for done in range(RETRIMS):
         closed = close(before, now, wanted=wanted, load=load, carrier=carrier, free=free)
-        chosen = _set(chosen, trims, float(closed[capacitor].value), float(closed[coil].value), wound=not tied)
+        bought = _set_capacitor(chosen, closed[capacitor], borne, asked, again=done < CHOSEN_AGAIN)
+        wound = _set_coil(made, chosen, closed[coil], asked)
+        chosen = chosen._replace(bought=bought, wound=wound)
         now = tuple(real(branch, chosen) for branch in closed)
         if abs(complex(Ladder((*before, *now)).impedance(carrier, load)) / wanted - 1) <= NEAR:
             return now, chosen
     raise ConvergenceError(f"{trims[0]} and {trims[1]} do not settle against each other")
 
 
-def _set(chosen: Chosen, trims: tuple[str, str], capacitance: float, inductance: float, *, wound: bool) -> Chosen:
-    """Return the parts with the trimmed capacitor at a capacitance [F] and the coil at an inductance [H]."""
-    name, coil = trims
-    bought, windings = dict(chosen.bought), dict(chosen.wound)
-    if name in bought:
-        low, high = bought[name].reach or (0.0, 0.0)
-        if not low <= capacitance <= high:
-            raise ImpossibleError(
-                f"{name} would have to be {show(capacitance, 'F')}, and its trimmer reaches from {show(low, 'F')} to "
-                f"{show(high, 'F')}"
-            )
-        bought[name] = bought[name].retrimmed(capacitance)
-    if inductance <= 0:
-        raise ConvergenceError(f"{coil} would have to be negative")
-    if coil in windings and wound:
-        windings[coil] = windings[coil].retrimmed(inductance)
-    return chosen._replace(bought=bought, wound=windings)
+def _set_capacitor(
+    chosen: Chosen, closed: Branch, borne: dict[str, Burden], asked: PartsRequest, *, again: bool
+) -> dict[str, Bought]:
+    """Return the capacitors with one set to what the network wants; its parts are chosen anew if they can't be."""
+    name, total = closed.name, float(closed.value)
+    if total <= 0:
+        raise ConvergenceError(f"{name} would have to be negative")
+    part = chosen.bought[name].retrimmed(total)
+    if part.spare < (NEAR_END if again else 0.0):
+        q = None if closed.q is None else float(closed.q)
+        part = choose_capacitor(name, part.wanted, TRIMMED, borne[name], q, asked, total=total)
+    return {**chosen.bought, name: part}
+
+
+def _set_coil(made: Design, chosen: Chosen, closed: Branch, asked: PartsRequest) -> dict[str, Winding]:
+    """Return the windings with one set to what the network wants; a coil that can't be is wound anew."""
+    name, value = closed.name, float(closed.value)
+    if value <= 0 or float(closed.second) < 0:
+        raise ConvergenceError(f"{name} would have to be negative")
+    if closed.kind == "coupled" and not closed.tap and not 0 < float(closed.coupling) <= CLOSEST_LINK:
+        raise ImpossibleError(
+            f"{name} would need a coupling of {float(closed.coupling):.3g}; a link has above 0, to {CLOSEST_LINK:g}"
+        )
+    if name not in chosen.wound:
+        return chosen.wound
+    wound = dict(chosen.wound)
+    if closed.kind == "coil":
+        try:
+            wound[name] = wound[name].retrimmed(value)
+        except RfstageError:
+            wound[name] = coil_for(made, name, value, wound[name].current, asked)
+    elif closed.tap:
+        coil, tap = wound[name].coil, wound[name].tap
+        assert tap is not None
+        now = tapped(coil, tap)[1]
+        wound[name] = wound[name]._replace(tap=tap_for(coil, now * (float(closed.second) / now) ** PART_WAY))
+    else:
+        link = link_of(name)
+        wound[link] = wound[link]._replace(note=moved_until(name, float(closed.coupling)))
+    return wound
 
 
 def _compared(
@@ -171,8 +217,10 @@ def _compared(
     chosen: Chosen,
     seen: complex,
     trims: tuple[str, str],
+    borne: dict[str, Burden],
+    asked: PartsRequest,
 ) -> Fitting:
-    stage = replace(made.stage, branches=branches, part_data=_part_data(chosen))
+    stage = replace(made.stage, branches=branches)
     state = line = None
     trouble = ""
     try:
@@ -180,10 +228,16 @@ def _compared(
         line = in_line(stage, state, made.settings.line)
     except ConvergenceError as error:
         trouble = str(error)
+    if state is not None:
+        chosen = as_settled(chosen, state, branches, borne, asked)
+    stage = replace(stage, part_data=_part_data(chosen, branches))
+    ideal = dict(chosen.ideal)
+    if trims[1] in ideal:
+        ideal[trims[1]] += f"; it is to be {_size(next(b for b in branches if b.name == trims[1]))}"
     return Fitting(
         bought=tuple(chosen.bought.values()),
         wound=tuple(chosen.wound.values()),
-        ideal=tuple(chosen.ideal.items()),
+        ideal=tuple(ideal.items()),
         impedance=seen,
         retrimmed=complex(Ladder((*before, *branches)).impedance(made.job.carrier, made.settings.load_impedance)),
         moved=trims,
@@ -195,20 +249,32 @@ def _compared(
     )
 
 
-def _part_data(chosen: Chosen) -> dict[str, PartData]:
-    found = {}
+def _size(coil: Branch) -> str:
+    if coil.kind == "coil":
+        return show(float(coil.value), "H")
+    first, second = (show(float(value), "H") for value in (coil.value, coil.second))
+    between = "above and below its tap" if coil.tap else "of its windings"
+    return f"{first} and {second} {between}, with a coupling of {float(coil.coupling):.3g}"
+
+
+def _part_data(chosen: Chosen, branches: Sequence[Branch]) -> dict[str, PartData]:
+    found: dict[str, PartData] = {}
+    kept = {branch.name for branch in branches}
     for name, bought in chosen.bought.items():
         rating = bought.stresses[0].voltage_rating
         found[name] = PartData(bought.reach, None if bought.reach else TOLERANCE, None, rating)
     for name, winding in chosen.wound.items():
         coil = winding.coil
-        found[name] = PartData(
+        if name not in kept:  # a link, which has no line of its own in a stage file
+            continue
+        found[name] = replace(
+            found.get(name, PartData()),
             winding=(
                 ("turns", coil.turns),
                 ("diameter", coil.diameter),
                 ("length", coil.length),
                 ("wire", coil.wire_diameter),
-            )
+            ),
         )
     return found
 

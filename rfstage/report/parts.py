@@ -2,14 +2,23 @@
 
 from __future__ import annotations
 
+import math
+
 from rich.text import Text
 
-from rfstage.fitting.capacitors import Bought
-from rfstage.fitting.coils import Winding
+from rfstage.fitting.capacitors import BLOCKING, TIGHT, Bought
+from rfstage.fitting.coils import HOT, Winding
 from rfstage.fitting.fitted import Comparison, Fitting
+from rfstage.parts.leads import check_short, self_resonance
 from rfstage.quantity import show, show_complex
 from rfstage.report.judged import signed
 from rfstage.report.page import Cell, Look, columns, heading, note
+
+NEAR_RESONANCE = 2.0  # self-resonance over carrier: below it leads weigh more than tolerances
+BLOCKING_SHARE = 0.1  # of the load resistance, that a blocking capacitor may leave (common practice, no source)
+AIR = 500.0  # V: above it a trimmer has air or vacuum between its plates (common practice, no source)
+MOST_AMPERES = 10.0  # rms with its margin, that one usual part stands (common practice, no source)
+CHANGED = 0.1  # of the power, from where the parts have made another stage of it
 
 
 def parts_lines(fitting: Fitting, look: Look) -> list[Text]:
@@ -23,15 +32,20 @@ def parts_lines(fitting: Fitting, look: Look) -> list[Text]:
     lines += columns(look, rows)
     for bought in fitting.bought:
         lines += _trimmer_line(bought, look)
+        lines += _lead_line(bought, fitting, look)
+        lines += _current_line(bought, look)
     lines += note(
         look,
-        "Voltages and amperes with their margins, dc where a part blocks, all orders where the stage was settled; each "
-        "in series with its leads.",
+        "Volts (dc and RF peak) and amperes rms with their margins, all orders, "
+        + ("as the stage settles with these parts." if fitting.state else "from the design."),
         style="dim",
     )
     lines += heading(look, "Coils to wind")
     for winding in fitting.wound:
         lines += _coil_lines(winding, look)
+    dc = f" for {show(fitting.state.dc_current, 'A')} dc" if fitting.state else ""
+    choke = show(fitting.stage.supply.choke, "H")
+    lines += note(look, f"Lchoke: {choke}{dc}, not chosen here: rfstage coil winds one", hanging=2)
     for name, reason in fitting.ideal:
         lines += note(look, f"{name}: stays as designed: {reason}", hanging=2)
     return lines + _compared(fitting, look)
@@ -40,7 +54,9 @@ def parts_lines(fitting: Fitting, look: Look) -> list[Text]:
 def _bought_rows(bought: Bought) -> list[list[Cell]]:
     words = [show(value, "F") for value in bought.values]
     if bought.trimmer is not None:
-        words.append(f"trimmer {show(bought.trimmer.least, 'F')} to {show(bought.trimmer.most, 'F')}")
+        rating = bought.stresses[-1].voltage_rating
+        kind = "trimmer" if rating is not None and rating <= AIR else "air variable"
+        words.append(f"{kind} {show(bought.trimmer.least, 'F')} to {show(bought.trimmer.most, 'F')}")
     rows = []
     for k, (word, stress) in enumerate(zip(words, bought.stresses, strict=True)):
         rated = "special" if stress.voltage_rating is None else show(stress.voltage_rating, "V")
@@ -59,27 +75,76 @@ def _bought_rows(bought: Bought) -> list[list[Cell]]:
 def _trimmer_line(bought: Bought, look: Look) -> list[Text]:
     if bought.setting is None:
         return []
-    return note(
-        look,
-        f"{bought.name}: trimmer at {show(bought.setting, 'F')}, {show(bought.total, 'F')} in all; with its leads of "
-        f"{show(bought.lead, 'H')} that is the {show(bought.wanted, 'F')} the circuit wants, or what brings the "
-        "impedance back",
-        hanging=2,
+    words = (
+        f"{bought.name}: set to {show(bought.setting, 'F')}, {show(bought.total, 'F')} in all, with leads of "
+        f"{show(bought.lead, 'H')}; the design has {show(bought.wanted, 'F')} without leads"
     )
+    if bought.spare < TIGHT:
+        words += f". Only {bought.spare:.1f} % is left to one side: measure the fixed parts, and choose them for it"
+    return note(look, words, hanging=2)
+
+
+def _lead_line(bought: Bought, fitting: Fitting, look: Look) -> list[Text]:
+    """Return what the leads do at the carrier, where they do much."""
+    carrier = fitting.stage.carrier
+    if bought.lead == 0:
+        return []
+    if bought.role == BLOCKING:
+        allowed = BLOCKING_SHARE * abs(fitting.retrimmed)
+        found = check_short(
+            bought.total, frequency=carrier, allowed_reactance=allowed, lead_inductance=bought.lead
+        ).problem
+    else:
+        resonance = self_resonance(bought.total, lead_inductance=bought.lead)
+        found = (
+            f"with its leads of {show(bought.lead, 'H')} it is in resonance at {show(resonance, 'Hz')}, near the "
+            "carrier: each millimetre counts; chips, or shorter leads (--lead)"
+            if resonance < NEAR_RESONANCE * carrier
+            else ""
+        )
+    return note(look, f"! {bought.name}: {found}", hanging=2, style="yellow") if found else []
+
+
+def _current_line(bought: Bought, look: Look) -> list[Text]:
+    """Return into how many parts to share the largest, where one does not stand its current."""
+    most = max(stress.current_to_stand for stress in bought.stresses)
+    if most <= MOST_AMPERES:
+        return []
+    share = math.ceil(most / MOST_AMPERES)
+    words = (
+        f"! {bought.name}: {show(most, 'A')} is more than one usual part stands: share the capacitance among {share} "
+        "or more side by side, or take one made for it"
+    )
+    return note(look, words, hanging=2, style="yellow")
 
 
 def _coil_lines(winding: Winding, look: Look) -> list[Text]:
     coil = winding.coil
     q = "Q unknown" if coil.unloaded_q is None else f"Q {coil.unloaded_q:.0f}"
     resonance = "" if coil.self_resonance is None else f", self-resonance {show(coil.self_resonance, 'Hz')}"
+    heat = "" if winding.loss is None else f" and {show(winding.loss, 'W')} of heat"
     lines = note(
         look,
-        f"{winding.name}: {coil.turns:g} turns of {show(coil.wire_diameter, 'm')} copper, mean diameter "
-        f"{show(coil.diameter, 'm')}, {show(coil.length, 'm')} long (pitch {show(coil.pitch, 'm')}); "
-        f"{show(winding.wanted, 'H')} at the carrier, {q}{resonance}, {show(coil.wire_length, 'm')} of wire",
+        f"{winding.name}: {coil.turns:g} turns of {show(coil.wire_diameter, 'm')} copper on "
+        f"{show(coil.diameter - coil.wire_diameter, 'm')} (mean diameter {show(coil.diameter, 'm')}), "
+        f"{show(coil.length, 'm')} long (pitch {show(coil.pitch, 'm')}), {show(coil.wire_length, 'm')} of wire and its "
+        f"ends; {show(winding.wanted, 'H')} at the carrier, {q}{resonance}; {show(winding.current, 'A')}{heat}",
         hanging=2,
     )
-    return lines + (note(look, winding.note, indent=4, hanging=2) if winding.note else [])
+    if winding.tap is not None:
+        lines += note(look, f"tap at {winding.tap:.2f} turns from the grounded end", indent=4, hanging=2)
+    if winding.note:
+        lines += note(look, winding.note, indent=4, hanging=2)
+    if winding.hot:
+        lines += note(
+            look,
+            f"! it runs hot, with over {HOT / 1e4:g} W from each square centimetre of wire: thicker wire or tube, or "
+            "moving air",
+            indent=4,
+            hanging=2,
+            style="yellow",
+        )
+    return lines
 
 
 def _compared(fitting: Fitting, look: Look) -> list[Text]:
@@ -92,6 +157,15 @@ def _compared(fitting: Fitting, look: Look) -> list[Text]:
     lines += columns(look, rows)
     if fitting.trouble:
         lines += note(look, f"! no steady state with these parts: {fitting.trouble}", style="bold red")
+    power = fitting.compared[0]
+    if power.ideal and power.fitted is not None and abs(power.fitted / power.ideal - 1) > CHANGED:
+        way = "less drive" if power.fitted > power.ideal else "shorter leads (--lead), or another network"
+        lines += note(
+            look,
+            f"! with these parts it gives {show(power.fitted, 'W')} instead of {show(power.ideal, 'W')}: leads and "
+            f"self-capacitances leave the device's harmonics another impedance; {way}",
+            style="bold red",
+        )
     moved = " and ".join(fitting.moved)
     return lines + note(
         look,

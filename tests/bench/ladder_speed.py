@@ -26,7 +26,7 @@ HARMONICS = CARRIER * np.arange(1, 17)
 SAMPLED = 20
 ROUNDS = 15
 POINTS = 201
-JOB = Job(carrier=CARRIER, power=10.0, conduction_angle=120.0, supply=13.8)
+JOB = Job(network="pi", carrier=CARRIER, power=10.0, conduction_angle=120.0, supply=13.8)
 
 
 def sampled_pi_l() -> tuple[Branch, ...]:

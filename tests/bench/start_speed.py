@@ -1,7 +1,8 @@
 """How fast the program starts, as a ratio to importing numpy and rich on one thread.
 
 Whole processes, interleaved, medians. Run it with the Python of a real (not editable) install:
-``python tests/bench/start_speed.py``.
+``python tests/bench/start_speed.py``. The designs with a goal name ``--network pi``, so that it is one network they
+start and solve; what the default costs, all networks ranked, stands beside them without a goal.
 """
 
 from __future__ import annotations
@@ -16,9 +17,11 @@ from pathlib import Path
 ROUNDS = 25
 PROGRAM = str(Path(sys.executable).parent / "rfstage")
 JOB = ("--carrier", "7.1MHz", "--power", "10W", "--angle", "120deg", "--supply", "13.8V")
+PI = ("--network", "pi")
 CASES = (
-    ("design --textbook", (PROGRAM, "design", *JOB, "--textbook"), 1.6),
-    ("design (corrected)", (PROGRAM, "design", *JOB), 2.2),
+    ("design --textbook", (PROGRAM, "design", *JOB, *PI, "--textbook"), 1.6),
+    ("design (corrected)", (PROGRAM, "design", *JOB, *PI), 2.2),
+    ("design, all ranked", (PROGRAM, "design", *JOB), None),
     ("--help", (PROGRAM, "--help"), 0.35),
     ("design --help", (PROGRAM, "design", "--help"), 0.35),
     ("a wrong option", (PROGRAM, "design", "--carier", "7MHz"), 0.35),
@@ -47,7 +50,8 @@ def main() -> None:
     print(f"start-up, against importing numpy and rich on one thread ({1000 * unit:.0f} ms here):")
     for name, _, goal in CASES:
         ratio = statistics.median(times[name]) / unit
-        print(f"  {name:<22} {ratio:5.2f}   goal at most {goal:.2f}   {'met' if ratio <= goal else 'MISSED'}")
+        goal_words = "" if goal is None else f"   goal at most {goal:.2f}   {'met' if ratio <= goal else 'MISSED'}"
+        print(f"  {name:<22} {ratio:5.2f}{goal_words}")
 
 
 if __name__ == "__main__":
