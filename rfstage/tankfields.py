@@ -203,6 +203,9 @@ def lonely(values: dict[str, object]) -> list[str]:
     ]
     if values.get("filter") == AUTO and values.get("limit") is None:
         found.append("tank.filter: auto needs limit.rule, since it fits what a limit wants; or give the filter's order")
+    order, kind = values.get("filter"), values.get("filter_kind")
+    if isinstance(order, str) and order.isdigit() and int(order) % 2 == 0 and kind not in (None, "butterworth"):
+        found.append(f"tank.filter: got order {order} for a {kind} filter; of even orders only butterworth fits a line")
     if values.get("trap") is not None and values.get("filter_kind") not in (None, "chebyshev-trap"):
         found.append(f"tank.trap: is of no use for a {values['filter_kind']} filter; it belongs to chebyshev-trap")
     return found

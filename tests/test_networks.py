@@ -527,7 +527,7 @@ def test_tap_and_q_together_are_refused():
 
 
 def test_ends_too_near_for_a_tap_say_so_and_pi_joins_them():
-    with pytest.raises(ImpossibleError, match=r"too near each other for a tap inside the coil; network pi joins them"):
+    with pytest.raises(ImpossibleError, match=r"too near each other for a tap between them; network pi joins them"):
         solved("tapped-coil", 50, 50.2, coupling=0.4)
     assert abs(solve_nodes(solved("pi", 50, 50.2), 50.2, 7e6)[0][0] / 50 - 1) < 1e-9
 

@@ -39,28 +39,28 @@ def candidate(name: str, **values: object) -> Candidate:
 
 
 def extremes(number: int, beyond: int = 0) -> tuple[Extreme, ...]:
-    return tuple(Extreme(f"C{k} of 1 pF: strays decide", k < beyond) for k in range(number))
+    return tuple(Extreme(f"C{k}", f"C{k} of 1 pF: strays decide", k < beyond) for k in range(number))
 
 
 # --- the order -------------------------------------------------------------------------------------------
 
 # of each criterion a better and a worse candidate, the better one worse in everything that comes after it
 PAIRS = {
+    "beyond building": (
+        {"margin": -9.0, "extremes": extremes(5), "efficiency": 0.5, "parts": 12, "trough_dip": 0.9},
+        {"margin": 9.0, "extremes": extremes(1, 1), "efficiency": 0.99, "parts": 2},
+    ),
     "limit and margin kept": (
-        {"margin": 3.1, "trough_dip": 0.9, "extremes": extremes(5, 3), "efficiency": 0.5, "parts": 12},
+        {"margin": 3.1, "trough_dip": 0.9, "extremes": extremes(5), "efficiency": 0.5, "parts": 12},
         {"margin": 2.9, "trough_dip": 0.0, "efficiency": 0.99, "parts": 2},
     ),
     "trough dip": (
-        {"trough_dip": 0.09, "extremes": extremes(5, 3), "efficiency": 0.5, "parts": 12},
+        {"trough_dip": 0.09, "extremes": extremes(5), "efficiency": 0.5, "parts": 12},
         {"trough_dip": 0.11, "efficiency": 0.99, "parts": 2},
     ),
     "deep trough dip": (
-        {"trough_dip": 0.15, "extremes": extremes(5, 3), "efficiency": 0.5, "parts": 12},
+        {"trough_dip": 0.15, "extremes": extremes(5), "efficiency": 0.5, "parts": 12},
         {"trough_dip": 0.25, "efficiency": 0.99, "parts": 2},
-    ),
-    "beyond building": (
-        {"extremes": extremes(5), "efficiency": 0.5, "parts": 12, "trough_dip": 0.05},
-        {"extremes": extremes(1, 1), "efficiency": 0.99, "parts": 2},
     ),
     "what is missing": (
         {"margin": -1.0, "efficiency": 0.5, "extremes": extremes(4), "parts": 12, "trough_dip": 0.05},
@@ -117,7 +117,7 @@ def untrue(ranking: Ranking) -> str:
     first, second, reason = ranking.winner, others[0], ranking.reason
     beyond = [sum(e.beyond for e in c.extremes) for c in (first, second)]
     claims = [
-        (r"it meets the limit, and \w+ does not", (first.margin or 0) >= 0 > (second.margin or 0)),
+        (r"it keeps limit and margin, and .+ does not", first.missed == 0 < second.missed),
         (r"margin", first.missed < second.missed),
         (r"trough dip", first.trough_dip < second.trough_dip),
         (r"beyond building", beyond[0] < beyond[1]),
@@ -133,10 +133,10 @@ def untrue(ranking: Ranking) -> str:
 
 WORDS = {
     "trough dip": r"trough dip 0\.09, against 0\.11 of b",
-    "beyond building": r"no values beyond building, against 1 value of b",
+    "beyond building": r"no parts beyond building, against 1 part of b",
     "what is missing": r"4\.0 dB short of limit and margin, against 12\.0 dB of b",
     "losses": r"93\.0 % efficient, against 88\.0 % of b",
-    "extreme values": r"1 value or currents extreme, against 2 values of b",
+    "extreme values": r"1 part with a value or current that is extreme, against 2 parts of b",
     "parts": r"3 parts, against 4 of b",
     "less of a dip": r"trough dip 0\.010, against 0\.020 of b",
 }
@@ -152,7 +152,7 @@ def test_reason_names_the_criterion_that_decided_with_both_its_figures(criterion
 
 def test_reason_says_who_meets_the_limit_and_who_does_not():
     assert reason_of(candidate("b", margin=-1.0), candidate("a", margin=3.5))[1] == (
-        "it meets the limit, and b does not"
+        "it keeps limit and margin, and b does not"
     )
 
 
@@ -326,13 +326,10 @@ def test_same_job_gives_the_same_ranking():
     assert design_record(one, []) == design_record(other, [])
 
 
-def test_a_job_that_no_network_does_is_one_error_with_what_each_said():
-    with pytest.raises(ImpossibleError, match="no network does it") as error:
+def test_a_job_that_no_network_does_is_one_line_with_what_a_pi_lacks():
+    with pytest.raises(ImpossibleError, match=r"no network does it; pi: tank\.loaded_q: 0\.1 is too low") as error:
         book(**BASE, loaded_q=0.1)
-    text = str(error.value)
-    assert "\n" not in text
-    assert all(f"{network}: " in text for network in NETWORKS)
-    assert text.count("tank.loaded_q: ") >= 5
+    assert "\n" not in str(error.value)
 
 
 def test_a_job_wrong_for_every_network_is_refused_before_any_is_tried():

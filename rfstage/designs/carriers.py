@@ -133,7 +133,8 @@ def _of_one_network(jobs: Sequence[Job], textbook: bool) -> list[Design]:
             return [design(replace(job, network=network), textbook) for job in jobs]
         except RfstageError as error:
             failed.append(f"{network}: {error}")
-    raise ImpossibleError("no network serves all the carriers. " + "; ".join(failed))
+    best = f"the best for {show(first.carrier, 'Hz', 5)}, {failed[0]}"
+    raise ImpossibleError(f"no network serves all the carriers; {best}")
 
 
 def _tank(made: Design) -> list[Branch]:

@@ -92,7 +92,12 @@ def design(job: Job, textbook: bool = False) -> Design:
         if ranking is None:
             return found
         return replace(found, ranking=ranking.settled(found.settings.request.network, [str(e) for e in failed]))
-    raise failed[0]
+    if len(failed) == 1:
+        raise failed[0]
+    raise ImpossibleError(
+        f"none of {len(failed)} networks does it in steady state; the best by the book: {failed[0]} (--network tries "
+        "another, --textbook keeps the book's design)"
+    )
 
 
 def _fitted(settings: Settings, coefficients: NDArray[np.float64], extra: NDArray[np.float64] | None = None) -> Fitted:
@@ -109,23 +114,43 @@ def _to_settled_power(coefficients: NDArray[np.float64], made: Fitted, *, advise
     """Return the design whose settled power is the asked one, its filter good for the settled harmonics too."""
     from rfstage.designs.correction import corrected
 
-    extra = np.zeros(made.settings.highest_order - 1)
+    settings = made.settings
+    extra = np.zeros(settings.highest_order - 1)
     for _ in range(FILTER_ROUNDS):
         book = build(made.settings, made.circuit, made.point)
         built, state = corrected(made.settings, coefficients, book, advise=advise)
         resistance = book.point.load_resistance
         found = with_settled(assembled(coefficients, made, built, "settled", resistance, None), state)
-        if made.settings.job.filter in (None, NONE):
+        if settings.job.filter in (None, NONE):
             return found
-        short = np.array([made.settings.margin - (h.margin or 0.0) if h.limit else 0.0 for h in found.harmonics])
+        short = np.array([settings.margin - (h.margin or 0.0) if h.limit else 0.0 for h in found.harmonics])
         if short.max() <= 0:
             return found
-        extra += np.where(short > 0, short + FILTER_SPARE, 0.0)
-        made = _fitted(replace(made.settings, filter=()), coefficients, extra)
+        extra = _settled_excess(found, made, coefficients, extra, short)
+        made = _fitted(replace(settings, filter=()), coefficients, extra)
     raise ImpossibleError(
-        f"network {made.settings.request.network}: no filter holds the limit in steady state; {short.max():.1f} dB is "
+        f"network {settings.request.network}: no filter holds the limit in steady state; {short.max():.1f} dB is "
         f"short at order {int(short.argmax()) + 2}"
     )
+
+
+def _settled_excess(
+    found: Design,
+    made: Fitted,
+    coefficients: NDArray[np.float64],
+    extra: NDArray[np.float64],
+    short: NDArray[np.float64],
+) -> NDArray[np.float64]:
+    """Return the dB by which the settled orders stand above the book's, and what was short in spite of that."""
+    from rfstage.designs.filtering import line_levels
+
+    book = line_levels(made.settings, made.circuit, made.point, coefficients)
+    settled = np.array([np.nan if h.line_level is None else h.line_level for h in found.harmonics])
+    excess = np.nan_to_num(np.maximum(settled - book, 0.0), nan=0.0, posinf=0.0)
+    again = np.where(
+        (short > 0) & (extra >= excess), extra + short + FILTER_SPARE, np.maximum(extra, excess + FILTER_SPARE)
+    )
+    return np.asarray(np.where(short > 0, again, extra))
 
 
 def with_settled(made: Design, state: SteadyState | None = None) -> Design:

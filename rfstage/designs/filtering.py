@@ -25,7 +25,7 @@ from rfstage.matching.tank import tank_efficiency
 from rfstage.operating import OperatingPoint
 from rfstage.tankfields import AUTO, NONE
 
-ROUNDS = 6
+ROUNDS = 12
 SPARE = 0.2  # dB more than what was short, so that the rounds end
 
 Array = NDArray[np.float64]

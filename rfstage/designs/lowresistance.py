@@ -26,6 +26,7 @@ from rfstage.quantity import show
 
 RATIOS = (2.0, 3.0, 4.0)  # of the transformers tried
 ROOM = 1.1  # times the least resistance, that a higher supply should give
+DEEPEST_DIP = 0.3  # of a way worth the name
 MOST_SUPPLY = 4.0  # times the given supply: beyond that it is another device
 
 
@@ -42,6 +43,11 @@ class Way(NamedTuple):
     still_low: bool
     candidate: Candidate | None
     refused: str = ""
+
+    @property
+    def spoils(self) -> bool:
+        """Whether the trough dips so deep that it is no way out."""
+        return self.candidate is None or self.candidate.trough_dip > DEEPEST_DIP
 
     @property
     def summary(self) -> str:
@@ -77,7 +83,7 @@ def ways_out(settings: Settings, coefficients: NDArray[np.float64], resistance: 
     trials: list[tuple[str, Job]] = []
     if job.transformer is None:
         trials += [(f"a transformer 1:{n:g}", replace(job, transformer=n)) for n in RATIOS]
-    for least in (LOW_RESISTANCE * ROOM, 2 * LOW_RESISTANCE, 4 * LOW_RESISTANCE):
+    for least in (LOW_RESISTANCE * ROOM, 4 * LOW_RESISTANCE):
         times = math.sqrt(max(least / resistance, 1.0))
         if 1 < times <= MOST_SUPPLY:
             supply = float(f"{times * job.supply:.2g}")
@@ -88,7 +94,7 @@ def ways_out(settings: Settings, coefficients: NDArray[np.float64], resistance: 
     found = [_tried(words, trial, settings, coefficients) for words, trial in trials]
     made = [way for way in found if way.candidate]
     keys = keys_of([way.candidate for way in made if way.candidate])
-    order = sorted(range(len(made)), key=lambda k: (made[k].still_low, keys[k]))
+    order = sorted(range(len(made)), key=lambda k: (made[k].spoils, made[k].still_low, keys[k]))
     return (*(made[k] for k in order), *(way for way in found if not way.candidate))
 
 

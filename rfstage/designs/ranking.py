@@ -1,8 +1,8 @@
 """All networks for one job, with and without a filter, in the order in which they suit it.
 
-By the book, in this order: the limit is met; the trough dip is small; no part is beyond building; what is missing of
-the limit, in steps; the power lost in tank and filter, in steps; how many parts are of extreme value or current; how
-many parts there are. Only the winner is settled.
+By the book, in this order: no part is beyond building; limit and margin are kept; the trough dip is small; what is
+missing of the limit, in steps; the power lost in tank and filter, in steps; how much is of extreme value or current;
+how many parts there are. Only the winner is settled.
 """
 
 from __future__ import annotations
@@ -28,23 +28,19 @@ from rfstage.tankfields import AUTO, NETWORKS
 
 SHORT_STEP = 3.0  # dB: networks that miss the limit by less than this apart are alike
 LOSS_STEP = 0.02  # of the power: the same for what tank and filter lose
-DIPS = (
-    0.10,
-    0.20,
-    0.50,
-    1.0,
-)  # trough dips: the first costs 7 % of power, the second 18 %
+DIPS = (0.10, 0.20, 0.50, 1.0)  # trough dips: the first costs 7 % of power, the second 18 %
 # What makes a part extreme, and what puts it beyond building; common practice, no source
-LEAD = 5e-9  # H of lead
-LEADS = (10.0, 2.0)  # times its reactance, which a capacitor's or coil's should be at least
+LEADS = 10.0 * 5e-9  # H: a coil, and the reactance of a capacitor, should be ten times a lead of 5 nH
+STRAPS = (3e-9, 2.0 * 1e-9)  # H: a coil below the first, a capacitor of less reactance than the second, is beyond it
 SMALLEST_CAPACITOR = (5e-12, 1e-12)  # F, below which strays decide
 LARGEST_COIL = 300e-6  # H
 LARGEST_CURRENT = (15.0, 40.0)  # A rms
 
 
 class Extreme(NamedTuple):
-    """What is extreme of a part, in words, and whether that is beyond building."""
+    """What is extreme of a part: its name, in words, and whether that is beyond building."""
 
+    part: str
     words: str
     beyond: bool
 
@@ -70,18 +66,17 @@ class Candidate(NamedTuple):
     allowed: bool = True
 
     @property
-    def grade(self) -> tuple[float, float]:
-        """What comes first: whether the limit is met, and how deep the trough dips."""
-        return (self.missed > 0, sum(self.trough_dip > dip for dip in DIPS))
+    def grade(self) -> tuple[float, ...]:
+        """What comes first: whether it can be built, whether limit and margin are kept, how deep the trough dips."""
+        return (_parts_of(self.extremes, beyond=True), self.missed > 0, sum(self.trough_dip > dip for dip in DIPS))
 
     def key(self, best: Candidate) -> tuple[float, ...]:
-        """Return what the ranking goes by, least first; ``best`` has the least missed and lost of the same class."""
+        """Return what the ranking goes by, least first; ``best`` has the least missed and lost of the same grade."""
         return (
             *self.grade,
-            sum(extreme.beyond for extreme in self.extremes),
             (self.missed - best.missed) // SHORT_STEP,
             (best.efficiency - self.efficiency) // LOSS_STEP,
-            len(self.extremes),
+            _parts_of(self.extremes),
             self.parts,
             self.trough_dip,
         )
@@ -122,21 +117,24 @@ class Ranking(NamedTuple):
     @property
     def reason(self) -> str:
         """Why the winner is first, against the next that could have been."""
-        others = [c for c in self.candidates[self.chosen + 1 :] if c.fitted and c.allowed]
+        others = [k for k, c in enumerate(self.candidates) if k > self.chosen and c.fitted and c.allowed]
         if not others:
             return "the only one that does it"
-        first, second = self.winner, others[0]
-        keys = keys_of([first, *others])
-        place = next((k for k, (a, b) in enumerate(zip(keys[0], keys[1], strict=True)) if a != b), -1)
+        fit = [c for c in self.candidates if c.fitted]  # refused ones stand last
+        keys = keys_of(fit)
+        first, second = self.winner, self.candidates[others[0]]
+        pairs = zip(keys[self.chosen], keys[others[0]], strict=True)
+        place = next((k for k, (a, b) in enumerate(pairs) if a != b), -1)
         if place < 0:
             return f"as good as {second.name}"
         words = (
-            f"it meets the limit, and {second.name} does not",
-            f"trough dip {first.trough_dip:.2f}, against {second.trough_dip:.2f} of {second.name}",
             f"{_many(first.extremes, True)} beyond building, against {_many(second.extremes, True)} of {second.name}",
+            f"it keeps limit and margin, and {second.name} does not",
+            f"trough dip {first.trough_dip:.2f}, against {second.trough_dip:.2f} of {second.name}",
             f"{first.missed:.1f} dB short of limit and margin, against {second.missed:.1f} dB of {second.name}",
             f"{100 * first.efficiency:.1f} % efficient, against {100 * second.efficiency:.1f} % of {second.name}",
-            f"{_many(first.extremes)} or currents extreme, against {_many(second.extremes)} of {second.name}",
+            f"{_many(first.extremes)} with a value or current that is extreme, against {_many(second.extremes)} of "
+            f"{second.name}",
             f"{first.parts} parts, against {second.parts} of {second.name}",
             f"trough dip {first.trough_dip:.3f}, against {second.trough_dip:.3f} of {second.name}",
         )
@@ -145,7 +143,7 @@ class Ranking(NamedTuple):
 
 def keys_of(candidates: Sequence[Candidate]) -> list[tuple[float, ...]]:
     """Return the key of each candidate among all of them."""
-    best: dict[tuple[float, float], Candidate] = {}
+    best: dict[tuple[float, ...], Candidate] = {}
     for c in candidates:
         known = best.setdefault(c.grade, c)
         best[c.grade] = known._replace(
@@ -155,8 +153,13 @@ def keys_of(candidates: Sequence[Candidate]) -> list[tuple[float, ...]]:
 
 
 def _many(extremes: Sequence[Extreme], beyond: bool = False) -> str:
-    number = sum(extreme.beyond or not beyond for extreme in extremes)
-    return f"{number or 'no'} value{'' if number == 1 else 's'}"
+    number = _parts_of(extremes, beyond)
+    return f"{number or 'no'} part{'' if number == 1 else 's'}"
+
+
+def _parts_of(extremes: Sequence[Extreme], beyond: bool = False) -> int:
+    """Return how many parts are extreme, or beyond building."""
+    return len({extreme.part for extreme in extremes if extreme.beyond or not beyond})
 
 
 def rank(settings: Settings, coefficients: NDArray[np.float64]) -> Ranking:
@@ -165,7 +168,7 @@ def rank(settings: Settings, coefficients: NDArray[np.float64]) -> Ranking:
     Raises
     ------
     ImpossibleError
-        If none does it, with what each of them said.
+        If none does it, with what a pi lacks.
     """
     found: list[Candidate] = []
     for network in NETWORKS:
@@ -175,8 +178,8 @@ def rank(settings: Settings, coefficients: NDArray[np.float64]) -> Ranking:
     made = [fit[k] for k in sorted(range(len(fit)), key=keys.__getitem__)]
     chosen = next((k for k, c in enumerate(made) if c.allowed), None)
     if chosen is None:
-        said = "; ".join(f"{c.name}: {c.refused}" for c in found if c.refused)
-        raise ImpossibleError(f"no network does it. {said}")
+        said = next(c for c in found if c.refused and c.network in ("pi", "pi + filter"))
+        raise ImpossibleError(f"no network does it; {said.name}: {said.refused} (--network says what another lacks)")
     return Ranking((*made, *(c for c in found if not c.fitted)), chosen)
 
 
@@ -188,9 +191,10 @@ def _tried(settings: Settings, coefficients: NDArray[np.float64], network: str) 
     except RfstageError as error:
         return [Candidate(network, None, None, _plain(str(error), network))]
     forced = settings.job.filter not in (None, AUTO) and wants_filter(settings)
-    found = [measured(alone, coefficients)._replace(allowed=not forced)]
-    if not forced and not found[0].missed:
-        return found
+    first = measured(alone, coefficients)
+    if not forced and not first.missed:
+        return [first]
+    found = [first._replace(allowed=not wants_filter(settings))]
     try:
         behind = fitted(own, coefficients, alone.circuit, alone.point, always=not forced)
     except RfstageError as error:
@@ -232,25 +236,27 @@ def measured(made: Fitted, coefficients: NDArray[np.float64]) -> Candidate:
 
 def _extreme(part: PartStress, carrier: float) -> list[Extreme]:
     branch, omega, found = part.branch, 2 * math.pi * carrier, []
+
+    def note(words: str, beyond: bool) -> None:
+        found.append(Extreme(branch.name, f"{branch.name} {words}", beyond))
+
     coils = {"coil": ("value",), "coupled": ("value", "second"), "trap": ("value",)}.get(branch.kind, ())
     for attribute in coils:
         value = float(getattr(branch, attribute))
-        if value < LEADS[0] * LEAD:
-            found.append(Extreme(f"{branch.name} of {show(value, 'H')}: leads decide", value < LEADS[1] * LEAD))
+        if value < LEADS:
+            note(f"of {show(value, 'H')}: leads decide", value < STRAPS[0])
         elif value > LARGEST_COIL:
-            found.append(Extreme(f"{branch.name} of {show(value, 'H')}: a large coil", False))
+            note(f"of {show(value, 'H')}: a large coil", False)
     capacitance = _capacitance(branch)
     if capacitance is not None:
         reactance = 1 / (omega * capacitance)
-        ratio = reactance / (omega * LEAD)
-        if ratio < LEADS[0]:
-            found.append(Extreme(f"{branch.name} of {show(reactance, 'ohm')}: leads decide", ratio < LEADS[1]))
+        if reactance < omega * LEADS:
+            note(f"of {show(reactance, 'ohm')}: leads decide", reactance < omega * STRAPS[1])
         elif capacitance < SMALLEST_CAPACITOR[0]:
-            words = f"{branch.name} of {show(capacitance, 'F')}: strays decide"
-            found.append(Extreme(words, capacitance < SMALLEST_CAPACITOR[1]))
+            note(f"of {show(capacitance, 'F')}: strays decide", capacitance < SMALLEST_CAPACITOR[1])
     current = part.rms_current or 0.0
     if current > LARGEST_CURRENT[0]:
-        found.append(Extreme(f"{branch.name} carries {show(current, 'A')}", current > LARGEST_CURRENT[1]))
+        note(f"carries {show(current, 'A')}", current > LARGEST_CURRENT[1])
     return found
 
 

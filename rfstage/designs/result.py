@@ -225,7 +225,7 @@ def _cautions(
         made.circuit.network_resistance(point.load_resistance),
         made.circuit.input_capacitance,
         job.carrier,
-        [way.summary for way in ways[:WAYS_SHOWN]],
+        [way.summary for way in ways[:WAYS_SHOWN] if not way.spoils],
     )
     found += about_resonance(strongest_resonance_below(ladder.branches, settings.load, job.carrier))
     found += blocking_cautions(made.stage, point.load_resistance)

@@ -18,7 +18,7 @@ import math
 from rfstage.errors import ImpossibleError
 from rfstage.ladder import Branch
 from rfstage.matching.parts import capacitor, coil, four_figures, parallel_resistance
-from rfstage.matching.solving import asked_q, finish, positive, refuse_q
+from rfstage.matching.solving import asked_q, between_ends, finish, positive, refuse_q
 from rfstage.matching.task import Task
 
 
@@ -84,4 +84,4 @@ def solve(task: Task) -> tuple[Branch, ...]:
     refuse_q(task)
     q = asked_q(task, least_loaded_q(task.target, task.load))
     made = divider(task.target, task.load, carrier=task.carrier, loaded_q=q)
-    return positive(finish(task, made, asked_loaded_q=q))
+    return between_ends(task, lambda: positive(finish(task, made, asked_loaded_q=q)))

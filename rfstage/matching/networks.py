@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Sequence
 
 from rfstage.errors import ConvergenceError, ImpossibleError
@@ -59,8 +60,17 @@ def solve_network(
         raise ImpossibleError(
             f"network {request.network}: with {quality('coils', request.coil_q)} and "
             f"{quality('capacitors', request.capacitor_q)} no parts show {four_figures(wanted)} ohm to "
-            f"the device ({error}); raise tank.coil_q and tank.capacitor_q, or lower the loaded Q"
+            f"the device ({error}); {_cure(request)}"
         ) from None
+
+
+def _cure(request: Request) -> str:
+    """Return what may help where a network did not close."""
+    lossless = math.isinf(request.coil_q) and math.isinf(request.capacitor_q)
+    better = "" if lossless else "raise tank.coil_q and tank.capacitor_q, "
+    return (
+        f"{better}try another loaded Q, or network pi" if request.network != "pi" else f"{better}try another loaded Q"
+    )
 
 
 def shunt_reactance(

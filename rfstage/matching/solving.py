@@ -3,13 +3,15 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 
 from rfstage.errors import ConvergenceError, ImpossibleError
 from rfstage.ladder import Branch
 from rfstage.matching.exact import Free, close, free_values, with_losses
-from rfstage.matching.parts import four_figures
+from rfstage.matching.parts import four_figures, parallel_resistance
 from rfstage.matching.task import DEFAULT_LOADED_Q, DEFAULT_Q_MARGIN, Task
+
+NEAR_ENDS = 2.0  # ratio of resistances below which a tap may fall outside its coil
 
 
 def refuse_q(task: Task, *, also: str = "") -> None:
@@ -36,6 +38,7 @@ def asked_q(task: Task, least: float) -> float:
         raise ImpossibleError(
             f"tank.loaded_q: {asked:.6g} is too low for network {task.request.network} from "
             f"{four_figures(task.target)} ohm to {four_figures(task.load)} ohm; it must be above {least:.4g}"
+            + (", by some margin since the load is reactive" if task.load.imag else "")
         )
     return asked
 
@@ -76,6 +79,26 @@ def finish(
         free=free,
         asked_loaded_q=asked_loaded_q,
     )
+
+
+def between_ends(task: Task, closed: Callable[[], tuple[Branch, ...]]) -> tuple[Branch, ...]:
+    """Return what ``closed`` does for a network with a tap or joint between a higher and a lower resistance.
+
+    Raises
+    ------
+    ImpossibleError
+        If it does not, because the two are too near each other.
+    """
+    try:
+        return closed()
+    except ConvergenceError as error:
+        ends = (parallel_resistance(task.target), parallel_resistance(task.load))
+        if max(ends) >= NEAR_ENDS * min(ends):
+            raise
+        raise ImpossibleError(
+            f"network {task.request.network}: {four_figures(task.target)} ohm and {four_figures(task.load)} ohm are "
+            "too near each other for a tap between them; network pi joins them"
+        ) from error
 
 
 def positive(parts: Sequence[Branch]) -> tuple[Branch, ...]:

@@ -21,16 +21,15 @@ from __future__ import annotations
 import math
 from dataclasses import replace
 
-from rfstage.errors import ConvergenceError, ImpossibleError
+from rfstage.errors import ImpossibleError
 from rfstage.ladder import Branch
 from rfstage.matching.exact import Free
 from rfstage.matching.parts import four_figures, parallel_resistance
 from rfstage.matching.pi import behind_feed
-from rfstage.matching.solving import asked_q, finish, positive, refuse_q
+from rfstage.matching.solving import asked_q, between_ends, finish, positive, refuse_q
 from rfstage.matching.task import COUPLINGS, Task
 
 _BISECTIONS = 80
-NEAR_ENDS = 2.0  # ratio of resistances below which a tap may fall outside the coil
 _WIDEST = 1e4  # √(Lb/La): with the tap at 99.99 % of the turns there is no tap left
 
 
@@ -117,7 +116,7 @@ def tapped_coil(
     --------
     >>> parts = tapped_coil(2000, 50, carrier=7e6, coupling=0.5, tank_q=15)
     >>> [f"{b.name} {b.value:.4g}" for b in parts], f"{tap_share(parts[1]):.3f}"
-    (['C1 1.705e-10', 'L1 2.272e-06'], '0.216')
+    (['C1 1.705e-10', 'L1 2.253e-06'], '0.217')
     """
     down = parallel_resistance(wanted) >= parallel_resistance(load)
     top, joint = (wanted, load) if down else (load.conjugate(), wanted.conjugate())
@@ -173,13 +172,4 @@ def solve(task: Task) -> tuple[Branch, ...]:
     else:
         windings = (Free(place), Free(place, "second"))
         free = windings if asked is None else (Free(1 - place), *windings)
-    try:
-        return positive(finish(task, made, asked_loaded_q=asked, free=free))
-    except ConvergenceError as error:
-        ends = (parallel_resistance(task.target), parallel_resistance(task.load))
-        if max(ends) < NEAR_ENDS * min(ends):
-            raise ImpossibleError(
-                f"network tapped-coil: {four_figures(task.target)} ohm and {four_figures(task.load)} ohm are too near "
-                "each other for a tap inside the coil; network pi joins them"
-            ) from error
-        raise
+    return between_ends(task, lambda: positive(finish(task, made, asked_loaded_q=asked, free=free)))

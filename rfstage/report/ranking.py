@@ -8,6 +8,8 @@ from rfstage.designs.ranking import Candidate, Ranking
 from rfstage.report.judged import signed
 from rfstage.report.page import Cell, Look, columns, heading, note
 
+ROOMY = 90  # columns, from which the columns stand two apart
+
 
 def ranking_lines(ranking: Ranking, look: Look) -> list[Text]:
     """Return the table of networks, the reason of the first, and what was said of those refused."""
@@ -21,7 +23,7 @@ def ranking_lines(ranking: Ranking, look: Look) -> list[Text]:
     for place, candidate in enumerate(ranking.candidates):
         if candidate.fitted:
             rows.append(_row(candidate, chosen=place == ranking.chosen, judged=judged, filtered=filtered))
-    lines = heading(look, "Networks compared, by the book") + columns(look, rows)
+    lines = heading(look, "Networks compared, by the book") + columns(look, rows, gap=1 if look.width < ROOMY else 2)
     lines += note(look, f"{ranking.winner.name} is taken: {ranking.reason}.")
     for words in (extreme.words for extreme in ranking.winner.extremes):
         lines += note(look, f"extreme: {words}", hanging=2)
@@ -54,10 +56,14 @@ def _row(candidate: Candidate, *, chosen: bool, judged: bool, filtered: bool) ->
         margin = "none" if candidate.margin is None else signed(candidate.margin)
         cells.append(Cell(margin, style, right=True))
     beyond = sum(extreme.beyond for extreme in candidate.extremes)
-    extreme = f"{len(candidate.extremes)}{'!' * (beyond > 0)}" if candidate.extremes else "0"
+    extreme = f"{len({e.part for e in candidate.extremes})}{'!' * (beyond > 0)}"
     return [
         *cells,
-        Cell(f"{candidate.trough_dip:.3f}", style, right=True),
+        Cell(
+            f"{candidate.trough_dip:.3f}" if candidate.trough_dip < 1 else f"{candidate.trough_dip:.2g}",
+            style,
+            right=True,
+        ),
         Cell(f"{100 * candidate.efficiency:.1f} %", style, right=True),
         Cell(str(candidate.parts), style, right=True),
         Cell(extreme, style, right=True),
