@@ -20,6 +20,12 @@ settings.load_profile("suite")
 PROJECT = Path(__file__).resolve().parent.parent
 
 
+@pytest.fixture(autouse=True)
+def width_of_a_pipe(monkeypatch):
+    """A page in the same process is as wide as in a pipe, whatever the caller's terminal says."""
+    monkeypatch.delenv("COLUMNS", raising=False)
+
+
 @pytest.fixture
 def examples() -> Path:
     return PROJECT / "examples"
