@@ -21,8 +21,9 @@ from rfstage.files.job import read_jobs
 from rfstage.files.stagetext import stage_text
 from rfstage.fitting.capacitors import BLOCKING, FIXED, NEAR_ENOUGH, TRIMMED, choose_capacitor
 from rfstage.fitting.coils import HOT, choose_coil, tap_for, tapped, usual_wire
-from rfstage.fitting.fitted import NEAR, fit_parts
+from rfstage.fitting.fitted import fit_parts
 from rfstage.fitting.request import PartsRequest, request_of
+from rfstage.fitting.retrimming import NEAR
 from rfstage.parts import solenoid
 from rfstage.parts.preferred import preferred_range
 from rfstage.parts.stress import Burden, Margins

@@ -83,9 +83,8 @@ def run(words: Sequence[str]) -> int:
     fitting = None
     if found.parts:
         from rfstage.fitting.fitted import fit_parts
-        from rfstage.fitting.request import request_of
 
-        fitting = fit_parts(made, request_of(job))
+        fitting = fit_parts(made)
     stage = made.stage if fitting is None else fitting.stage
     if found.heat:
         from rfstage.cli.progress import progress
