@@ -123,7 +123,8 @@ def _to_settled_power(coefficients: NDArray[np.float64], made: Fitted, *, advise
         found = with_settled(assembled(coefficients, made, built, "settled", resistance, None), state)
         if settings.job.filter in (None, NONE):
             return found
-        short = np.array([settings.margin - (h.margin or 0.0) if h.limit else 0.0 for h in found.harmonics])
+        # an order that neither the pulse nor the steady state has is short of nothing
+        short = np.array([0.0 if h.margin is None else settings.margin - h.margin for h in found.harmonics])
         if short.max() <= 0:
             return found
         extra = _settled_excess(found, made, coefficients, extra, short)

@@ -31,10 +31,11 @@ LOSS_STEP = 0.02  # of the power: the same for what tank and filter lose
 DIPS = (0.10, 0.20, 0.50, 1.0)  # trough dips: the first costs 7 % of power, the second 18 %
 # What makes a part extreme, and what puts it beyond building; common practice, no source
 LEADS = 10.0 * 5e-9  # H: a coil, and the reactance of a capacitor, should be ten times a lead of 5 nH
-STRAPS = (3e-9, 2.0 * 1e-9)  # H: a coil below the first, a capacitor of less reactance than the second, is beyond it
+STRAPS = {"coil": 5e-9, "trap": 5e-9, "coupled": 15e-9}  # H: less can't be made of a strap, or of a turn that couples
+SHORTEST_LEAD = 2.0 * 1e-9  # H: a capacitor of less reactance than that is its leads
 SMALLEST_CAPACITOR = (5e-12, 1e-12)  # F, below which strays decide
 LARGEST_COIL = 300e-6  # H
-LARGEST_CURRENT = (15.0, 40.0)  # A rms
+LARGEST_CURRENT = (15.0, 30.0)  # A rms
 
 
 class Extreme(NamedTuple):
@@ -244,14 +245,14 @@ def _extreme(part: PartStress, carrier: float) -> list[Extreme]:
     for attribute in coils:
         value = float(getattr(branch, attribute))
         if value < LEADS:
-            note(f"of {show(value, 'H')}: leads decide", value < STRAPS[0])
+            note(f"of {show(value, 'H')}: leads decide", value < STRAPS[branch.kind])
         elif value > LARGEST_COIL:
             note(f"of {show(value, 'H')}: a large coil", False)
     capacitance = _capacitance(branch)
     if capacitance is not None:
         reactance = 1 / (omega * capacitance)
         if reactance < omega * LEADS:
-            note(f"of {show(reactance, 'ohm')}: leads decide", reactance < omega * STRAPS[1])
+            note(f"of {show(reactance, 'ohm')}: leads decide", reactance < omega * SHORTEST_LEAD)
         elif capacitance < SMALLEST_CAPACITOR[0]:
             note(f"of {show(capacitance, 'F')}: strays decide", capacitance < SMALLEST_CAPACITOR[1])
     current = part.rms_current or 0.0

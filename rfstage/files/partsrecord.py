@@ -58,6 +58,20 @@ def parts_record(fitting: Fitting) -> dict[str, Any]:
             }
             for w in fitting.wound
         ],
+        "rings": [
+            {
+                "branch": r.name,
+                "core": r.coil.core.name,
+                "turns": r.coil.turns,
+                "far_turns": r.far_turns,
+                "wire_diameter_m": r.coil.wire_diameter,
+                "inductance_h": r.coil.inductance,
+                "wanted_h": r.wanted,
+                "peak_flux_density_t": r.flux,
+                "flux_density_limit_t": r.limit,
+            }
+            for r in fitting.rings
+        ],
         "as_designed": dict(fitting.ideal),
         "impedance_ohm": complex_pair(fitting.impedance),
         "retrimmed_impedance_ohm": complex_pair(fitting.retrimmed),

@@ -10,8 +10,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import replace
+from functools import partial
 from typing import NamedTuple
 
 from rfstage.designs.design import Design
@@ -28,11 +29,12 @@ from rfstage.fitting.choosing import (
 from rfstage.fitting.coils import Winding
 from rfstage.fitting.request import PartsRequest, request_of
 from rfstage.fitting.retrimming import retrimmed
+from rfstage.fitting.rings import Ring, choke_ring, transformer_ring
 from rfstage.ladder import Branch, Ladder
 from rfstage.parts.stress import Burden
 from rfstage.quantity import show
 from rfstage.stage import BLOCKING as BLOCKER
-from rfstage.stage import PartData, Stage
+from rfstage.stage import CHOKE, PartData, Stage
 from rfstage.steady import SteadyState, settle
 
 TOLERANCE = 5.0  # % of fixed capacitors (common practice, no source)
@@ -52,12 +54,14 @@ class Fitting(NamedTuple):
 
     ``bought`` and ``wound`` by branch; ``ideal`` holds the branches that stayed ideal, with the reason; ``impedance``
     [ohm] at the device with the parts as chosen, ``retrimmed`` the same after the retrim; ``moved`` names the parts
-    that were set for it; ``state`` is the steady state and ``line`` that on the resistive line, None where the stage
+    that were set for it; ``rings`` are the choke and a transformer on ring cores;
+    ``state`` is the steady state and ``line`` that on the resistive line, None where the stage
     did not settle, which ``trouble`` then says.
     """
 
     bought: tuple[Bought, ...]
     wound: tuple[Winding, ...]
+    rings: tuple[Ring, ...]
     ideal: tuple[tuple[str, str], ...]
     impedance: complex
     retrimmed: complex
@@ -160,11 +164,13 @@ def _compared(
         chosen = as_settled(chosen, state, branches, borne, asked)
     stage = replace(stage, part_data=_part_data(chosen, branches))
     ideal = dict(chosen.ideal)
+    rings = () if state is None else tuple(_rings(state, branches, ideal))
     if trims[1] in ideal:
         ideal[trims[1]] += f"; it is to be {_size(next(b for b in branches if b.name == trims[1]))}"
     return Fitting(
         bought=tuple(chosen.bought.values()),
         wound=tuple(chosen.wound.values()),
+        rings=rings,
         ideal=tuple(ideal.items()),
         impedance=seen,
         retrimmed=complex(Ladder((*before, *branches)).impedance(made.job.carrier, made.settings.load_impedance)),
@@ -175,6 +181,20 @@ def _compared(
         compared=_comparisons(made, state, line),
         trouble=trouble,
     )
+
+
+def _rings(state: SteadyState, branches: Sequence[Branch], ideal: dict[str, str]) -> Iterator[Ring]:
+    """Yield choke and transformer on ring cores; what can't be had is said in ``ideal``."""
+    jobs: dict[str, Callable[[], Ring]] = {CHOKE: partial(choke_ring, CHOKE, state.stage.supply.choke, state)}
+    for branch in branches:
+        if branch.kind == "transformer":
+            jobs[branch.name] = partial(transformer_ring, branch, state)
+    for name, job in jobs.items():
+        ideal.pop(name, None)
+        try:
+            yield job()
+        except ImpossibleError as error:
+            ideal[name] = str(error)
 
 
 def _size(coil: Branch) -> str:

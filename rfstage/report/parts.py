@@ -9,7 +9,9 @@ from rich.text import Text
 from rfstage.fitting.capacitors import BLOCKING, TIGHT, Bought
 from rfstage.fitting.coils import HOT, Winding
 from rfstage.fitting.fitted import Comparison, Fitting
+from rfstage.fitting.rings import Ring
 from rfstage.parts.leads import check_short, self_resonance
+from rfstage.parts.toroid import FLUX_SOURCE
 from rfstage.quantity import show, show_complex
 from rfstage.report.judged import signed
 from rfstage.report.page import Cell, Look, columns, heading, note
@@ -43,9 +45,8 @@ def parts_lines(fitting: Fitting, look: Look) -> list[Text]:
     lines += heading(look, "Coils to wind")
     for winding in fitting.wound:
         lines += _coil_lines(winding, look)
-    dc = f" for {show(fitting.state.dc_current, 'A')} dc" if fitting.state else ""
-    choke = show(fitting.stage.supply.choke, "H")
-    lines += note(look, f"Lchoke: {choke}{dc}, not chosen here: rfstage coil winds one", hanging=2)
+    for ring in fitting.rings:
+        lines += _ring_lines(ring, look)
     for name, reason in fitting.ideal:
         lines += note(look, f"{name}: stays as designed: {reason}", hanging=2)
     return lines + _compared(fitting, look)
@@ -116,6 +117,18 @@ def _current_line(bought: Bought, look: Look) -> list[Text]:
         "or more side by side, or take one made for it"
     )
     return note(look, words, hanging=2, style="yellow")
+
+
+def _ring_lines(ring: Ring, look: Look) -> list[Text]:
+    coil = ring.coil
+    turns = f"{coil.turns} turns" if ring.far_turns is None else f"{coil.turns} : {ring.far_turns} turns"
+    return note(
+        look,
+        f"{ring.name}: {turns} on {coil.core.name}, wire to {show(coil.wire_diameter, 'm')}; "
+        f"{show(coil.inductance, 'H')} for the {show(ring.wanted, 'H')} wanted; {1e3 * ring.flux:.2g} mT peak, all "
+        f"orders and dc, of {1e3 * ring.limit:.2g} mT ({FLUX_SOURCE}); its core loss is not in the data",
+        hanging=2,
+    )
 
 
 def _coil_lines(winding: Winding, look: Look) -> list[Text]:
