@@ -142,11 +142,12 @@ class Ladder:
         self, frequency: ArrayLike, load: Load | ArrayLike, finish: Any, *, keep: bool = False
     ) -> tuple[Any, ...]:
         """Walk once, or block by block where samples times frequencies exceed what fits the cache."""
-        plain = isinstance(frequency, float | int) and isinstance(load, complex | float | int)
+        shape = _sample_shape(self.branches)
+        few = not shape or math.prod(shape) <= BLOCK_ELEMENTS
+        plain = few and isinstance(frequency, float | int) and isinstance(load, complex | float | int)
         f: Any = float(frequency) if plain else np.asarray(frequency, dtype=np.float64)  # type: ignore[arg-type]  # plain: a number
         z: Any = load.impedance(f) if hasattr(load, "impedance") else load
         z = complex(z) if plain else np.asarray(z, dtype=np.complex128)
-        shape = _sample_shape(self.branches)
         points = 1 if plain else f.size
         if not shape or math.prod(shape) * points <= BLOCK_ELEMENTS:
             return _one_walk(self.branches, f, z, finish, keep)

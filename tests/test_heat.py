@@ -280,7 +280,7 @@ GOOD = ("--carrier", "7.1MHz", "--power", "10W", "--angle", "120", "--supply", "
         (("design", *GOOD, "--heat", "--junction-to-case", "2W"), "--junction-to-case: read '2W', which is a power"),
         (("settle", f"{PROJECT}/{BEACON}", "--duty", "20%"), "--duty: is of no use without --heat"),
         (("settle", f"{PROJECT}/{BEACON}", "--heat", "--ambient", "160degC"), "--ambient: got 160 degC; allowed below"),
-        (("design", f"{PROJECT}/examples/tower-bands.toml", "--heat"), "--heat: is for one stage"),
+        (("design", f"{PROJECT}/examples/tower-bands.toml", "--heat"), "--heat: for one stage only"),
     ],
 )
 def test_bad_options_are_one_line_each(run, words, said):

@@ -520,3 +520,11 @@ def test_evaluation_leaves_its_inputs_as_they_were():
     Ladder(branches).walk(HARMONICS, 50)
     for branch, value in zip(branches, before, strict=True):
         np.testing.assert_array_equal(branch.value, value)
+
+
+def test_more_samples_than_a_block_with_a_plain_frequency_and_load():
+    many = Branch("C1", "shunt", "capacitor", np.full(9000, 1e-9))
+    one = complex(Ladder([replace(many, value=1e-9)]).impedance(7.1e6, 50.0))
+    z = Ladder([many]).impedance(7.1e6, 50.0)
+    assert z.shape == (9000,)
+    assert np.all(np.abs(z - one) <= 1e-14 * abs(one))

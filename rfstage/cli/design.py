@@ -141,12 +141,16 @@ def _several(found: Namespace, jobs: tuple[Job, ...], wanted: dict[str, str]) ->
         wanted = {**wanted, **dict.fromkeys(asked, "")}
         options = ", ".join(f"--{name}" for name in wanted)
         raise InputError(
-            f"{options}: is for one stage, and this job has several settings; give one --carrier, and a job "
+            f"{options}: for one stage only, and this job has several settings; give one --carrier, and a job "
             "without tank.variable"
         )
     from rfstage.designs.carriers import design_carriers
 
     tuned = design_carriers(jobs, textbook=found.textbook)
+    if found.textbook:
+        from rfstage.designs.design import with_settled
+
+        tuned = tuple(t._replace(design=with_settled(t.design)) for t in tuned)
 
     def record() -> dict[str, Any]:
         from rfstage.files.carrierrecord import carriers_record

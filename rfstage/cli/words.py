@@ -20,6 +20,7 @@ if TYPE_CHECKING:
 
 _MINUS_VALUE = re.compile(r"-(?:\.?\d|[jJ][\d.]|[jJ]$)")
 HELP_WIDTH = 78  # columns; to ask the terminal loads a dozen modules, at every start
+LONGEST_METAVAR = 40  # characters: an option with longer choices has them in its help instead
 _FILE = re.compile(r"\.s\d+p\Z", re.IGNORECASE)
 
 
@@ -62,11 +63,14 @@ class Parser(argparse.ArgumentParser):
         for field in fields:
             if field.option:
                 metavar = "|".join(field.choices) if field.choices else field.unit.upper() or "N"
+                about = field.help
+                if len(metavar) > LONGEST_METAVAR:
+                    metavar, about = field.option.rpartition("-")[2].upper(), f"{about}: {', '.join(field.choices)}"
                 group.add_argument(
                     field.option,
                     dest=field.name,
                     metavar=metavar if field.kind != "text" else "RULE",
-                    help=field.help.replace("%", "%%"),
+                    help=about.replace("%", "%%"),
                 )
                 self._fields.append(field)
         return group

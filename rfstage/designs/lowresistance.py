@@ -11,7 +11,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import replace
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -23,6 +23,7 @@ from rfstage.designs.textbook import Fitted, by_the_book
 from rfstage.errors import RfstageError
 from rfstage.job import Job
 from rfstage.quantity import show
+from rfstage.tankfields import SPECIAL, misfits
 
 RATIOS = (2.0, 3.0, 4.0)  # of the transformers tried
 ROOM = 1.1  # times the least resistance, that a higher supply should give
@@ -78,8 +79,6 @@ def ways_out(settings: Settings, coefficients: NDArray[np.float64], resistance: 
         Load resistance by the book [ohm].
     """
     job = settings.job
-    if settings.request.network != "pi":  # its special numbers would be of no use for a pi
-        job = replace(job, middle_resistance=None, coupling=None, tap=None, link=None)
     trials: list[tuple[str, Job]] = []
     if job.transformer is None:
         trials += [(f"a transformer 1:{n:g}", replace(job, transformer=n)) for n in RATIOS]
@@ -98,12 +97,20 @@ def ways_out(settings: Settings, coefficients: NDArray[np.float64], resistance: 
     return (*(made[k] for k in order), *(way for way in found if not way.candidate))
 
 
+def with_network(job: Job, network: str) -> Job:
+    """Return a job with a network, less the numbers that are of no use for it."""
+    useless: dict[str, Any] = {
+        field.name: None for field in SPECIAL if misfits({"network": network, field.name: getattr(job, field.name)})
+    }
+    return replace(job, network=network, **useless)
+
+
 def _tried(words: str, job: Job, settings: Settings, coefficients: NDArray[np.float64]) -> Way:
     """Return a way with the network of the design, or with a pi where that serves better."""
     found: list[Way] = []
     for network in dict.fromkeys((settings.request.network, "pi")):
         try:
-            own = with_defaults(replace(job, network=network))
+            own = with_defaults(with_network(job, network))
             made = Fitted(own, *by_the_book(own, coefficients), None)
         except RfstageError as error:
             found.append(Way(words, 0.0, 0.0, True, None, str(error)))
@@ -111,4 +118,6 @@ def _tried(words: str, job: Job, settings: Settings, coefficients: NDArray[np.fl
         at = made.point.load_resistance
         circuit, known = made.circuit, measured(made, coefficients)
         found.append(Way(words, at, circuit.network_resistance(at), circuit.is_low(at), known))
-    return min(found, key=lambda way: (way.candidate is None, way.still_low, way.candidate and way.candidate.grade))
+    return min(
+        found, key=lambda way: (way.candidate is None, way.spoils, way.still_low, way.candidate and way.candidate.grade)
+    )

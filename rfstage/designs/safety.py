@@ -142,7 +142,9 @@ def resonance_cautions(state: SteadyState) -> list[Caution]:
     cure = ""
     if found.damping is not None:
         d = found.damping
-        left = "nothing of it" if d.level is None else f"{d.level:+.0f} dB of it".replace("-", "−")
+        left = "nothing of it"
+        if d.level is not None:
+            left = f"it {abs(d.level):.0f} dB {'above' if d.level > 0 else 'below'} the carrier's level"
         cure = (
             f"put {show(d.resistance, 'ohm')} {DAMPER_PLACE} ({show(d.bypass, 'F')} or more), and a second choke of "
             f"{show(d.second_choke, 'H')} or more from there to the supply; that leaves {left} and costs "

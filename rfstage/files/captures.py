@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import warnings
 from pathlib import Path
+from tokenize import TokenError
 from typing import Any
 
 import numpy as np
@@ -94,7 +95,7 @@ def read_array(path: Path, *, sample_rate: float | None) -> Capture:
             array = np.load(path, mmap_mode="r", allow_pickle=False)
     except OSError as error:
         raise FileError(unreadable(name, error)) from None
-    except (ValueError, EOFError, SyntaxError, TypeError, OverflowError, MemoryError):
+    except (ValueError, EOFError, SyntaxError, TypeError, OverflowError, MemoryError, TokenError):
         raise FileError(f"{name}: is not a .npy file of plain numbers that can be read") from None
     if not isinstance(array, np.ndarray):
         raise FileError(f"{name}: is not a .npy file of one array")

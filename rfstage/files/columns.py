@@ -132,6 +132,9 @@ def _found(name: str, split: str, cells: list[str], before: list[str], line: int
             "'frequency (MHz),level (dBm)' or 'time (s),voltage (V)'"
         )
     at, names = above[-1] if above else (line - 1, units or [])
+    odd = next((cell for cell in names if not CELL.fullmatch(cell)), None)
+    if odd is not None and CELL.fullmatch(names[0]):
+        raise FileError(f"{name}: line {at}: {plain(odd[:ECHO])!r} is not a number (a bound is written as <-60)")
     interval, vertical = _settings(bare)
     columns = tuple(
         titled(text, f"{name}: line {at}", units[k] if units else "", vertical) for k, text in enumerate(names)

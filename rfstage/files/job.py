@@ -190,7 +190,8 @@ def _variable(raw: object, where: str, problems: list[str]) -> list[tuple[str, f
         if not unit:
             problems.append(f"{where}.{plain(name)}: a variable part is a capacitor or a coil, such as C1 or L1")
         elif not isinstance(ends, list) or len(ends) != 2:
-            problems.append(f"{where}.{plain(name)}: got {shown(ends)}; wanted a list of the least and the most")
+            got = f"a list of {len(ends)}" if isinstance(ends, list) else shown(ends)
+            problems.append(f"{where}.{plain(name)}: got {got}; wanted a list of the least and the most")
         else:
             end = Field("", "", "real", unit, 0, 1.0, True)
             try:

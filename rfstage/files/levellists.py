@@ -15,6 +15,7 @@ from rfstage.files.touchstone import read_network
 from rfstage.verify.levels import LevelList, Reading, Response
 
 LARGEST = 4_000_000  # bytes: more is no list
+MOST_DECIBELS = 400.0  # either way: far beyond any instrument, and ratios stay numbers
 SHOWN = 5  # problems told at once
 _UNIT = {"dbm": "dBm", "dbc": "dBc", "db": "dB"}
 
@@ -92,6 +93,8 @@ def _rows(path: Path, head: Head) -> list[tuple[float, float, bool]]:
                 raise InputError("'<' stands before the frequency; it belongs to the level")
             if frequency <= 0:
                 raise InputError(f"the frequency {cells[0][:ECHO]!r} is not above 0")
+            if abs(level) > MOST_DECIBELS:
+                raise InputError(f"got {cells[1][:ECHO]!r}; allowed -{MOST_DECIBELS:g} to {MOST_DECIBELS:g} decibels")
             rows.append((frequency, level, below))
         except InputError as error:
             problems.append(f"{name}: line {number}: {error}")

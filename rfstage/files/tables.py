@@ -73,7 +73,15 @@ def _in_plain_words(text: str, message: str) -> str:
 
 def _quotes_hint(line: str) -> str:
     value = re.fullmatch(r"\s*([\w-]+)\s*=\s*([\d.,+\-j]+\s*[A-Za-zµμΩΩ%°]+\w*)\s*(#.*)?", line)
-    return f'; a quantity needs quotes: {value[1]} = "{value[2].strip()}"' if value else ""
+    if value:
+        return f'; a quantity needs quotes: {value[1]} = "{_with_point(value[2].strip())}"'
+    number = re.fullmatch(r"\s*([\w-]+)\s*=\s*([+-]?\d+,\d+)\s*(#.*)?", line)
+    return f"; write the decimal point as in {number[1]} = {_with_point(number[2])}" if number else ""
+
+
+def _with_point(text: str) -> str:
+    """Return a quantity with its single comma, if it has one, as the decimal point."""
+    return text.replace(",", ".") if text.count(",") == 1 and "." not in text else text
 
 
 def kind_of(document: dict[str, Any]) -> str:

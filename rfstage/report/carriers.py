@@ -7,7 +7,8 @@ from collections.abc import Sequence
 from rich.text import Text
 
 from rfstage.cautions import FAILED_BLOCKING, Caution
-from rfstage.designs.carriers import PHASES, VSWRS, Matched, Tuned
+from rfstage.designs.carriers import Tuned
+from rfstage.designs.loads import PHASES, VSWRS, Matched, stretch
 from rfstage.quantity import exact_text, show, show_complex
 from rfstage.report.circuit import FAMILY, circuit
 from rfstage.report.judged import caution_lines, signed
@@ -127,7 +128,8 @@ def _dbc(level: float | None) -> str:
 
 def _map(tuned: Sequence[Tuned], look: Look) -> list[Text]:
     names = ", ".join(v.name for v in tuned[0].design.job.variable)
-    lines = heading(look, f"Loads matched with {names}, by VSWR and phase of the reflection")
+    line = show(tuned[0].design.settings.line.at_carrier.real, "ohm")
+    lines = heading(look, f"Loads matched with {names}, by VSWR on {line} and phase of the reflection")
     header = ["carrier", "VSWR", *(f"{phase}" for phase in PHASES)]
     rows = [[Cell(word, "dim", right=True) for word in header]]
     for t in tuned:
@@ -149,7 +151,7 @@ def _map(tuned: Sequence[Tuned], look: Look) -> list[Text]:
             lines += note(
                 look,
                 f"{show(t.design.job.carrier, 'Hz', 5)}: {len(changes)} of {len(t.loads)} not matched; furthest, VSWR "
-                f"{worst.vswr:g} at {worst.phase:g}°: {worst.change or 'no setting of these parts matches it'}",
+                f"{worst.vswr:g} at {worst.phase:g}°: {worst.change}",
                 hanging=2,
             )
         else:
@@ -159,8 +161,7 @@ def _map(tuned: Sequence[Tuned], look: Look) -> list[Text]:
 
 def _stretch(load: Matched, t: Tuned) -> float:
     """Return how far beyond its range the furthest part would have to go, as a ratio."""
-    ranges = {v.name: v for v in t.design.job.variable}
-    return max((max(v / ranges[n].most, ranges[n].least / v) for n, v in load.settings if n in ranges), default=0.0)
+    return stretch(load.settings, {v.name: v for v in t.design.job.variable})
 
 
 def _mark(load: Matched) -> Cell:

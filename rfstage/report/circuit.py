@@ -102,9 +102,10 @@ def _further_lines(look: Look, part: PartStress, rail: str, room: int) -> list[T
 
 
 def _quality(branch: Branch) -> str:
-    """Return the Q, or the series resistance that stands in its place."""
+    """Return the Q (of a transformer its core's), or the series resistance that stands in its place."""
     if branch.origin == "device":
         return "device"
     if branch.series_resistance is not None:
         return show(float(branch.series_resistance), "ohm")
-    return "lossless" if branch.q is None else f"{float(branch.q):.4g}"
+    q = branch.second_q if branch.kind == "transformer" else branch.q
+    return "lossless" if q is None else f"{float(q):.4g}"

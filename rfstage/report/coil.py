@@ -103,7 +103,7 @@ def _at_carrier(look: Look, coil: AirCoil, current: float | None) -> list[Text]:
     ]
     if current is not None:
         items.append((f"loss at {show(current, 'A')} rms", _known(coil.loss(current), "W")))
-    lines = heading(look, f"At {show(coil.carrier, 'Hz', 4)}, copper at {coil.temperature:g}°C")
+    lines = heading(look, f"At {show(coil.carrier, 'Hz', 4)}, copper at {coil.temperature:g} °C")
     lines += pairs(look, items)
     lines += note(
         look,

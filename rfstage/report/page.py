@@ -19,7 +19,7 @@ from rich.console import Console
 from rich.text import Text
 
 PIPE_WIDTH = 100
-_FIGURE = re.compile(r"(?<=\d) (?=(?:[fpnuµmkMGT]?(?:Hz|V|A|W|Ω|ohm|F|H|S|J|s)|dB|dBc|dBi|%|deg|°C|degC|K/W)\b)| (?=%)")
+_FIGURE = re.compile(r"(?<=\d) (?=(?:[fpnuµmkMGT]?(?:Hz|ohm|[VAWΩFHSJTms])|dB|dBc|dBi|%|deg|°C|degC|K/W)\b)| (?=%)")
 NO_BREAK = "\u00a0"  # keeps a figure with its label where a note wraps
 _ASCII = (
     ("µ", "u"),

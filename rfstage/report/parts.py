@@ -14,7 +14,8 @@ from rfstage.parts.leads import check_short, self_resonance
 from rfstage.parts.toroid import FLUX_SOURCE
 from rfstage.quantity import show, show_complex
 from rfstage.report.judged import signed
-from rfstage.report.page import Cell, Look, columns, heading, note
+from rfstage.report.page import NO_BREAK, Cell, Look, columns, heading, note
+from rfstage.report.ranking import ROOMY
 
 NEAR_RESONANCE = 2.0  # self-resonance over carrier: below it leads weigh more than tolerances
 BLOCKING_SHARE = 0.1  # of the load resistance, that a blocking capacitor may leave (common practice, no source)
@@ -31,7 +32,7 @@ def parts_lines(fitting: Fitting, look: Look) -> list[Text]:
     ]
     for bought in fitting.bought:
         rows += _bought_rows(bought)
-    lines += columns(look, rows)
+    lines += columns(look, rows, gap=1 if look.width < ROOMY else 2)
     for bought in fitting.bought:
         lines += _trimmer_line(bought, look)
         lines += _lead_line(bought, fitting, look)
@@ -133,7 +134,7 @@ def _ring_lines(ring: Ring, look: Look) -> list[Text]:
 
 def _coil_lines(winding: Winding, look: Look) -> list[Text]:
     coil = winding.coil
-    q = "Q unknown" if coil.unloaded_q is None else f"Q {coil.unloaded_q:.0f}"
+    q = f"Q{NO_BREAK}" + ("unknown" if coil.unloaded_q is None else f"{coil.unloaded_q:.0f}")
     resonance = "" if coil.self_resonance is None else f", self-resonance {show(coil.self_resonance, 'Hz')}"
     heat = "" if winding.loss is None else f" and {show(winding.loss, 'W')} of heat"
     lines = note(

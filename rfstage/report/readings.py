@@ -9,7 +9,7 @@ from rich.text import Text
 from rfstage.quantity import show
 from rfstage.report.page import Cell, Look, columns, heading, note
 from rfstage.report.retune import moved
-from rfstage.retuning.causes import EXPLAINED, Cause, Diagnosis, next_words
+from rfstage.retuning.causes import EXPLAINED, Cause, Diagnosis, next_words, untold_words
 from rfstage.retuning.explored import WIDEST
 from rfstage.retuning.reading import Reading
 
@@ -38,8 +38,14 @@ def causes_page(found: Diagnosis, look: Look) -> list[Text]:
             "parts off, another meter range, or a device that is not what its file says.",
             style="bold red",
         )
-    elif len(found.leading) > 1:
-        lines += note(look, f"The readings do not tell apart: {', '.join(cause.part for cause in found.leading)}.")
+    elif (untold := untold_words(found)) is not None:
+        lines += note(look, untold)
+        if found.next_reading is None:
+            lines += note(
+                look,
+                "No other setting of this stage would tell them apart on these meters: measure the parts, or give "
+                "those that can be set a trim range in the stage file.",
+            )
     words = None if sound else next_words(found)
     if words is not None:
         lines += heading(look, "The next reading") + note(look, words[0].upper() + words[1:] + ".")

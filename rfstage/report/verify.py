@@ -16,6 +16,7 @@ from rfstage.verify.verdict import DECISIONS, FAIL, PASS, UNDECIDED, OrderVerdic
 from rfstage.verify.verification import NEAR, Verification
 
 FAR = 6.0  # dB: a level further off its prediction is pointed at
+LOSSY = 1.5  # times the nominal loss: a part with more is pointed at
 OTHERS = 12  # readings listed that are no harmonic
 _STYLE = {PASS: "bold green", FAIL: "bold red", UNDECIDED: "bold yellow", None: ""}
 _UNIT = {"coil": "H", "capacitor": "F"}
@@ -222,7 +223,21 @@ def _tank(found: Verification, tank: TankFit, look: Look) -> list[Text]:
             f"{'its tolerance' if worst.stated else 'allowed (common practice; it states no tolerance)'}.",
             style="bold red",
         )
-    elif found.part_verdicts:
+    lossy = [part for part in tank.parts if _lossy(part)]
+    for part in lossy:
+        lines += note(
+            look,
+            f"{part.name} loses more than its file says: Q {part.q_estimated:.3g} where {part.q_nominal:.4g} is given.",
+            style="bold red",
+        )
+    open_ones = [v for v in found.part_verdicts if not v.beyond and abs(v.off) > v.tolerance]
+    for v in open_ones:
+        lines += note(
+            look,
+            f"{v.name} may be off: {signed(v.off)} % ± {v.uncertainty:.2g} % where {v.tolerance:g} % is allowed.",
+            style="bold yellow",
+        )
+    if worst is None and not lossy and not open_ones and found.part_verdicts:
         lines += note(look, "No part that the data tell is off.", style="bold green")
     setting = found.setting
     if setting is not None:
@@ -259,6 +274,14 @@ def _tank(found: Verification, tank: TankFit, look: Look) -> list[Text]:
             style="bold yellow",
         )
     return lines
+
+
+def _lossy(part: PartEstimate) -> bool:
+    """Return whether a part's loss is surely (k = 2) above `LOSSY` times its nominal loss."""
+    if part.q_estimated is None or part.q_standard_error is None or part.q_nominal is None:
+        return False
+    loss, error = 1 / part.q_estimated, part.q_standard_error / part.q_estimated**2
+    return loss - 2 * error > LOSSY / part.q_nominal
 
 
 def _part(part: PartEstimate, verdict: PartVerdict | None) -> list[Cell]:

@@ -21,15 +21,15 @@ from numpy.typing import NDArray
 
 from rfstage.errors import ImpossibleError, OutOfRangeError
 from rfstage.quantity import show
-from rfstage.retuning.explaining import TABLE_ERROR, Fit, explain, refined
+from rfstage.retuning.explaining import APART, TABLE_ERROR, Fit, explain, refined
 from rfstage.retuning.explored import Explored, meter_logs, suspects
 from rfstage.retuning.reading import Implied, Reading, as_set, check_readings, implied
 from rfstage.stage import Stage
 from rfstage.stagevalues import fitted_value, unit_of, with_value
 
 METER_ERROR = 0.01  # relative, of each meter: one per cent
-APART = 6.0  # cost between two groups: chi-squared of two degrees of freedom at 95 %
 EXPLAINED = 3.0  # misfit beyond which no single part explains the readings
+USELESS = 1.0  # meter errors: a next reading that differs by less from all of them tells nothing
 TOLD_APART = 3.0  # meter errors: a next reading that differs by less between two causes will hardly tell them apart
 
 Array = NDArray[np.float64]
@@ -123,8 +123,12 @@ def causes(
         raise OutOfRangeError("meter_error", meter_error, "from 0.001 to 0.5")
     if explored is None:
         explored = Explored(stage)
-    fits = [explain(explored, suspect, readings, meter_error) for suspect in suspects(stage, readings)]
-    fits = [fit for fit in fits if math.isfinite(fit.cost)]
+    fits = [
+        fit
+        for suspect in suspects(stage, readings)
+        for fit in explain(explored, suspect, readings, meter_error)
+        if math.isfinite(fit.cost)
+    ]
     if not fits:
         raise ImpossibleError(
             "nothing of this stage explains these readings: it gives no output at these settings "
@@ -134,7 +138,7 @@ def causes(
     close = min(fit.cost for fit in fits) + APART + 2 * len(readings) * (TABLE_ERROR / meter_error) ** 2
     fits = [refined(fit, explored, readings, meter_error) if fit.cost <= close else fit for fit in fits]
     fits.sort(key=lambda fit: (fit.cost, fit.suspect))
-    found = _grouped(stage, fits)
+    found = _grouped(stage, _worth_telling(fits))
     return Diagnosis(
         stage=stage,
         readings=tuple(readings),
@@ -144,6 +148,15 @@ def causes(
         causes=found,
         next_reading=_next_reading(stage, readings, found, meter_error),
     )
+
+
+def _worth_telling(fits: Sequence[Fit]) -> list[Fit]:
+    """Return the best value of each suspect, and its others where they are in the leading group."""
+    told: list[Fit] = []
+    for fit in fits:
+        if fit.cost <= fits[0].cost + APART or all(fit.suspect != other.suspect for other in told):
+            told.append(fit)
+    return told
 
 
 def _grouped(stage: Stage, fits: Sequence[Fit]) -> tuple[Cause, ...]:
@@ -160,7 +173,10 @@ def _grouped(stage: Stage, fits: Sequence[Fit]) -> tuple[Cause, ...]:
 
 
 def _next_reading(stage: Stage, readings: Sequence[Reading], found: Sequence[Cause], meter_error: float) -> Next | None:
-    """Return the setting at which the first cause shows the greatest least difference from all others of its group."""
+    """Return the setting at which the first cause shows the greatest least difference from all others of its group.
+
+    Where no setting tells it from all, the one that tells it from most; None where none tells it from any.
+    """
     leading = [cause for cause in found if cause.group == 1]
     if len(leading) < 2 or leading[0].misfit > EXPLAINED:
         return None
@@ -171,10 +187,12 @@ def _next_reading(stage: Stage, readings: Sequence[Reading], found: Sequence[Cau
         for cause in leading
     ]
     logs = meter_logs(tried).reshape(2, len(settings), len(leading))
-    apart = np.sqrt((((logs[:, :, 1:] - logs[:, :, :1]) / meter_error) ** 2).sum(axis=0)).min(axis=1)
-    apart = np.where(np.isfinite(apart), apart, -1.0)
+    each = np.sqrt((((logs[:, :, 1:] - logs[:, :, :1]) / meter_error) ** 2).sum(axis=0))
+    apart = np.where(np.isfinite(each).all(axis=1), each.min(axis=1), -1.0)
     best = int(np.argmax(apart))
-    if apart[best] < 0:
+    if apart[best] < TOLD_APART:
+        best = int(np.argmax(np.where(apart >= 0, np.minimum(each, TOLD_APART).sum(axis=1), -1.0)))
+    if apart[best] < 0 or each[best].max() < USELESS:
         return None
     expected = tuple(
         (cause.part, float(np.exp(logs[0, best, k])), float(np.exp(logs[1, best, k])))
@@ -231,10 +249,33 @@ def next_words(diagnosis: Diagnosis) -> str | None:
         acts.append(f"lower the supply to {show(setting.supply, 'V', 2)}")
     if setting.drive is not None and setting.drive != last.drive:
         acts.append(f"lower the drive to {show(setting.drive, 'V', 2)} peak")
+    names = [_name(diagnosis, cause) for cause in diagnosis.leading]
     shown = "; ".join(
-        f"{show(current, 'A')} and {show(power, 'W')} if it is {part}" for part, current, power in found.expected
+        f"{show(current, 'A')} and {show(power, 'W')} if it is {name}"
+        for name, (_, current, power) in zip(names, found.expected, strict=True)
     )
     words = f"{' and '.join(acts)}, then read dc current and output: {shown}"
-    if found.apart < TOLD_APART:
-        words += f" (only {found.apart:.1f} meter errors apart: better meters tell more)"
+    _, first_current, first_power = found.expected[0]
+    alike = [
+        name
+        for name, (_, current, power) in zip(names, found.expected, strict=True)
+        if math.hypot(math.log(current / first_current), math.log(power / first_power))
+        < TOLD_APART * diagnosis.meter_error
+    ]
+    if len(alike) > 1:
+        words += f" (that hardly tells {alike[0]} from {', '.join(alike[1:])})"
     return words
+
+
+def _name(diagnosis: Diagnosis, cause: Cause) -> str:
+    """Return a cause by its part, with its value where the leading group has that part twice."""
+    twice = [other.part for other in diagnosis.leading].count(cause.part) > 1
+    return f"{cause.part} at {show(cause.estimated, cause.unit)}" if twice else cause.part
+
+
+def untold_words(diagnosis: Diagnosis) -> str | None:
+    """Return in words which causes the readings do not tell apart, or None where one is left."""
+    if len(diagnosis.leading) < 2:
+        return None
+    names = ", ".join(_name(diagnosis, cause) for cause in diagnosis.leading)
+    return f"The readings do not tell apart: {names}."

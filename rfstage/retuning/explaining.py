@@ -17,6 +17,7 @@ from rfstage.retuning.reading import Reading
 
 SPREAD = 0.3  # of the logarithm of a factor, in the plausibility
 TABLE_ERROR = 0.01  # relative: what a column is off between its points where the device comes to its knee, a corner
+APART = 6.0  # cost between two groups: chi-squared of two degrees of freedom at 95 %
 NEAR = 0.006  # logarithm of a factor, to either side: settled afresh for the last word
 MOVES = 4
 
@@ -41,16 +42,33 @@ def implausibility(log: Array | float) -> Array:
     return np.asarray(2 * np.log1p((np.asarray(log) / SPREAD) ** 2), dtype=np.float64)
 
 
-def explain(explored: Explored, suspect: str, readings: Sequence[Reading], meter_error: float) -> Fit:
-    """Return the best value of a suspect by its columns."""
+def explain(explored: Explored, suspect: str, readings: Sequence[Reading], meter_error: float) -> list[Fit]:
+    """Return the best value of a suspect by its columns, and what explains the readings too beyond worse values.
+
+    A tank that is off tune the one way or the other may show the meters the same: then one part has two values.
+    """
     rows = [
         (explored.column(reading, suspect).along(row), value) for reading in readings for row, value in _read(reading)
     ]
     square = _square(rows, meter_error)
     if not np.isfinite(square).any():
-        return Fit(suspect, 0.0, math.inf, math.inf, math.inf)
+        return [Fit(suspect, 0.0, math.inf, math.inf, math.inf)]
     as_built = math.sqrt(float(square[FINE.size // 2]) / len(rows))
-    return _best(suspect, FINE, square, len(rows), as_built)
+    cost = square + implausibility(FINE)
+    best = int(np.argmin(cost))
+    places = [best, *_beyond(cost, best, 1), *_beyond(cost, best, -1)]
+    return [_bottom(suspect, FINE, cost, k, len(rows), as_built) for k in places]
+
+
+def _beyond(cost: Array, best: int, step: int) -> list[int]:
+    """Return where the cost is least on one side of the best, behind a rise of `APART` above it; none at an end."""
+    side = cost[best::step]
+    with np.errstate(invalid="ignore"):
+        behind = np.isfinite(side) & (np.maximum.accumulate(side) >= side + APART)
+    if not behind.any():
+        return []
+    k = int(np.argmin(np.where(behind, side, math.inf)))
+    return [best + step * k] if k + 1 < side.size and math.isfinite(side[k + 1]) else []
 
 
 def refined(fit: Fit, explored: Explored, readings: Sequence[Reading], meter_error: float) -> Fit:
@@ -88,7 +106,11 @@ def _square(rows: Sequence[tuple[Array, float]], meter_error: float) -> Array:
 
 def _best(suspect: str, x: Array, square: Array, count: int, as_built: float) -> Fit:
     cost = square + implausibility(x)
-    at, least = _vertex(x, cost, int(np.argmin(cost)))
+    return _bottom(suspect, x, cost, int(np.argmin(cost)), count, as_built)
+
+
+def _bottom(suspect: str, x: Array, cost: Array, k: int, count: int, as_built: float) -> Fit:
+    at, least = _vertex(x, cost, k)
     left = max(0.0, least - float(implausibility(at)))
     return Fit(suspect, at, math.sqrt(left / count), least, as_built)
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 from typing import NamedTuple
@@ -23,6 +24,8 @@ from rfstage.verify.verdict import UNDECIDED, OrderVerdict, decide, margin_of, o
 
 SHOWN = 10  # the highest order that a verdict asks for
 NEAR = 10.0  # dB: an order predicted so near its limit must be measured
+FAR_POWER = 3.0  # dB: a carrier measured further off the prediction is pointed at
+LOST_POWER = 10.0  # dB: further off, the settings are doubted, and a limit that goes by the power with them
 REACTIVE = 0.05  # of the resistance: a load with more reactance is no resistive line
 AMPERES = "A"
 
@@ -141,6 +144,7 @@ def verify(state: SteadyState, measurements: Sequence[Measurement], asked: Asked
     stage, setup = state.stage, asked.setup
     measured: list[tuple[str, Measured]] = []
     sources, remarks = [], []
+    spoilt: set[str] = set()  # files whose levels are the instrument's own
     pulse: CurrentPulse | None = None
     tank: TankFit | None = None
     for one in measurements:
@@ -175,11 +179,19 @@ def verify(state: SteadyState, measurements: Sequence[Measurement], asked: Asked
                         one, channel, carrier=stage.carrier, load=stage.load, line=line, setup=setup
                     )
                     measured.append((one.name, levels))
+                    if found.clipped:
+                        spoilt.add(one.name)
                     sources.append(Source(one.name, f"voltage capture, channel {channel.name}", found))
     clipped = any(s.analysed is not None and s.analysed.clipped for s in sources)
     powers = [m.power for _, m in measured if m.power is not None]
     power = powers[0] if powers else state.output_power
     carrier = measured[0][1].carrier if measured else stage.carrier
+    off = 10 * math.log10(power / state.output_power) if powers and power > 0 and state.has_output else 0.0
+    if abs(off) > FAR_POWER:
+        remarks.append(
+            f"the carrier's power is {abs(off):.3g} dB {'above' if off > 0 else 'below'} the predicted: are "
+            "attenuation, sampler and probe told as they were?"
+        )
     needed = asked.limit.suppression(carrier, power) if asked.limit is not None and power > 0 else None
     limit = None if needed is None else -needed
     predicted = {h.order: h.level for h in state.harmonics}
@@ -189,7 +201,7 @@ def verify(state: SteadyState, measurements: Sequence[Measurement], asked: Asked
             predicted.get(level.order),
             limit,
             margin_of(level, limit),
-            decide(level, limit, decision=asked.decision),
+            None if limit is None else UNDECIDED if name in spoilt else decide(level, limit, decision=asked.decision),
             name,
         )
         for name, m in measured
@@ -211,7 +223,14 @@ def verify(state: SteadyState, measurements: Sequence[Measurement], asked: Asked
             f"the stage's load is {show_complex(z)}: a limit is meant in a resistive line, and a reactive load flatters"
         )
     parts = part_verdicts(tank.parts, stage.part_data, decision=asked.decision) if tank else ()
-    loose = limit is not None and (bool(near) or clipped or any(o.level > limit for o, _ in others) or not orders)
+    # where the limit goes by the power, a power so far off may be a setting not told, and the limit wrong with it
+    strict = (
+        asked.limit.suppression(carrier, state.output_power) if asked.limit is not None and state.has_output else None
+    )
+    lenient = needed is not None and strict is not None and strict > needed and abs(off) > LOST_POWER
+    loose = limit is not None and (
+        bool(near) or clipped or lenient or any(o.level > limit for o, _ in others) or not orders
+    )
     verdicts = [v.verdict for v in orders] + [p.verdict for p in parts]
     if loose and measured:
         verdicts.append(UNDECIDED)
