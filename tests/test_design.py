@@ -285,6 +285,33 @@ def test_blocking_capacitor_has_at_most_a_tenth_of_the_load_resistance():
         assert 1 / (2 * math.pi * d.job.carrier * float(blocking.value)) <= 0.1 * d.point.load_resistance * (1 + 1e-9)
 
 
+@pytest.mark.parametrize("network", ["capacitive-divider", "t", "l", "tapped-coil"])
+def test_blocking_capacitor_is_a_short_to_the_coil_that_tunes_the_output_capacitance_out(network):
+    # what flows between coil and output capacitance passes it: a tenth of that capacitance's reactance too
+    # SOURCE: common practice, no source.
+    d = designed(**{**TUBE, "carrier": 24.9e6, "network": network, "output_capacitance": 13.6e-12})
+    blocking = next(b for b in branches_of(d) if b.name == "Cblock")
+    assert float(blocking.value) >= 10 * 13.6e-12 * (1 - 1e-9)
+
+
+@pytest.mark.parametrize("asked", [{}, {"loaded_q": 12.0}])
+def test_divider_closes_where_the_output_capacitance_takes_much_of_the_q(asked):
+    # 2.2 kohm with 4.7 of Q in the output capacitance; the divider alone wants √(2200/50 − 1) = 6.6
+    tube = {**TUBE, "carrier": 24.9e6, "power": 641.4, "conduction_angle": 100.0, "supply": 2000.0}
+    d = designed(**{**tube, "network": "capacitive-divider", "output_capacitance": 13.6e-12, **asked})
+    assert broken_invariants(d) == []
+    assert d.tank.loaded_q == pytest.approx(asked.get("loaded_q", 13.3), abs=0.3 if not asked else 1e-6)
+
+
+def test_an_order_that_neither_pulse_nor_steady_state_has_wants_no_filter():
+    # class B has no odd harmonics, nor has it any in a line in which the voltage stays above the knee
+    job = {**FET, "carrier": 18.1e6, "power": 224.4, "output_capacitance": 73.5e-12, "network": "tapped-coil"}
+    d = design(Job(**job, load=121.81 + 54.44j, limit="us-amateur", filter="auto"))
+    assert d.harmonics[1].order == 3
+    assert d.harmonics[1].margin is None
+    assert min(h.margin for h in d.harmonics if h.margin is not None) >= 3.0
+
+
 def test_choke_has_ten_times_the_load_resistance_where_that_is_small():
     # SOURCE: common practice, no source.
     d = designed(**BASE)

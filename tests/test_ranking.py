@@ -550,3 +550,13 @@ def test_any_job_ends_in_a_sound_design_or_in_an_error_for_people(job):
         )
     if job.get("filter") == "auto" and isinstance(made.filter, Filter):
         assert made.worst.margin >= MARGIN - 1e-6
+
+
+def test_current_of_both_sides_of_a_coil_counts():
+    # with the device at the tap a tenth of the coil's current passes there; what circulates in it heats it
+    tapped = {"carrier": 14.2e6, "power": 100.0, "conduction_angle": 140.0, "supply": 50.0, "family": "fet"}
+    found = book(**tapped, network="auto")
+    one = next(c for c in found.ranking.candidates if c.name == "tapped-coil")
+    part = next(p for p in design(Job(**tapped, network="tapped-coil"), textbook=True).tank.parts if p.far_current)
+    assert part.rms_current < 15.0 < part.far_current < 30.0
+    assert any(e.part == "L1" and "carries" in e.words for e in one.extremes)

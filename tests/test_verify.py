@@ -17,10 +17,12 @@ import rfstage
 from rfstage.errors import ImpossibleError, InputError
 from rfstage.files.captures import read_measurement
 from rfstage.files.stagetext import stage_text
+from rfstage.ladder import Ladder
 from rfstage.limits import limit_named
 from rfstage.load import SeriesLoad
 from rfstage.verify.capture import Capture, Channel
 from rfstage.verify.levels import LevelList, Reading, Setup
+from rfstage.verify.scattering import two_port
 from rfstage.verify.verdict import FAIL, GUARDED, PASS, SIMPLE, UNDECIDED
 from rfstage.verify.verification import Asked, verify
 
@@ -278,6 +280,42 @@ def test_a_clipped_capture_can_not_pass(state):
     assert verify(state, [Capture("w", 1e-9, (Channel("CH1", "V", volts),))], asked).verdict == PASS
     flat = np.clip(volts, -95, 95)
     assert verify(state, [Capture("w", 1e-9, (Channel("CH1", "V", flat),))], asked).verdict == UNDECIDED
+
+
+def test_a_clipped_capture_can_not_fail_a_stage_either(state):
+    volts = np.clip(np.round(100 * np.cos(2 * np.pi * 7.1013e6 * 1e-9 * np.arange(4000))), -60, 60)
+    found = verify(
+        state, [Capture("w", 1e-9, (Channel("CH1", "V", volts),))], Asked(limit_named("43dB"), SIMPLE, Setup())
+    )
+    assert found.orders[1].measured.level > -43
+    assert {v.verdict for v in found.orders} == {UNDECIDED}
+    assert found.verdict == UNDECIDED
+
+
+def test_a_carrier_far_off_the_predicted_power_is_pointed_at_and_no_limit_is_had_by_it(state):
+    # 30 dB of attenuation not told: the limit of 43 + 10 log P would be 30 dB easier
+    readings = LevelList("list", "dBm", (Reading(7.1e6, 8.8), Reading(14.2e6, -21.2), Reading(21.3e6, -60.0)))
+    asked = Asked(limit_named("43+10log"), GUARDED, Setup())
+    found = verify(state, [readings], asked)
+    assert found.verdict == UNDECIDED
+    assert any("30 dB below the predicted" in remark for remark in found.remarks)
+    told = verify(state, [readings], asked._replace(setup=Setup(attenuation=30.0)))
+    assert told.verdict == FAIL
+    assert not told.remarks
+
+
+def test_a_lossy_part_is_named(bench, tmp_path):
+    stage = rfstage.load_stage(STAGE)
+    parts = tuple(replace(b, q=40.0) if b.name == "C2" else b for b in stage.branches)
+    frequencies = np.linspace(2e6, 20e6, 91)
+    found = two_port(Ladder((stage.feed[-1], *parts)), frequencies, 50.0)
+    rows = [
+        f"{f} " + " ".join(f"{s.real} {s.imag}" for s in m.T.flatten()) for f, m in zip(frequencies, found, strict=True)
+    ]
+    (tmp_path / "lossy.s2p").write_text("# Hz S RI R 50\n" + "\n".join(rows) + "\n")
+    page = bench("verify", "examples/beacon-as-built.toml", "lossy.s2p").stdout
+    assert "C2 loses more than its file says: Q 40 where 1000 is given" in page
+    assert "No part that the data tell is off" not in page
 
 
 def test_channels_are_told_by_unit_and_by_the_shunt(state):

@@ -121,6 +121,8 @@ BAD = [
     (LEVELS + "<21.3,-50\n", "line 4: '<' stands before the frequency"),
     (LEVELS + "21.3 dBm,-50\n", "line 4: '21.3 dBm' is not in MHz"),
     (LEVELS + "21.3,-50 dBc\n", "line 4: '-50 dBc' is not in dBm"),
+    (LEVELS + "21.3,1e300\n", "line 4: got '1e300'; allowed -400 to 400 decibels"),
+    ("frequency (MHz),level (dBm)\n7.1,below 3\n14.2,-43.1\n", "line 2: 'below 3' is not a number"),
     ("frequency (MHz);level (dBm)\n7,1;-1,2\n", "line 2: has decimal commas; write decimal points"),
     ("frequency (MHz),level (dBm)\n7,1,-1,2\n", r"line 2: .*a decimal comma would do that"),
     (LEVELS + "21,3,-50\n", r"line 4: has 3 columns; wanted 2, .*a decimal comma"),
@@ -250,6 +252,17 @@ class Bomb:
 
     def __reduce__(self):
         return (os.mkdir, (self.path,))
+
+
+@pytest.mark.parametrize(("old", "new"), [(b"(64", b"(6["), (b"'<f8'", b"'<f8"), (b"False", b"F\x00lse"), (b"}", b"(")])
+def test_a_broken_head_of_an_array_is_a_message(tmp_path, old, new):
+    held = io.BytesIO()
+    np.save(held, np.zeros((64, 2)))
+    raw = held.getvalue()
+    broken = raw.replace(old, new)[: len(raw)].ljust(len(raw), b" ")
+    assert broken != raw
+    with pytest.raises(FileError, match=r"a\.npy: is not a \.npy file of plain numbers that can be read"):
+        read(tmp_path, broken, "a.npy")
 
 
 @pytest.mark.parametrize("name", ["a.npy", "a.csv", "a.s1p", "a.s2p", "a.txt"])

@@ -11,6 +11,7 @@ from hypothesis import strategies as st
 from verifysets import CARRIER, INTERVAL, K95, LOAD, ORDERS, trial
 
 from rfstage.errors import InputError
+from rfstage.load import SeriesLoad
 from rfstage.pulse import pulse_coefficients
 from rfstage.verify.capture import Capture, Channel, analysed, capture_levels, folded_orders
 from rfstage.verify.currents import current_pulse, expected_ratios
@@ -281,6 +282,19 @@ def test_orders_that_fold_onto_others_are_named():
     assert any(
         "7 onto 2" in r for r in levels_of(wave([0, 1.0, 0.1], 7.1e6, 3000, interval), interval=interval)[0].remarks
     )
+
+
+def test_a_line_that_is_an_order_folded_back_is_said_to_be():
+    # 100 MHz of sampling: order 4 of 14.2003 MHz, 56.8 MHz, is seen at 43.2 MHz
+    x = 2 * np.pi * 14.2003e6 * np.arange(8000) / 100e6
+    random = np.random.default_rng(3)
+    volts = 70 * np.cos(x) + 1.5 * np.cos(4 * x) + 0.01 * random.standard_normal(x.size)
+    one = Channel("CH1", "V", volts)
+    setup = Setup(uncertainty=1.0)
+    found, _ = capture_levels(
+        Capture("w", 1e-8, (one,)), one, carrier=14.2e6, load=SeriesLoad(50.0, carrier=14.2e6), line=50.0, setup=setup
+    )
+    assert any("43.199 MHz lies where order 4 folds back" in remark for remark in found.remarks)
 
 
 def test_a_clipped_capture_says_so():

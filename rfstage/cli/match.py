@@ -76,12 +76,19 @@ def run(words: Sequence[str]) -> int:
     def record() -> dict[str, Any]:
         from rfstage.files.records import match_record
 
-        return match_record(made.tank, made.transfer)
+        return match_record(made.tank, made.transfer, made.continued)
 
     def page(look: Look) -> list[Text]:
         from rfstage.report.small import match_page
 
-        return match_page(look, tank=made.tank, load=made.load, carrier=values["carrier"], transfer=made.transfer)
+        return match_page(
+            look,
+            tank=made.tank,
+            load=made.load,
+            carrier=values["carrier"],
+            transfer=made.transfer,
+            continued=made.continued,
+        )
 
     output(found, record, page)
     return 0

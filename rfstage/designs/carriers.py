@@ -25,6 +25,7 @@ from rfstage.job import Job, Variable
 from rfstage.kinds import unit
 from rfstage.pulse import pulse_coefficients
 from rfstage.quantity import show
+from rfstage.stage import BLOCKING
 from rfstage.tankfields import AUTO
 
 _ROUNDS = 40  # of the search for the Q that a capacitor at its end leaves
@@ -123,7 +124,7 @@ def _of_one_network(jobs: Sequence[Job], textbook: bool) -> list[Design]:
     """Return the designs of all carriers with the first network that serves them all."""
     first = jobs[0]
     if first.network not in (None, AUTO):
-        return [design(job, textbook) for job in jobs]
+        return _alike(jobs, textbook)
     from rfstage.designs.ranking import rank
 
     settings = with_defaults(first)
@@ -133,11 +134,19 @@ def _of_one_network(jobs: Sequence[Job], textbook: bool) -> list[Design]:
     failed = []
     for network in dict.fromkeys(made.settings.request.network for made in ranking.allowed):
         try:
-            return [design(with_network(job, network), textbook) for job in jobs]
+            return _alike([with_network(job, network) for job in jobs], textbook)
         except RfstageError as error:
             failed.append(f"{network}: {error}")
     best = f"the best for {show(first.carrier, 'Hz', 5)}, {failed[0]}"
     raise ImpossibleError(f"no network serves all the carriers; {best}")
+
+
+def _alike(jobs: Sequence[Job], textbook: bool) -> list[Design]:
+    """Return the designs of all carriers with the choke and the blocking capacitor of the lowest."""
+    first = design(jobs[0], textbook)
+    blocking = next(float(b.value) for b in first.stage.branches if b.name == BLOCKING)
+    choke = first.stage.supply.choke
+    return [first, *(design(replace(job, choke=choke, blocking=blocking), textbook) for job in jobs[1:])]
 
 
 def _at_its_end(made: Design, textbook: bool) -> tuple[Design, str]:
@@ -180,4 +189,7 @@ def _settings(made: Design, largest: dict[str, float]) -> tuple[Setting, ...]:
         variable = ranges.get(branch.name)
         within = None if variable is None else variable.holds(value)
         found.append(Setting(branch.name, of, value, turns, variable, within))
+        if branch.kind == "coupled":
+            second = "below tap" if branch.tap else "link"
+            found.append(Setting(f"{branch.name} {second}", of, float(branch.second), None, None, None))
     return tuple(found)

@@ -19,7 +19,7 @@ from rfstage.designs.settings import Settings
 from rfstage.designs.textbook import Circuit, Fitted, by_the_book
 from rfstage.errors import ImpossibleError
 from rfstage.filters.choose import choose_filter
-from rfstage.harmonics import decibels, load_powers
+from rfstage.harmonics import ABSENT, decibels, load_powers
 from rfstage.ladder import Branch, Ladder
 from rfstage.matching.tank import tank_efficiency
 from rfstage.operating import OperatingPoint
@@ -49,9 +49,16 @@ def line_levels(
 ) -> Array:
     """Return the textbook's levels [dBc] in the resistive line, orders 2 to the highest shown."""
     orders = np.arange(1.0, settings.highest_order + 1)
-    currents = coefficients[1 : settings.highest_order + 1] * point.peak_current
-    powers = load_powers(Ladder(circuit.branches), settings.line, settings.job.carrier * orders, currents)
+    powers = load_powers(
+        Ladder(circuit.branches), settings.line, settings.job.carrier * orders, _currents(settings, point, coefficients)
+    )
     return decibels(powers)[1:]
+
+
+def _currents(settings: Settings, point: OperatingPoint, coefficients: NDArray[np.float64]) -> Array:
+    """Return the textbook's peak currents [A] of orders 1 to the highest shown; what the pulse has not is 0."""
+    own = coefficients[1 : settings.highest_order + 1]
+    return np.asarray(np.where(np.abs(own) > ABSENT * abs(own[0]), own, 0.0) * point.peak_current)
 
 
 def fitted(
@@ -132,7 +139,7 @@ class _Margins:
         self.frequencies = settings.job.carrier * np.arange(1.0, settings.highest_order + 1)
         before = Ladder((*circuit.feed, *circuit.tank))
         self.from_voltage, self.from_current = before.chain(self.frequencies[1:])[2:]
-        currents = coefficients[2 : settings.highest_order + 1] * point.peak_current
+        currents = _currents(settings, point, coefficients)[1:]
         admittance = (1 / self.line.impedance(self.frequencies)).real
         self.per_gain = currents**2 / 2 * admittance[1:]
         kept = tank_efficiency(before.branches, settings.tank_load, settings.job.carrier)

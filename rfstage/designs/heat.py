@@ -75,7 +75,8 @@ class Heat(NamedTuple):
     one fitted, else the one that the worst needs, or None. With it the hotter device stands ``most`` [W], which falls
     by ``per_kelvin`` [W/K] of ambient above the one given. ``rating`` [W] is the device's, ``derated_rating`` [W] what
     is left of it at the case's temperature in the worst condition, and ``sink_for_rating`` [K/W] the sink that keeps
-    within it, None where none does. ``missing`` says what isn't known; ``assumed`` holds the defaults by key.
+    within it, None where none does. ``missing`` says what isn't known; ``assumed`` holds the defaults by key;
+    ``max_voltage`` [V] is the device's rating, or None.
     """
 
     family: str
@@ -90,6 +91,13 @@ class Heat(NamedTuple):
     sink_for_rating: float | None
     missing: str
     assumed: dict[str, object]
+    max_voltage: float | None = None
+
+    @property
+    def highest(self) -> Heated | None:
+        """The condition of the highest peak voltage, or None where none settled."""
+        known = [row for row in self.conditions if row.condition.peak_voltage is not None]
+        return max(known, key=lambda row: row.condition.peak_voltage or 0.0, default=None)
 
 
 def cooling_of(values: Mapping[str, float | None], family: str) -> tuple[Cooling, dict[str, object]]:
@@ -184,6 +192,7 @@ def heat_of(
         sink_for_rating=sink_for_rating,
         missing=_missing(device.family, device.max_dissipation, cooling),
         assumed=assumed,
+        max_voltage=device.max_voltage,
     )
 
 

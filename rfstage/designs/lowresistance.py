@@ -87,6 +87,8 @@ def ways_out(settings: Settings, coefficients: NDArray[np.float64], resistance: 
         if 1 < times <= MOST_SUPPLY:
             supply = float(f"{times * job.supply:.2g}")
             lowest = job.minimum_voltage
+            if job.max_voltage is not None and 2 * supply - settings.minimum_voltage > job.max_voltage:
+                continue  # the device's rating is no way out
             lifted = None if lowest is None else lowest * supply / job.supply
             trials.append((f"a supply of {show(supply, 'V')}", replace(job, supply=supply, minimum_voltage=lifted)))
     trials.append(("two devices, half the power each", replace(job, power=job.power / 2)))

@@ -79,7 +79,7 @@ class Candidate(NamedTuple):
             (best.efficiency - self.efficiency) // LOSS_STEP,
             _parts_of(self.extremes),
             self.parts,
-            self.trough_dip,
+            round(self.trough_dip, 3) + 0.0,
         )
 
     @property
@@ -106,14 +106,22 @@ class Ranking(NamedTuple):
         """What may be designed, best first: no filter where none was asked for."""
         return [c.fitted for c in self.candidates if c.fitted and c.allowed]
 
-    def settled(self, network: str, failed: Sequence[str]) -> Ranking:
-        """Return the ranking where the first ones had no steady state worth the name, as ``failed`` says of each."""
+    def of(self, made: Fitted) -> Candidate:
+        """Return what is known of one that may be designed."""
+        return next(c for c in self.candidates if c.fitted is made)
+
+    def settled(self, made: Fitted, failed: Sequence[str]) -> Ranking:
+        """Return the ranking with ``made`` chosen, since the steady state of those before it was not good enough.
+
+        ``failed`` says why of each of them, in order.
+        """
         places = [k for k, c in enumerate(self.candidates) if c.fitted and c.allowed]
-        made = list(self.candidates)
+        found = list(self.candidates)
         for place, said in zip(places, failed, strict=False):
-            made[place] = made[place]._replace(fitted=None, refused=_plain(said, made[place].network))
-        assert made[places[len(failed)]].network == network
-        return Ranking(tuple(made), places[len(failed)])
+            found[place] = found[place]._replace(fitted=None, refused=_plain(said, found[place].network))
+        chosen = next(k for k, c in enumerate(self.candidates) if c.fitted is made)
+        found[chosen] = self.candidates[chosen]
+        return Ranking(tuple(found), chosen)
 
     @property
     def reason(self) -> str:
@@ -219,7 +227,7 @@ def measured(made: Fitted, coefficients: NDArray[np.float64]) -> Candidate:
         network=settings.request.network,
         filter=made.filter,
         fitted=made,
-        margin=None if needed is None else settings.margin - needed - worst,
+        margin=None if needed is None or math.isinf(worst) else settings.margin - needed - worst,
         missed=0.0 if needed is None else max(0.0, worst + needed),
         trough_dip=trough_dip(
             Ladder(circuit.branches),
@@ -255,7 +263,7 @@ def _extreme(part: PartStress, carrier: float) -> list[Extreme]:
             note(f"of {show(reactance, 'ohm')}: leads decide", reactance < omega * SHORTEST_LEAD)
         elif capacitance < SMALLEST_CAPACITOR[0]:
             note(f"of {show(capacitance, 'F')}: strays decide", capacitance < SMALLEST_CAPACITOR[1])
-    current = part.rms_current or 0.0
+    current = max(part.rms_current or 0.0, part.far_current or 0.0)
     if current > LARGEST_CURRENT[0]:
         note(f"carries {show(current, 'A')}", current > LARGEST_CURRENT[1])
     return found

@@ -15,7 +15,7 @@ from rfstage.cautions import Caution, about_resonance, safety
 from rfstage.constants import SAFE_VOLTAGE
 from rfstage.designs.judging import supply_reaches_load
 from rfstage.device import PUSH_PULL
-from rfstage.parts.leads import LEADED, check_short
+from rfstage.parts.leads import check_short, lead_for
 from rfstage.quantity import show
 from rfstage.stage import BLOCKING, CHOKE, OUTPUT_CAPACITANCE, Stage
 from rfstage.steady import SteadyState
@@ -163,7 +163,7 @@ def blocking_cautions(stage: Stage, resistance: float) -> list[Caution]:
     branch = next((b for b in stage.branches if b.name == BLOCKING and b.kind == "capacitor"), None)
     if branch is None or branch.place != "series":
         return []
-    leads = float(branch.lead_inductance) or LEADED
+    leads = float(branch.lead_inductance) or lead_for(stage.carrier)
     found = check_short(
         float(branch.value), frequency=stage.carrier, allowed_reactance=SHORT * resistance, lead_inductance=leads
     )

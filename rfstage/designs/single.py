@@ -17,11 +17,15 @@ from rfstage.matching.task import Request
 
 
 class SingleNetwork(NamedTuple):
-    """A network, the load at the carrier [ohm], and (order, dB) of its harmonic transfer."""
+    """A network, the load at the carrier [ohm], (order, dB) of its harmonic transfer.
+
+    ``continued`` names the orders at which a measured load was continued beyond its table.
+    """
 
     tank: Tank
     load: complex
     transfer: tuple[tuple[int, float], ...]
+    continued: tuple[int, ...] = ()
 
 
 def single_network(
@@ -103,4 +107,6 @@ def single_network(
     z = over_frequency.impedance(frequencies)
     amperes = np.abs(ladder.transimpedance(frequencies, z) / z)
     levels = 20 * np.log10(amperes / amperes[0])
-    return SingleNetwork(tank, at_carrier, tuple((n, float(levels[n - 1])) for n in orders))
+    load_table = over_frequency if isinstance(over_frequency, MeasuredLoad) else None
+    continued = load_table.beyond(carrier, harmonics) if load_table else ()
+    return SingleNetwork(tank, at_carrier, tuple((n, float(levels[n - 1])) for n in orders), continued)

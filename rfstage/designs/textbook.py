@@ -101,7 +101,9 @@ def circuit_for(settings: Settings, resistance: float, near: tuple[Branch, ...] 
         choke = (10 * resistance if resistance < SMALL_RESISTANCE or across is None else ratio * across) / omega
     blocking = job.blocking
     if blocking is None:
-        blocking = 10 / (omega * min(resistance, across or resistance))
+        # the coil that tunes the output capacitance out stands behind it, where no capacitor of the network does
+        own = 1 / (omega * settings.output_capacitance) if settings.output_capacitance else resistance
+        blocking = 10 / (omega * min(resistance, across or own))
     supply = Supply(
         voltage=job.supply, choke=choke, choke_resistance=settings.choke_resistance, choke_q=settings.choke_q
     )

@@ -35,6 +35,7 @@ def heat_record(heat: Heat) -> dict[str, Any]:
             }
             for row in heat.conditions
         ],
+        "max_voltage_v": heat.max_voltage,
         "worst": None if heat.worst is None else heat.worst.condition.name,
         "sink_k_per_w": heat.sink,
         "most_w": heat.most,

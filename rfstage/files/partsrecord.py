@@ -4,7 +4,8 @@ from __future__ import annotations
 
 from typing import Any
 
-from rfstage.files.records import complex_pair
+from rfstage.designs.judging import ratings_of
+from rfstage.files.records import complex_pair, rating_record
 from rfstage.fitting.fitted import Fitting
 
 
@@ -79,5 +80,6 @@ def parts_record(fitting: Fitting) -> dict[str, Any]:
         "compared": [
             {"name": c.name, "unit": c.unit, "ideal": c.ideal, "with_parts": c.fitted} for c in fitting.compared
         ],
+        "ratings": [] if fitting.state is None else [rating_record(r) for r in ratings_of(fitting.state)],
         "trouble": fitting.trouble or None,
     }

@@ -79,7 +79,7 @@ def design_record(design: Design, files: Sequence[str]) -> dict[str, Any]:
             "unbiased_amplitude_v": design.drive.unbiased_amplitude,
             "drive_power_w": design.drive.power,
         },
-        "ratings": [_rating(r) for r in design.ratings],
+        "ratings": [rating_record(r) for r in design.ratings],
         "tank": tank_record(design.tank),
         "harmonics": [
             {
@@ -194,13 +194,17 @@ def _part_record(part: PartStress) -> dict[str, Any]:
     return record
 
 
-def match_record(tank: Tank, transfer: Sequence[tuple[int, float]]) -> dict[str, Any]:
-    """Return one network by itself, with (order, dB) of its harmonic transfer, as ``rfstage.match``."""
+def match_record(tank: Tank, transfer: Sequence[tuple[int, float]], continued: Sequence[int] = ()) -> dict[str, Any]:
+    """Return one network by itself, with (order, dB) of its harmonic transfer, as ``rfstage.match``.
+
+    ``continued`` names the orders at which a measured load was continued beyond its table.
+    """
     return {
         "format": "rfstage.match",
         "version": VERSION,
         "tank": tank_record(tank),
         "harmonic_transfer_db": [[order, level] for order, level in transfer],
+        "load_continued_at": list(continued),
     }
 
 
@@ -236,13 +240,14 @@ def settle_record(
             {"order": v.order, "line_level_dbc": v.line_level, "limit_dbc": v.limit, "margin_db": v.margin}
             for v in verdicts
         ],
-        "ratings": [_rating(r) for r in ratings_of(state)],
+        "ratings": [rating_record(r) for r in ratings_of(state)],
         "heat": None if heat is None else _heat_record(heat),
         "cautions": _cautions(cautions),
     }
 
 
-def _rating(rating: Rating) -> dict[str, Any]:
+def rating_record(rating: Rating) -> dict[str, Any]:
+    """Return a rating with what it is held against."""
     return {"name": rating.name, "limit": rating.limit, "value": rating.value, "exceeded": rating.exceeded}
 
 

@@ -5,10 +5,8 @@ from __future__ import annotations
 from typing import NamedTuple
 
 from rfstage.job import Job
-from rfstage.parts.leads import CHIP, LEADED
+from rfstage.parts.leads import LEADED, lead_for
 from rfstage.parts.stress import Margins
-
-VHF = 30e6  # Hz: from here on capacitors are taken for chips (common practice, no source)
 
 
 class PartsRequest(NamedTuple):
@@ -32,5 +30,5 @@ def request_of(job: Job) -> PartsRequest:
             voltage=job.voltage_margin or usual.voltage,
             current=job.current_margin or usual.current,
         ),
-        lead=(LEADED if job.carrier < VHF else CHIP) if job.lead is None else job.lead,
+        lead=lead_for(job.carrier) if job.lead is None else job.lead,
     )

@@ -18,16 +18,23 @@ import math
 from rfstage.errors import ImpossibleError
 from rfstage.ladder import Branch
 from rfstage.matching.parts import capacitor, coil, four_figures, parallel_resistance
-from rfstage.matching.solving import asked_q, between_ends, finish, positive, refuse_q
+from rfstage.matching.solving import NEAREST, asked_q, between_ends, finish, positive, refuse_q
 from rfstage.matching.task import Task
 
 
 def least_loaded_q(wanted: complex, load: complex) -> float:
     """Return the least loaded Q [-] with which a divider joins two impedances [ohm]."""
-    top, joint = sorted((wanted.conjugate(), load), key=parallel_resistance, reverse=True)
+    top, joint = _ends(wanted, load)
     r_top, r_joint = parallel_resistance(top), parallel_resistance(joint)
     q = max(0.0, r_joint * (1 / joint).imag)  # what the joint's own capacitance takes
     return max(math.sqrt(r_top * (1 + q**2) / r_joint - 1), r_top * (1 / top).imag)
+
+
+def _ends(wanted: complex, load: complex) -> tuple[complex, complex]:
+    """Return what stands at the top and at the joint [ohm], as if the device were at the top."""
+    # a lossless network turned round takes the conjugate of one end to the conjugate of the other
+    down = parallel_resistance(wanted) >= parallel_resistance(load)
+    return (wanted, load) if down else (load.conjugate(), wanted.conjugate())
 
 
 def divider(wanted: complex, load: complex, *, carrier: float, loaded_q: float) -> tuple[Branch, ...]:
@@ -65,8 +72,7 @@ def divider(wanted: complex, load: complex, *, carrier: float, loaded_q: float) 
             f"{four_figures(load)} ohm; it must be above {least:.4g}"
         )
     down = parallel_resistance(wanted) >= parallel_resistance(load)
-    # a lossless network turned round takes the conjugate of one end to the conjugate of the other
-    top, joint = (wanted, load) if down else (load.conjugate(), wanted.conjugate())
+    top, joint = _ends(wanted, load)
     r_top, r_joint = parallel_resistance(top), parallel_resistance(joint)
     series = r_top / (loaded_q**2 + 1)
     q = math.sqrt(max(r_joint / series - 1, 0.0))
@@ -82,6 +88,12 @@ def divider(wanted: complex, load: complex, *, carrier: float, loaded_q: float) 
 def solve(task: Task) -> tuple[Branch, ...]:
     """Return the divider of a task, exact with its losses; errors as `rfstage.matching.networks.solve_network`."""
     refuse_q(task)
-    q = asked_q(task, least_loaded_q(task.target, task.load))
-    made = divider(task.target, task.load, carrier=task.carrier, loaded_q=q)
+    least = least_loaded_q(task.target, task.load)
+    if parallel_resistance(task.target) < parallel_resistance(task.load):
+        start = q = asked_q(task, least)
+    else:
+        # the output capacitance stands at the top, and what of the coil tunes it out is in the loaded Q
+        q = asked_q(task, least_loaded_q(task.start, task.load) + task.taken)
+        start = max(q - task.least_shunt_q, NEAREST * least)
+    made = divider(task.target, task.load, carrier=task.carrier, loaded_q=start)
     return between_ends(task, lambda: positive(finish(task, made, asked_loaded_q=q)))

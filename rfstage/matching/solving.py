@@ -11,6 +11,7 @@ from rfstage.matching.exact import Free, close, free_values, with_losses
 from rfstage.matching.parts import four_figures, parallel_resistance
 from rfstage.matching.task import DEFAULT_LOADED_Q, DEFAULT_Q_MARGIN, Task
 
+NEAREST = 1.02  # of the least Q: a closed form that stands for more than its own Q begins no lower
 NEAR_ENDS = 2.0  # ratio of resistances below which a tap may fall outside its coil
 
 

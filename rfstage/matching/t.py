@@ -20,7 +20,7 @@ from rfstage.errors import ImpossibleError
 from rfstage.ladder import Branch
 from rfstage.matching.parts import four_figures
 from rfstage.matching.pi import virtual_resistance
-from rfstage.matching.solving import asked_q, finish, positive, refuse_q
+from rfstage.matching.solving import NEAREST, asked_q, finish, positive, refuse_q
 from rfstage.matching.task import Task
 
 
@@ -83,6 +83,9 @@ def t_network(wanted: complex, load: complex, *, carrier: float, loaded_q: float
 def solve(task: Task) -> tuple[Branch, ...]:
     """Return the T of a task, exact with its losses; errors as `rfstage.matching.networks.solve_network`."""
     refuse_q(task)
-    q = asked_q(task, least_loaded_q(task.target, task.load))
-    made = t_network(task.target, task.load, carrier=task.carrier, loaded_q=q)
+    least = least_loaded_q(task.target, task.load)
+    # the output capacitance, and what of the first coil tunes it out, are in the loaded Q besides
+    q = asked_q(task, least + task.taken)
+    start = max(q - task.least_shunt_q, NEAREST * least)
+    made = t_network(task.target, task.load, carrier=task.carrier, loaded_q=start)
     return positive(finish(task, made, asked_loaded_q=q))

@@ -16,6 +16,19 @@ from rfstage.quantity import show
 
 LEADED, CHIP = 5e-9, 1e-9  # H: lead inductance of a part on short wires, and of a chip (common practice, no source)
 
+VHF = 30e6  # Hz: from here on capacitors are taken for chips (common practice, no source)
+
+
+def lead_for(carrier: float) -> float:
+    """Return the lead inductance [H] that a capacitor is taken to have at a carrier [Hz].
+
+    Examples
+    --------
+    >>> lead_for(7.1e6), lead_for(145e6)
+    (5e-09, 1e-09)
+    """
+    return LEADED if carrier < VHF else CHIP
+
 
 class ShortState(NamedTuple):
     """A capacitor that is to be a short at the carrier: blocking, coupling or bypass.

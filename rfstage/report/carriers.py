@@ -13,6 +13,7 @@ from rfstage.quantity import exact_text, show, show_complex
 from rfstage.report.circuit import FAMILY, circuit
 from rfstage.report.judged import caution_lines, signed
 from rfstage.report.page import Cell, Look, columns, heading, note
+from rfstage.stagevalues import described
 
 # a load matched, matched with the coil's tap moved, not matched
 _MARKS = ("=", "t", "-")
@@ -30,11 +31,26 @@ def carriers_page(tuned: Sequence[Tuned], look: Look) -> list[Text]:
     lines = note(look, title, style="bold", indent=0)
     lines += heading(look, f"Circuit at {show(job.carrier, 'Hz', 5)}, network {first.tank.network}")
     lines += circuit(look, first.tank.parts, start="device", end=f"load {show_complex(first.settings.load_impedance)}")
+    if any(t.design.filter for t in tuned):
+        lines += _filters(tuned, look)
     lines += _settings(tuned, look)
     lines += _performance(tuned, look)
     if tuned[0].loads:
         lines += _map(tuned, look)
     return lines + caution_lines(look, _cautions(tuned))
+
+
+def _filters(tuned: Sequence[Tuned], look: Look) -> list[Text]:
+    """Return what filter each carrier has: a filter of one would block the next, so they are switched."""
+    lines = note(look, "Each carrier has a filter of its own, to be switched with it:", style="dim")
+    for t in tuned:
+        made = t.design.filter
+        words = "none"
+        if made is not None:
+            parts = ", ".join(" ".join((b.name, *described(b, 3))) for b in made.parts)
+            words = f"{made.kind} of order {made.order}, {made.form}: {parts}"
+        lines += note(look, f"{show(t.design.job.carrier, 'Hz', 5)}: {words}", hanging=2)
+    return lines
 
 
 def _settings(tuned: Sequence[Tuned], look: Look) -> list[Text]:

@@ -19,6 +19,7 @@ def heat_lines(heat: Heat, look: Look, title: str = "Heat") -> list[Text]:
     lines = heading(look, title) + _table(heat, look) + _notes(heat, look)
     tube = heat.family == "tube"
     lines += _anode(heat, look) if tube else _sink(heat, look)
+    lines += _volts(heat, look)
     if heat.missing:
         what = "To judge the anode" if tube else "For heat sink and junction"
         lines += note(look, f"{what} this is missing: {heat.missing}.")
@@ -83,6 +84,20 @@ def _notes(heat: Heat, look: Look) -> list[Text]:
 
 def _unsettled(row: Heated) -> bool:
     return row.condition.dissipation is None
+
+
+def _volts(heat: Heat, look: Look) -> list[Text]:
+    """Return the highest peak voltage of the four against the rating, where that is exceeded."""
+    highest, rating = heat.highest, heat.max_voltage
+    if highest is None or rating is None or (highest.condition.peak_voltage or 0.0) <= rating:
+        return []
+    asked = f"{show(highest.condition.peak_voltage or 0.0, 'V')} {highest.condition.name}"
+    return note(
+        look,
+        f"EXCEEDED  rating: greatest voltage {show(rating, 'V')}, the stage asks {asked}: tune at reduced power, and "
+        "trip on reflected power",
+        style="bold red",
+    )
 
 
 def _anode(heat: Heat, look: Look) -> list[Text]:

@@ -6,6 +6,7 @@ import math
 
 from rich.text import Text
 
+from rfstage.designs.judging import ratings_of
 from rfstage.fitting.capacitors import BLOCKING, TIGHT, Bought
 from rfstage.fitting.coils import HOT, Winding
 from rfstage.fitting.fitted import Comparison, Fitting
@@ -13,7 +14,7 @@ from rfstage.fitting.rings import Ring
 from rfstage.parts.leads import check_short, self_resonance
 from rfstage.parts.toroid import FLUX_SOURCE
 from rfstage.quantity import show, show_complex
-from rfstage.report.judged import signed
+from rfstage.report.judged import rating_lines, signed
 from rfstage.report.page import NO_BREAK, Cell, Look, columns, heading, note
 from rfstage.report.ranking import ROOMY
 
@@ -21,6 +22,7 @@ NEAR_RESONANCE = 2.0  # self-resonance over carrier: below it leads weigh more t
 BLOCKING_SHARE = 0.1  # of the load resistance, that a blocking capacitor may leave (common practice, no source)
 AIR = 500.0  # V: above it a trimmer has air or vacuum between its plates (common practice, no source)
 MOST_AMPERES = 10.0  # rms with its margin, that one usual part stands (common practice, no source)
+LUCKY = 10.0  # dB below the ideal level, that only a resonance of leads makes
 CHANGED = 0.1  # of the power, from where the parts have made another stage of it
 
 
@@ -180,6 +182,7 @@ def _compared(fitting: Fitting, look: Look) -> list[Text]:
             f"self-capacitances leave the device's harmonics another impedance; {way}",
             style="bold red",
         )
+    lines += _judged(fitting, look)
     moved = " and ".join(fitting.moved)
     return lines + note(
         look,
@@ -187,6 +190,29 @@ def _compared(fitting: Fitting, look: Look) -> list[Text]:
         f"{show_complex(fitting.retrimmed)}. Drive and supply stay as designed.",
         style="dim",
     )
+
+
+def _judged(fitting: Fitting, look: Look) -> list[Text]:
+    """Return what the stage with these parts is held against: its ratings, and the limit."""
+    lines = [] if fitting.state is None else rating_lines(look, ratings_of(fitting.state))
+    margin = next((c.fitted for c in fitting.compared if c.unit == "dB"), None)
+    if margin is not None and margin < 0:
+        lines += note(look, f"MISSES the limit with these parts by {-margin:.1f} dB", style="bold red")
+    elif margin is not None:
+        lines += note(look, f"MEETS the limit with these parts, {margin:.1f} dB to spare", style="bold green")
+    leap = [
+        c.name
+        for c in fitting.compared
+        if c.unit == "dBc" and c.ideal is not None and c.fitted is not None and c.fitted < c.ideal - LUCKY
+    ]
+    if leap:
+        lines += note(
+            look,
+            f"Far lower than ideal: {', '.join(leap)}. Leads and capacitors in series resonance do that, near one "
+            "frequency and with just these leads: measure, don't trust.",
+            style="dim",
+        )
+    return lines
 
 
 def _figure(compared: Comparison, value: float | None) -> str:

@@ -16,7 +16,7 @@ def ranking_lines(ranking: Ranking, look: Look) -> list[Text]:
     judged = any(c.margin is not None for c in ranking.candidates)
     filtered = any(c.filter for c in ranking.candidates)
     titles = ["", "network", *(["filter"] if filtered else []), *(["margin"] if judged else [])]
-    titles += ["dip", "efficiency", "parts", "extreme"]
+    titles += ["dip", "tank eff.", "parts", "extreme"]
     left = ("", "network", "filter")
     rows = [[Cell(title, "dim", right=title not in left) for title in titles]]
     made = [c for c in ranking.candidates if c.fitted]
@@ -60,7 +60,7 @@ def _row(candidate: Candidate, *, chosen: bool, judged: bool, filtered: bool) ->
     return [
         *cells,
         Cell(
-            f"{candidate.trough_dip:.3f}" if candidate.trough_dip < 1 else f"{candidate.trough_dip:.2g}",
+            f"{candidate.trough_dip + 0.0:z.3f}" if candidate.trough_dip < 1 else f"{candidate.trough_dip:.2g}",
             style,
             right=True,
         ),

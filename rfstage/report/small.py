@@ -6,6 +6,7 @@ from collections.abc import Sequence
 
 from rich.text import Text
 
+from rfstage.cautions import about_load_file
 from rfstage.matching.tank import Tank
 from rfstage.quantity import show, show_complex
 from rfstage.report.circuit import circuit
@@ -38,7 +39,13 @@ def pulse_page(
 
 
 def match_page(
-    look: Look, *, tank: Tank, load: complex, carrier: float, transfer: Sequence[tuple[int, float]]
+    look: Look,
+    *,
+    tank: Tank,
+    load: complex,
+    carrier: float,
+    transfer: Sequence[tuple[int, float]],
+    continued: Sequence[int] = (),
 ) -> list[Text]:
     """Return one network at its carrier [Hz], with what it does to harmonics from a current generator."""
     at = f"{show_complex(tank.impedance)} at the device, {show(carrier, 'Hz', 5)}"
@@ -47,4 +54,7 @@ def match_page(
     lines += heading(look, "Tank") + tank_lines(tank, look)
     words = "  ".join(f"{n}:{NO_BREAK}{level:.1f}".replace("-", "−") for n, level in transfer)
     lines += heading(look, "Harmonic transfer, dB against the carrier")
-    return lines + note(look, words) + note(look, "Load current for equal device currents.", style="dim")
+    lines += note(look, words) + note(look, "Load current for equal device currents.", style="dim")
+    for caution in about_load_file(continued):
+        lines += note(look, f"! {caution.topic}: {caution.text}", hanging=2)
+    return lines

@@ -166,8 +166,15 @@ def capture_levels(
     if channel.unit == "V":
         volts = size * setup.probe * 10 ** (-base / 20)
         power = volts**2 / 2 * conductance(fit.frequency)
-    remarks = (*capture.remarks, *_remarks(channel, found, capture.interval))
-    return Measured(fit.frequency, power, tuple(levels), tuple(others), tuple(uncorrected), remarks), found
+    remarks = [*capture.remarks, *_remarks(channel, found, capture.interval)]
+    for other in others:
+        order = folded_from(fit, capture.interval, other.frequency)
+        if order is not None:
+            remarks.append(
+                f"the line at {show(other.frequency, 'Hz', 5)} lies where order {order} folds back: sample faster, or "
+                "filter before the instrument"
+            )
+    return Measured(fit.frequency, power, tuple(levels), tuple(others), tuple(uncorrected), tuple(remarks)), found
 
 
 def _remarks(channel: Channel, found: Analysed, interval: float) -> list[str]:
@@ -203,6 +210,16 @@ def folded_orders(fit: HarmonicFit, interval: float) -> list[tuple[int, int]]:
         if 1 <= low <= min(fit.orders, LISTED) and abs(seen - low) * fit.periods < 2:
             found.append((high, low))
     return found
+
+
+def folded_from(fit: HarmonicFit, interval: float, frequency: float) -> int | None:
+    """Return the least order above half the sample rate that is seen at a frequency [Hz], or None."""
+    for order in range(fit.orders + 1, FOLDED + 1):
+        turns = order * fit.frequency * interval
+        seen = abs(turns - round(turns)) / interval
+        if abs(seen - frequency) * fit.samples * interval < 1:
+            return order
+    return None
 
 
 def other_lines(fit: HarmonicFit, interval: float) -> list[tuple[float, float]]:
