@@ -444,7 +444,7 @@ def test_json_has_the_parts_with_their_keys(run, examples):
     assert set(parts) == {
         "capacitors", "coils", "rings", "as_designed",
         "impedance_ohm", "retrimmed_impedance_ohm", "retrimmed", "compared",
-        "trouble",
+        "ratings", "trouble",
     }  # fmt: skip
     first, coil = parts["capacitors"][1], parts["coils"][0]
     assert {"branch", "role", "values_f", "trimmer_f", "setting_f", "total_f", "wanted_f", "lead_inductance_h",

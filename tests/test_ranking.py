@@ -205,7 +205,7 @@ def test_reason_of_any_ranking_is_true(candidates):
 def test_one_without_a_steady_state_is_refused_with_its_words_and_the_next_is_chosen():
     names = ("a", "outlook", "b", "c")
     made = [candidate(name, parts=k + 2, allowed=name != "outlook") for k, name in enumerate(names)]
-    found = Ranking(tuple(made), 0).settled("c", ["network a: no output", "rings"])
+    found = Ranking(tuple(made), 0).settled(made[3].fitted, ["network a: no output", "rings"])
     assert found.winner.network == "c"
     assert [(c.network, c.refused) for c in found.candidates if not c.fitted] == [("a", "no output"), ("b", "rings")]
 

@@ -168,10 +168,10 @@ def capture_levels(
         power = volts**2 / 2 * conductance(fit.frequency)
     remarks = [*capture.remarks, *_remarks(channel, found, capture.interval)]
     for other in others:
-        order = folded_from(fit, capture.interval, other.frequency)
-        if order is not None:
+        folded = folded_from(fit, capture.interval, other.frequency)
+        if folded is not None:
             remarks.append(
-                f"the line at {show(other.frequency, 'Hz', 5)} lies where order {order} folds back: sample faster, or "
+                f"the line at {show(other.frequency, 'Hz', 5)} lies where order {folded} folds back: sample faster, or "
                 "filter before the instrument"
             )
     return Measured(fit.frequency, power, tuple(levels), tuple(others), tuple(uncorrected), tuple(remarks)), found
