@@ -239,7 +239,8 @@ def measured(made: Fitted, coefficients: NDArray[np.float64]) -> Candidate:
         ),
         efficiency=tank_efficiency(circuit.branches, load, job.carrier),
         extremes=tuple(word for part in borne[-len(own) :] for word in _extreme(part, job.carrier)),
-        parts=sum(2 if branch.kind == "trap" else 1 for branch in own),
+        # two windings, or a coil and a capacitor; a tapped coil is one
+        parts=sum(2 if branch.kind in ("trap", "coupled") and not branch.tap else 1 for branch in own),
     )
 
 
