@@ -8,7 +8,6 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import dataclass, fields
 from typing import NamedTuple
 
 from rfstage.cautions import Caution, about_resonance, safety
@@ -26,8 +25,7 @@ CHOKE_JOULES = 1e-3  # J: a choke that holds more draws a spark when its current
 SHORT = 0.1  # reactance of a blocking capacitor over the resistance it works into (common practice, no source)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Station:
+class Station(NamedTuple):
     """What stands around a stage; None where it isn't known.
 
     ``reservoir`` [F] and ``bleeder`` [ohm] of the supply, self-capacitance [F] and rated rms current [A] of the choke,
@@ -43,7 +41,7 @@ class Station:
 
 def station_of(source: object) -> Station:
     """Return what a job, or anything with attributes of the same names, says of what stands around its stage."""
-    return Station(**{field.name: getattr(source, field.name) for field in fields(Station)})
+    return Station(**{name: getattr(source, name) for name in Station._fields})
 
 
 class Exposed(NamedTuple):
