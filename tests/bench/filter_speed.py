@@ -11,6 +11,7 @@ import math
 import sys
 import time
 from collections.abc import Callable, Sequence
+from functools import partial
 
 import numpy as np
 from numpy.typing import NDArray
@@ -67,7 +68,7 @@ def main() -> int:
     print(f"one walk, ten branches, 110 cutoffs, 10 frequencies: {walk * 1e3:.2f} ms")
     worst = 0.0
     for limit in (46.0, 63.0, 73.0, 200.0):
-        warm = best(lambda limit=limit: search(limit))  # type: ignore[misc]
+        warm = best(partial(search, limit))
 
         def cold(limit: float = limit) -> None:
             grid.cache_clear()

@@ -11,6 +11,7 @@ import sys
 import time
 from collections.abc import Callable
 from dataclasses import replace
+from functools import partial
 from pathlib import Path
 
 from rfstage.designs.design import design
@@ -39,7 +40,7 @@ def main() -> int:
         job = replace(read_jobs(str(EXAMPLES / f"{name}.toml"), {})[0], network="pi")  # comparing networks takes longer
         made, asked = design(job), request_of(job)
         pairs = [
-            (took(lambda job=job: design(job, textbook=True)), took(lambda m=made, a=asked: fit_parts(m, a)))  # type: ignore[misc]
+            (took(partial(design, job, textbook=True)), took(partial(fit_parts, made, asked)))
             for _ in range(ROUNDS + 2)
         ][2:]  # the first two warm caches
         book, parts = (statistics.median(times) for times in zip(*pairs, strict=True))
