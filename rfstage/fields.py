@@ -106,7 +106,8 @@ def _read_text(field: Field, raw: object) -> str:
     if not isinstance(raw, str) or not raw.strip():
         raise QuantityError(f"got {shown(raw)}; wanted {_wanted(field)}")
     if field.choices and raw not in field.choices:
-        raise QuantityError(f"got {shown(raw)}; allowed {allowed(field)}{nearest(raw, field.choices)}")
+        near = "" if raw.isdigit() else nearest(raw, field.choices)  # a number is not misspelt
+        raise QuantityError(f"got {shown(raw)}; allowed {allowed(field)}{near}")
     return raw
 
 

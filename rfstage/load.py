@@ -21,6 +21,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from rfstage.errors import InputError, OutOfRangeError
 
+SMALLEST = 1e-300  # ohm: of less a number has no reciprocal
 REFERENCE_RESISTANCE = 50.0  # ohm; a measured load is interpolated as the reflection against it
 
 
@@ -60,7 +61,7 @@ class SeriesLoad:
     carrier: float
 
     def __post_init__(self) -> None:
-        if not (self.at_carrier.real > 0 and math.isfinite(abs(self.at_carrier))):
+        if not (self.at_carrier.real > SMALLEST and math.isfinite(abs(self.at_carrier))):
             raise OutOfRangeError("load impedance", self.at_carrier, "finite, its resistance above 0 ohm")
 
     def impedance(self, frequency: ArrayLike) -> NDArray[np.complex128]:

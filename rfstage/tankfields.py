@@ -135,7 +135,7 @@ TRANSFORMER: tuple[Field, ...] = (
         100,
         False,
         "--transformer",
-        "wide-band transformer before the network: N of 1:N turns from device to network [no transformer]",
+        "wide-band transformer before the network: 4 for 1:4 turns from device to network [no transformer]",
     ),
     Field(
         "tank.transformer_magnetizing",
