@@ -95,18 +95,12 @@ def conditions(
 
     Examples
     --------
-    >>> from rfstage.device import Device
-    >>> from rfstage.load import SeriesLoad
-    >>> from rfstage.stage import Drive, Supply
-    >>> fet = Device(family="fet", transfer_factor=9.2, exponent=1.0, threshold=3.0, threshold_softness=0.01,
-    ...              knee_voltage=0.2, knee_resistance=0.04)
-    >>> parts = (Branch("Cblock", "series", "capacitor", 83e-9), Branch("C1", "shunt", "capacitor", 8.7e-9),
-    ...          Branch("L1", "series", "coil", 191e-9), Branch("C2", "shunt", "capacitor", 3.5e-9))
-    >>> stage = Stage(carrier=7.1e6, device=fet, drive=Drive(bias=2.5, amplitude=1.0), branches=parts,
-    ...               supply=Supply(voltage=13.8, choke=1.6e-6), load=SeriesLoad(50 + 0j, 7.1e6))
+    >>> from rfstage.designs.design import design
+    >>> from rfstage.job import Job
+    >>> stage = design(Job(carrier=7.1e6, power=10.0, conduction_angle=120.0, supply=13.8, network="pi")).stage
     >>> found = conditions(stage, ratios=(1.0, 3.0))
     >>> round(found.normal.dissipation, 1), found.hottest.name, found.undriven.dissipation
-    (2.9, 'mismatched', 0.0)
+    (2.6, 'mismatched', 0.0)
     """
     if state is None:
         try:

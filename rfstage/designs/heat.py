@@ -146,19 +146,12 @@ def heat_of(
 
     Examples
     --------
-    >>> from rfstage.device import Device
-    >>> from rfstage.ladder import Branch
-    >>> from rfstage.load import SeriesLoad
-    >>> from rfstage.stage import Drive, Supply
-    >>> fet = Device(family="fet", transfer_factor=9.2, exponent=1.0, threshold=3.0, threshold_softness=0.01,
-    ...              knee_voltage=0.2, knee_resistance=0.04)
-    >>> parts = (Branch("Cblock", "series", "capacitor", 83e-9), Branch("C1", "shunt", "capacitor", 8.7e-9),
-    ...          Branch("L1", "series", "coil", 191e-9), Branch("C2", "shunt", "capacitor", 3.5e-9))
-    >>> stage = Stage(carrier=7.1e6, device=fet, drive=Drive(bias=2.5, amplitude=1.0), branches=parts,
-    ...               supply=Supply(voltage=13.8, choke=1.6e-6), load=SeriesLoad(50 + 0j, 7.1e6))
+    >>> from rfstage.designs.design import design
+    >>> from rfstage.job import Job
+    >>> stage = design(Job(carrier=7.1e6, power=10.0, conduction_angle=120.0, supply=13.8, network="pi")).stage
     >>> heat = heat_of(stage, {"junction_to_case": 2.0})
     >>> heat.worst.condition.name, round(heat.worst.mean, 1), round(heat.sink, 1), round(heat.worst.junction, 6)
-    ('mismatched', 10.2, 8.5, 150.0)
+    ('mismatched', 9.7, 9.0, 150.0)
     """
     device = stage.device
     cooling, assumed = cooling_of(values, device.family)
